@@ -1,0 +1,1 @@
+"""The numbers: conditions, operating points, stability, transfer, faults."""

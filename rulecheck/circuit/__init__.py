@@ -1,0 +1,1 @@
+"""From a design to its graph, islands and structure."""

@@ -1,0 +1,1 @@
+"""From a design file to a validated, frozen model with positions."""

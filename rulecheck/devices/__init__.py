@@ -1,0 +1,1 @@
+"""Device equations with exact derivatives, on arrays."""

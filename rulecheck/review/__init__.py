@@ -1,0 +1,1 @@
+"""Rules at work: registry, settings, runner, remedies, concessions."""

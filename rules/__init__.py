@@ -1,0 +1,1 @@
+"""The standard rules, one module each."""
