@@ -1,0 +1,305 @@
+"""Operating points of a batch of conditions, with self-heating."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from ..devices.constants import AnyArray, Array, BoolArray
+from ..errors import AnalysisError
+from .equations import Currents, Equations
+from .network import Network, build_network
+from .newton import State, solve
+from .thermal import ThermalNetwork, build_thermal
+from .values import Overrides, Parameters, Values, compute_values
+
+if TYPE_CHECKING:
+    from ..design.model import Design
+    from .conditions import Conditions
+
+TEMPERATURE_STEP = 1e-7  # K: far inside 1 mK, so that voltages keep 1e-6 of reading
+THERMAL_ROUNDS = 60
+
+
+@dataclass(frozen=True)
+class Worst:
+    """The extreme of a figure over the conditions: its value, where it is, and the conditions there."""
+
+    value: float
+    index: int
+    conditions: dict[str, float]
+
+
+class OperatingPoints:
+    """Solved operating points; all arrays have the conditions first and are NaN where not converged.
+
+    Attributes
+    ----------
+    conditions : Conditions
+    converged : ndarray of bool, shape (conditions,)
+    """
+
+    def __init__(
+        self, network: Network, equations: Equations, conditions: Conditions, values: Values, state: State,
+        temperatures: dict[str, Array], parameters: Parameters,
+    ) -> None:  # fmt: skip
+        self.network = network
+        self.equations = equations
+        self.conditions = conditions
+        self.values = values
+        self.state_vector = state
+        self.parameters = parameters
+        self.converged: BoolArray = state.converged
+        self._temperatures = temperatures
+        self._voltages = _blank(equations.node_voltages(state.x, values), self.converged)
+        self._tangents = equations.junction_voltages(state.x, values)
+        self._currents = _currents(equations, values, state)
+
+    def voltage(self, net: str) -> Array:
+        """Voltage of a net (or of an internal node ``REF.pin``) [V]."""
+        return self._voltages[:, self.network.nodes[net]]
+
+    def temperature(self, part: str) -> Array:
+        """Temperature of a part, of its junction where it has one [K]."""
+        return _blank(self._temperatures.get(part, self.conditions.values["ambient"]), self.converged)
+
+    def vbe(self, part: str) -> Array:
+        """Base-emitter voltage between terminals, signed [V]."""
+        pins = self.network.design.parts[part].pins
+        return self.voltage(pins["B"]) - self.voltage(pins["E"])
+
+    def vce(self, part: str) -> Array:
+        """Collector-emitter voltage between terminals, signed [V]."""
+        pins = self.network.design.parts[part].pins
+        return self.voltage(pins["C"]) - self.voltage(pins["E"])
+
+    def state(self, amplifier: str) -> AnyArray:
+        """State of an amplifier: ``linear``, ``high``, ``low`` or ``unpowered``, array of str."""
+        i = self.network.amplifiers.index(amplifier)
+        low, high, powered = self.equations.limits(self._all_voltages, self.values)
+        u = self.state_vector.x[:, self.equations.gain_rows[i]]
+        out = np.where(u > high[:, i], "high", np.where(u < low[:, i], "low", "linear"))
+        return np.where(powered[:, i], out, "unpowered")
+
+    def limits(self, amplifier: str) -> tuple[Array, Array]:
+        """Low and high limit of an amplifier's internal output [V]."""
+        i = self.network.amplifiers.index(amplifier)
+        low, high, _ = self.equations.limits(self._all_voltages, self.values)
+        return _blank(low[:, i], self.converged), _blank(high[:, i], self.converged)
+
+    def linear(self, amplifier: str) -> BoolArray:
+        """Whether an amplifier is inside its limits (and the point converged)."""
+        return np.asarray(self.state(amplifier) == "linear") & self.converged
+
+    def current(self, part: str, pin: str) -> Array:
+        """Current into a pin of a part [A]."""
+        kind = self.network.design.parts[part].kind
+        found = _PIN_CURRENT[kind](self, part, pin)
+        return _blank(np.broadcast_to(found, self.converged.shape).copy(), self.converged)
+
+    def clamp_currents(self) -> dict[str, Array]:
+        """Currents of the input clamps and drive limits by name (``U1.IN-.hi``: from IN- to V+) [A]."""
+        return {f"{ref}.{name}": _blank(self._currents.clamp[:, i], self.converged)
+                for i, (ref, name) in enumerate(e.key for e in self.network.clamps)}
+
+    def clamp_current(self, amplifier: str, pin: str) -> Array:
+        """Largest current in the clamps of one amplifier pin [A]."""
+        own = [c for n, c in self.clamp_currents().items() if n.startswith(f"{amplifier}.{pin}.")]
+        return np.max(own, axis=0) if own else _blank(np.zeros(self.converged.shape), self.converged)
+
+    def dissipation(self, part: str) -> Array:
+        """Power turned to heat in a transistor, amplifier, diode or resistor [W]."""
+        return _blank(_dissipation(self.network, self._all_voltages, self._currents, self.values, part),
+                      self.converged)
+
+    def worst(self, values: Array) -> Worst:
+        """Largest of `values` over the converged conditions, and where.
+
+        Raises
+        ------
+        AnalysisError
+            Where no condition has a figure.
+        """
+        return self._extreme(np.asarray(values, dtype=float), np.nanargmax)
+
+    def least(self, values: Array) -> Worst:
+        """Smallest of `values`; see `worst`."""
+        return self._extreme(np.asarray(values, dtype=float), np.nanargmin)
+
+    def _extreme(self, values: Array, pick: Callable[[Array], AnyArray]) -> Worst:
+        if not np.isfinite(values).any():
+            raise AnalysisError("no condition has a figure to judge", "see the points that did not converge")
+        index = int(pick(values))
+        return Worst(float(values[index]), index, self.conditions.at(index))
+
+    def failures(self) -> list[str]:
+        """One line for each condition that did not converge: the point, and the net that moved last."""
+        nodes = list(self.network.nodes)
+        lines = []
+        for i in np.flatnonzero(~self.converged):
+            place = ", ".join(f"{name} = {value:.6g}" for name, value in self.conditions.at(int(i)).items())
+            lines.append(f"no operating point at {place}; net {nodes[int(self.state_vector.moved[i])]} moved last")
+        return lines
+
+    @property
+    def _all_voltages(self) -> Array:
+        return self.equations.node_voltages(self.state_vector.x, self.values)
+
+    def _element(self, elements: list[str], part: str) -> int:
+        return elements.index(part)
+
+
+def _blank(array: Array, converged: BoolArray) -> Array:
+    mask = converged if array.ndim == 1 else converged[:, None]
+    return np.where(mask, array, np.nan)
+
+
+def _currents(equations: Equations, values: Values, state: State) -> Currents:
+    linear = equations.linear_matrix(values)
+    tangents = equations.junction_voltages(state.x, values)
+    return equations.evaluate(state.x, tangents, values, linear)[3]
+
+
+def _two_terminal(kind: str) -> Callable[[OperatingPoints, str, str], Array]:
+    def current(points: OperatingPoints, part: str, pin: str) -> Array:
+        along = _along(points.network, points._currents, points.values, part, pin)  # noqa: SLF001
+        return along
+
+    current.__name__ = kind
+    return current
+
+
+def _along(network: Network, currents: Currents, values: Values, part: str, pin: str) -> Array:
+    """Current into `pin` of a part made of two-terminal elements."""
+    node = network.nodes[network.design.parts[part].pins[pin]]
+    total = np.zeros(1)
+    groups = (
+        (network.resistors, currents.resistor), (network.branches, currents.branch),
+        (network.diodes, currents.diode), (network.sources, values.source),
+    )  # fmt: skip
+    for elements, amounts in groups:
+        for i, e in enumerate(elements):
+            if e.key[0] == part:
+                total = total + (amounts[:, i] if e.a == node else 0) - (amounts[:, i] if e.b == node else 0)
+    return total
+
+
+def _transistor_current(points: OperatingPoints, part: str, pin: str) -> Array:
+    i = points.network.transistors.index(part)
+    c, b = points._currents.collector[:, i], points._currents.base[:, i]  # noqa: SLF001
+    return {"C": c, "B": b, "E": -c - b}[pin]
+
+
+def _amplifier_current(points: OperatingPoints, part: str, pin: str) -> Array:
+    i = points.network.amplifiers.index(part)
+    out = points._currents.output[:, i]  # noqa: SLF001
+    if pin == "OUT":
+        return -out
+    keys = {e.key: j for j, e in enumerate(points.network.sources)}
+    if pin in ("IN+", "IN-"):
+        return points.values.source[:, keys[part, pin]]
+    supply = points.values.source[:, keys[part, "supply_current"]]
+    return supply + np.maximum(out, 0) if pin == "V+" else -supply + np.minimum(out, 0)
+
+
+def _no_current(points: OperatingPoints, part: str, pin: str) -> Array:
+    return np.zeros(points.converged.shape)
+
+
+_PIN_CURRENT: dict[str, Callable[[OperatingPoints, str, str], Array]] = {
+    **{k: _two_terminal(k) for k in ("resistor", "potentiometer", "diode", "photodiode", "voltage-source",
+                                     "current-source")},
+    "npn": _transistor_current, "pnp": _transistor_current, "op-amp": _amplifier_current,
+    "capacitor": _no_current, "connector": _no_current,
+}  # fmt: skip
+
+
+def _dissipation(network: Network, v: Array, currents: Currents, values: Values, part: str) -> Array:
+    design = network.design
+    kind, pins = design.parts[part].kind, {p: v[:, network.nodes[n]] for p, n in design.parts[part].pins.items()}
+    if kind in ("npn", "pnp"):
+        i = network.transistors.index(part)
+        return (pins["C"] - pins["E"]) * currents.collector[:, i] + (pins["B"] - pins["E"]) * currents.base[:, i]
+    if kind == "op-amp":
+        out = currents.output[:, network.amplifiers.index(part)]
+        quiet = values.source[:, [e.key for e in network.sources].index((part, "supply_current"))]
+        sourced = np.maximum(out, 0) * (pins["V+"] - pins["OUT"])
+        sunk = np.minimum(out, 0) * (pins["V-"] - pins["OUT"])
+        return quiet * (pins["V+"] - pins["V-"]) + sourced + sunk
+    if kind in ("resistor", "diode", "potentiometer"):
+        flows = [(p, _along(network, currents, values, part, p)) for p in design.parts[part].pins]
+        return np.sum([pins[p] * current for p, current in flows], axis=0)
+    return np.zeros(len(v))
+
+
+def solve_operating_points(
+    design: Design, conditions: Conditions, *, with_clamps: bool = False, overrides: Overrides | None = None,
+    temperatures: dict[str, Array] | None = None, start: State | None = None,
+) -> OperatingPoints:  # fmt: skip
+    """Operating points with the electrical and thermal solutions brought together.
+
+    Parameters
+    ----------
+    design : Design
+    conditions : Conditions
+    with_clamps : bool
+        Fault scenarios.
+    overrides : mapping, optional
+        Parameters in place of their nominal, see `Parameters`.
+    temperatures : dict of str to ndarray, optional
+        Part temperatures imposed in place of the computed ones [K].
+    start : State, optional
+        A solution near by.
+
+    Returns
+    -------
+    OperatingPoints
+    """
+    network = build_network(design, with_clamps)
+    equations = Equations(network)
+    thermal = build_thermal(design)
+    parameters = Parameters(design, overrides)
+    imposed = temperatures or {}
+    nodes = np.broadcast_to(
+        thermal.temperatures(conditions.values["ambient"], np.zeros((conditions.size, len(thermal.held)))),
+        (conditions.size, len(thermal.held)),
+    )
+    state = start
+    for _ in range(THERMAL_ROUNDS):
+        temps = {ref: nodes[:, i] for ref, i in thermal.node.items()} | imposed
+        values = compute_values(network, conditions, _lookup(temps, conditions), parameters)
+        state = solve(equations, values, state)
+        moved = _heat(network, equations, thermal, values, state, conditions, nodes)
+        change = np.abs(moved - nodes).max(axis=1, initial=0.0)
+        if (change[state.converged] < TEMPERATURE_STEP).all():
+            break
+        nodes = moved
+    else:
+        state.converged = state.converged & (change < TEMPERATURE_STEP)
+    return OperatingPoints(network, equations, conditions, values, state, temps, parameters)
+
+
+def _lookup(temps: dict[str, Array], conditions: Conditions) -> Callable[[str], Array]:
+    return lambda ref: temps.get(ref, conditions.values["ambient"])
+
+
+def _heat(
+    network: Network, equations: Equations, thermal: ThermalNetwork, values: Values, state: State,
+    conditions: Conditions, nodes: Array,
+) -> Array:  # fmt: skip
+    """Temperatures of the thermal nodes for the dissipations at a state; kept where it did not converge."""
+    if not thermal.rise.any():
+        return nodes
+    v = equations.node_voltages(state.x, values)
+    currents = _currents(equations, values, state)
+    power = np.zeros((conditions.size, len(thermal.held)))
+    for ref, i in thermal.node.items():
+        if ref in thermal.heated:
+            power[:, i] += _dissipation(network, v, currents, values, ref)
+    found = thermal.temperatures(conditions.values["ambient"], power)
+    # a runaway leaves the physical span; such a point is reported as not converged
+    plausible = (found > 1) & (found < 2000)
+    return np.where(state.converged[:, None] & plausible, found, nodes)

@@ -1,0 +1,150 @@
+"""Linearised circuit: ``G + s·C`` at each operating point.
+
+The unknowns are those of the nodal equations and one more an amplifier, the output of its first
+pole: ``(V(IN+) − V(IN−)) = y·(1 + s/ω_1)/A0`` and ``y = u·(1 + s/ω_2)`` with the internal output ``u``.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from ..devices import diode, transistor
+from ..devices.constants import Array, BoolArray
+from .values import columns
+
+if TYPE_CHECKING:
+    from .operating_points import OperatingPoints
+
+
+@dataclass(frozen=True)
+class SmallSignal:
+    """Linear network at each operating point.
+
+    Attributes
+    ----------
+    conductance, capacitance : ndarray, shape (conditions, size, size)
+    output_rows : ndarray of int, shape (amplifiers,)
+        Row of ``V(OUT) + r·i − u = 0`` of each amplifier.
+    internal_columns : ndarray of int, shape (amplifiers,)
+        Column of the internal output u.
+    state_columns : ndarray of int, shape (amplifiers,)
+        Column of the output y of the first pole.
+    linear : ndarray of bool, shape (conditions, amplifiers)
+    """
+
+    conductance: Array
+    capacitance: Array
+    output_rows: Array
+    internal_columns: Array
+    state_columns: Array
+    linear: BoolArray
+
+
+def linearise(points: OperatingPoints) -> SmallSignal:
+    """Linearise at all operating points; conditions that did not converge hold meaningless numbers.
+
+    Parameters
+    ----------
+    points : OperatingPoints
+
+    Returns
+    -------
+    SmallSignal
+    """
+    equations, network, values = points.equations, points.network, points.values
+    x = points.state_vector.x
+    tangents = equations.junction_voltages(x, values)
+    jacobian = equations.evaluate(x, tangents, values, equations.linear_matrix(values))[1]
+    count, base = jacobian.shape[:2]
+    amps = len(network.amplifiers)
+    size = base + amps
+    # one row and column more than needed: what concerns fixed nodes is stamped there and cut off
+    g = np.zeros((count, size + 1, size + 1))
+    g[:, :base, :base] = jacobian
+    c = np.zeros_like(g)
+    linear = np.stack([points.linear(r) for r in network.amplifiers], axis=1) if amps else np.zeros((count, 0), bool)
+    states = base + np.arange(amps)
+    _amplifier_poles(points, g, c, equations.gain_rows, states, linear)
+    stamp = _Stamp(c, [*range(network.free), *[size] * (len(network.nodes) - network.free)])
+    _transistor_charges(points, stamp)
+    _diode_charges(points, stamp)
+    _capacitors(points, stamp)
+    return SmallSignal(
+        g[:, :size, :size], c[:, :size, :size], equations.output_rows, equations.gain_rows, states, linear
+    )
+
+
+@dataclass
+class _Stamp:
+    """Puts capacitances between nodes into the matrix; fixed nodes fall into the last row."""
+
+    matrix: Array
+    rows: list[int]
+
+    def add(self, a: int, b: int, value: Array) -> None:
+        i, j = self.rows[a], self.rows[b]
+        self.matrix[:, i, i] += value
+        self.matrix[:, j, j] += value
+        self.matrix[:, i, j] -= value
+        self.matrix[:, j, i] -= value
+
+
+def _amplifier_poles(
+    points: OperatingPoints, g: Array, c: Array, rows: Array, states: Array, linear: BoolArray
+) -> None:
+    p = points.parameters
+    count = len(g)
+    for i, ref in enumerate(points.network.amplifiers):
+        row, state, on = rows[i], states[i], linear[:, i]
+        gain = points.values.gain[:, i]
+        second = columns([p.of(ref, "second_pole", np.inf)], count)[:, 0]
+        bandwidth = columns([p.of(ref, "gain_bandwidth")], count)[:, 0]
+        # saturated amplifiers keep the row of the operating point; their state just follows
+        g[:, row, row] = np.where(on, 0.0, g[:, row, row])
+        g[:, row, state] = np.where(on, -1 / gain, 0.0)
+        c[:, row, state] = np.where(on, -1 / (2 * np.pi * bandwidth), 0.0)
+        g[:, state, state] = 1.0
+        g[:, state, row] = np.where(on, -1.0, 0.0)
+        c[:, state, row] = np.where(on, -1 / (2 * np.pi * second), 0.0)
+
+
+def _transistor_charges(points: OperatingPoints, stamp: _Stamp) -> None:
+    network, p = points.network, points.parameters
+    tangents = points.equations.junction_voltages(points.state_vector.x, points.values)
+    response = transistor.respond(tangents.v_be, tangents.v_bc, points.values.transistor)
+    for i, ref in enumerate(network.transistors):
+        collector, base, emitter = network.terminals[i]
+        stored = p.of(ref, "transit_time") * response.transport_be[:, i]
+        stamp.add(base, emitter, p.of(ref, "emitter_capacitance") + stored)
+        stamp.add(base, collector, p.of(ref, "collector_capacitance"))
+
+
+def _diode_charges(points: OperatingPoints, stamp: _Stamp) -> None:
+    p = points.parameters
+    voltage = points.equations.junction_voltages(points.state_vector.x, points.values).diode
+    _, conductance = diode.respond(voltage, points.values.diode)
+    for i, element in enumerate(points.network.diodes):
+        ref, kind = element.key
+        stored = p.of(ref, "transit_time") * conductance[:, i] if kind == "junction" else np.zeros(1)
+        stamp.add(element.a, element.b, p.of(ref, "capacitance") + stored)
+
+
+def _capacitors(points: OperatingPoints, stamp: _Stamp) -> None:
+    network, p = points.network, points.parameters
+    ground = next(i for n, i in network.nodes.items() if n in p.design.nets and p.design.nets[n].role == "ground")
+    for ref, part in p.design.parts.items():
+        pins = [network.nodes[n] for n in part.pins.values()]
+        if part.kind == "capacitor":
+            stamp.add(pins[0], pins[1], p.of(ref, "value"))
+        if part.kind == "op-amp":
+            plus, minus = network.nodes[part.pins["IN+"]], network.nodes[part.pins["IN-"]]
+            stamp.add(plus, minus, p.of(ref, "input_capacitance"))
+            for node in (plus, minus):
+                stamp.add(node, ground, p.of(ref, "common_mode_capacitance"))
+    for name, net in p.design.nets.items():
+        for key in ("load_capacitance", "source_capacitance"):
+            if getattr(net, key) is not None and name in network.nodes:
+                stamp.add(network.nodes[name], ground, p.of(name, key))

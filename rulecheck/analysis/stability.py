@@ -1,0 +1,245 @@
+"""Natural frequencies and return ratios of the linearised circuit, at every operating point.
+
+The pencil ``G + s·C`` is reduced to the columns that C touches: with ``N = G⁻¹C`` its natural frequencies
+are ``s = −1/μ`` for the eigenvalues μ of N there, and every transfer function is a sum over them.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from ..devices.constants import AnyArray, Array, BoolArray, ComplexArray
+from .margins import Margins, margins
+from .small_signal import SmallSignal, linearise
+
+if TYPE_CHECKING:
+    from .operating_points import OperatingPoints
+
+FASTEST = 1e14
+"""Natural frequencies above this [1/s] are of algebraic constraints and rounding, not of the circuit."""
+SLOWEST_SHARE = 1e-14
+DAMPING_SPAN = 100.0
+"""Damping is judged below this many times the largest gain-bandwidth."""
+TAKES_PART = 0.2
+
+
+@dataclass(frozen=True)
+class Modes:
+    """Natural modes of each condition.
+
+    Attributes
+    ----------
+    frequency : ndarray of complex, shape (conditions, modes) [1/s]
+        NaN where a mode is at infinity.
+    mu : ndarray of complex, shape (conditions, modes) [s]
+        Eigenvalues of ``G⁻¹C``.
+    right, left : ndarray of complex, shape (conditions, modes, modes)
+    columns : ndarray of int, shape (modes,)
+        Unknowns that carry the state.
+    response : ndarray, shape (conditions, unknowns, modes)
+        ``G⁻¹C`` on those columns.
+    """
+
+    frequency: ComplexArray
+    mu: ComplexArray
+    right: ComplexArray
+    left: ComplexArray
+    columns: Array
+    response: Array
+
+
+def find_modes(system: SmallSignal) -> Modes:
+    """Eigenvalues and eigenvectors of the reduced network, all conditions at once.
+
+    Parameters
+    ----------
+    system : SmallSignal
+
+    Returns
+    -------
+    Modes
+    """
+    columns = np.flatnonzero(np.any(system.capacitance != 0, axis=(0, 1)))
+    response = np.linalg.solve(system.conductance, system.capacitance[:, :, columns])
+    mu, right = np.linalg.eig(response[:, columns, :])
+    mu, right = mu.astype(complex), right.astype(complex)
+    left = _inverse(right)
+    size = np.abs(mu)
+    largest = size.max(axis=1, keepdims=True, initial=0.0)
+    finite = (size > 1 / FASTEST) & (size > SLOWEST_SHARE * largest)
+    frequency = np.where(finite, -1 / np.where(finite, mu, 1), np.nan)
+    return Modes(frequency, mu, right, left, columns, response)
+
+
+def _inverse(right: ComplexArray) -> ComplexArray:
+    try:
+        return np.linalg.inv(right)
+    except np.linalg.LinAlgError:
+        # exactly defective somewhere: the least disturbance that makes the vectors independent
+        nudge = 1e-12 * np.random.default_rng(0).standard_normal(right.shape[1:])
+        return np.linalg.inv(right + nudge)
+
+
+@dataclass(frozen=True)
+class ReturnRatio:
+    """Return ratio T of one amplifier's controlled source, all others active, as a function of frequency.
+
+    The response of the internal output to a disturbance added to it is ``u = u_0 − s·Σ a_i/(1 + s·μ_i)``;
+    then ``T = −u/(1 + u)``. `dc` is T at zero frequency.
+    """
+
+    start: Array
+    weight: ComplexArray
+    mu: ComplexArray
+    dc: Array
+
+    def at(self, frequency: Array, index: Array | slice = slice(None)) -> ComplexArray:
+        """T at frequencies [Hz] of shape (conditions, points), or one per chosen condition."""
+        s = 2j * np.pi * frequency
+        weight, mu, start = self.weight[index], self.mu[index], self.start[index]
+        if s.ndim > weight.ndim - 1:
+            weight, mu, start = weight[:, None, :], mu[:, None, :], start[:, None]
+        u = start - s * np.sum(weight / (1 + s[..., None] * mu), axis=-1)
+        return -u / (1 + u)
+
+
+def return_ratio(system: SmallSignal, modes: Modes, amplifier: int) -> ReturnRatio:
+    """Return ratio of one amplifier (its index) at all conditions; saturated ones give 0."""
+    size = system.conductance.shape[-1]
+    disturbance = np.zeros((len(system.conductance), size, 1))
+    disturbance[:, system.output_rows[amplifier]] = 1
+    at_dc = np.linalg.solve(system.conductance, disturbance)[..., 0]
+    u = system.internal_columns[amplifier]
+    inner = np.einsum("nij,nj->ni", modes.left, at_dc[:, modes.columns].astype(complex))
+    outer = np.einsum("nj,nji->ni", modes.response[:, u, :].astype(complex), modes.right)
+    return ReturnRatio(at_dc[:, u], inner * outer, modes.mu, _dc(system, disturbance, amplifier))
+
+
+def _dc(system: SmallSignal, disturbance: Array, amplifier: int) -> Array:
+    """Return ratio at zero frequency, with the source itself dead: ``1 + u`` would cancel at high gains."""
+    u = system.internal_columns[amplifier]
+    dead = system.conductance.copy()
+    dead[:, system.output_rows[amplifier], u] += system.linear[:, amplifier]
+    try:
+        return -np.linalg.solve(dead, disturbance)[:, u, 0]
+    except np.linalg.LinAlgError:
+        # a network that only this amplifier holds together: its return ratio has no bound
+        response = np.linalg.solve(system.conductance, disturbance)[:, u, 0]
+        return -response / (1 + response)
+
+
+@dataclass
+class Loops:
+    """Stability figures at every operating point; arrays over conditions, NaN where there is none.
+
+    Attributes
+    ----------
+    rightmost : ndarray [1/s]
+        Largest real part of a natural frequency.
+    least_damping : ndarray
+        Least damping ratio of a complex pair; 1 where there is none.
+    damping_frequency : ndarray [Hz]
+        Where it is.
+    """
+
+    points: OperatingPoints
+    system: SmallSignal
+    modes: Modes
+    rightmost: Array
+    least_damping: Array
+    damping_frequency: Array
+    _critical: AnyArray
+    _margins: dict[str, Margins] = field(default_factory=dict)
+
+    def margins(self, amplifier: str) -> Margins:
+        """All margins of one amplifier, computed when first asked."""
+        if amplifier not in self._margins:
+            index = self.points.network.amplifiers.index(amplifier)
+            ratio = return_ratio(self.system, self.modes, index)
+            judged = self.system.linear[:, index] & self.points.converged
+            self._margins[amplifier] = margins(ratio, self.modes.frequency, judged)
+        return self._margins[amplifier]
+
+    def dc_return_ratio(self, amplifier: str) -> Array:
+        """Return ratio at DC; positive is negative feedback."""
+        return self.margins(amplifier).dc_return_ratio
+
+    def phase_margin(self, amplifier: str) -> Array:
+        """Least phase margin over unity crossings [deg]."""
+        return self.margins(amplifier).phase_margin
+
+    def crossover(self, amplifier: str) -> Array:
+        """Unity crossing of least phase margin [Hz]."""
+        return self.margins(amplifier).crossover
+
+    def gain_margin(self, amplifier: str) -> Array:
+        """Gain margin at −180° [dB]."""
+        return self.margins(amplifier).gain_margin
+
+    def modulus_margin(self, amplifier: str) -> Array:
+        """Least ``|1 + T|`` over frequency."""
+        return self.margins(amplifier).modulus_margin
+
+    def participants(self, index: int) -> tuple[str, ...]:
+        """Amplifiers that take part in the critical mode of one condition, the strongest first."""
+        mode = int(self._critical[index])
+        share = np.abs(self.modes.right[index, :, mode] * self.modes.left[index, mode, :])
+        place = {int(c): i for i, c in enumerate(self.modes.columns)}
+        own = {}
+        for i, ref in enumerate(self.points.network.amplifiers):
+            states = (int(self.system.state_columns[i]), int(self.system.internal_columns[i]))
+            own[ref] = sum(float(share[place[c]]) for c in states if c in place)
+        most = max(own.values(), default=0.0)
+        return tuple(r for r, s in sorted(own.items(), key=lambda item: -item[1]) if most and s >= TAKES_PART * most)
+
+
+def analyse_loops(points: OperatingPoints, system: SmallSignal | None = None) -> Loops:
+    """Natural frequencies at every operating point, and loops to ask margins of.
+
+    Parameters
+    ----------
+    points : OperatingPoints
+    system : SmallSignal, optional
+        The linearised network, where a changed one is to be analysed.
+
+    Returns
+    -------
+    Loops
+    """
+    system = linearise(points) if system is None else system
+    system = _stand_in(system, points.converged)
+    modes = find_modes(system)
+    widest = max((float(points.parameters.of(r, "gain_bandwidth").max()) for r in points.network.amplifiers),
+                 default=np.inf)
+    rightmost, damping, frequency, critical = _judge(modes, 2 * np.pi * widest * DAMPING_SPAN)
+    blank = [np.where(points.converged, a, np.nan) for a in (rightmost, damping, frequency)]
+    return Loops(points, system, modes, *blank, critical)
+
+
+def _stand_in(system: SmallSignal, converged: BoolArray) -> SmallSignal:
+    """Give points that did not converge a harmless matrix, so that they do not stop the batch."""
+    if converged.all():
+        return system
+    harmless = np.eye(system.conductance.shape[-1])
+    g = np.where(converged[:, None, None], system.conductance, harmless)
+    c = np.where(converged[:, None, None], system.capacitance, harmless)
+    return SmallSignal(g, c, system.output_rows, system.internal_columns, system.state_columns, system.linear)
+
+
+def _judge(modes: Modes, fastest: float) -> tuple[Array, Array, Array, AnyArray]:
+    s = modes.frequency
+    size = np.abs(s)
+    real = np.where(np.isfinite(size), s.real, -np.inf)
+    rightmost = real.max(axis=1, initial=-np.inf)
+    pair = np.isfinite(size) & (np.abs(s.imag) > 1e-9 * size) & (size < fastest)
+    ratio = np.where(pair, -s.real / np.where(pair, size, 1), np.inf)
+    worst = ratio.argmin(axis=1)
+    rows = np.arange(len(s))
+    damping = np.minimum(ratio[rows, worst], 1.0)
+    frequency = np.where(np.isfinite(ratio[rows, worst]), size[rows, worst] / (2 * np.pi), np.nan)
+    # a real mode in the right half-plane is worse than any pair
+    critical = np.where((rightmost > 0) & (damping > 0), real.argmax(axis=1), worst)
+    return np.where(np.isfinite(rightmost), rightmost, np.nan), damping, frequency, critical

@@ -1,0 +1,1 @@
+"""Figures that others have published, and what the program must make of them."""
