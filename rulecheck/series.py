@@ -5,7 +5,7 @@ from __future__ import annotations
 import functools
 import math
 
-# Up to E24 the values are agreed ones: eight of them differ from the rounded powers (2.7 where rounding gives 2.6).
+# Up to E24 the values are agreed ones: eight differ from the rounded powers (2.7 where rounding gives 2.6).
 _E24 = (
     1.0, 1.1, 1.2, 1.3, 1.5, 1.6, 1.8, 2.0, 2.2, 2.4, 2.7, 3.0,
     3.3, 3.6, 3.9, 4.3, 4.7, 5.1, 5.6, 6.2, 6.8, 7.5, 8.2, 9.1,
@@ -14,7 +14,7 @@ _E24 = (
 # E48 to E192 are 10^(i/N) to three digits, with one value of E192 agreed otherwise.
 _ROUNDED, _AGREED = 9.19, 9.20
 
-#: Series by the tolerance each is made for, as fractions, coarsest first (IEC 60063; E3 is for more than 20 %).
+#: Series by the tolerance each is made for, as fractions, coarsest first (IEC 60063); E3 is for more still.
 TOLERANCES = {"E6": 0.2, "E12": 0.1, "E24": 0.05, "E48": 0.02, "E96": 0.01, "E192": 0.005}
 
 SERIES = ("E3", *TOLERANCES)
@@ -60,7 +60,7 @@ def in_series(value: float, series: str) -> bool:
 
 
 def series_for_tolerance(tolerance: float) -> str:
-    """Series made for parts of a tolerance, given as a fraction: ``E96`` for 0.01, ``E192`` for anything closer."""
+    """Series made for parts of a tolerance, given as a fraction: 0.01 gives ``E96``, all closer ``E192``."""
     if tolerance > TOLERANCES["E6"] * (1.0 + _SAME):
         return "E3"
     return next((name for name, least in TOLERANCES.items() if tolerance >= least * (1.0 - _SAME)), "E192")

@@ -12,6 +12,7 @@ import numpy as np
 
 from ..devices.constants import Array
 from ..errors import CommandError
+from ..units import format_quantity
 
 if TYPE_CHECKING:
     from ..design.model import Design, Input
@@ -90,11 +91,18 @@ def spaced(source: Input, count: int = POINTS_PER_INPUT) -> Array:
     return points
 
 
-def review_grid(design: Design) -> Conditions:
-    """The review grid: inputs one at a time and in corners, by ambient, by supplies; potentiometers at their ends."""
-    typical = typical_row(design)
+def review_grid(design: Design, typical: Row | None = None) -> Conditions:
+    """The review grid: inputs one at a time and in corners, by ambient, by supplies; potentiometers at their ends.
+
+    Parameters
+    ----------
+    design : Design
+    typical : dict of str to float, optional
+        What is not varied; default `typical_row`.
+    """
+    typical = typical or typical_row(design)
     rows = [row | supply | {"ambient": ambient}
-            for row in _input_rows(design) + _potentiometer_rows(design)
+            for row in _input_rows(design) + _potentiometer_rows(design, typical)
             for ambient in _distinct((design.ambient.min, design.ambient.typ, design.ambient.max))
             for supply in supply_rows(design)]
     return from_rows([typical | row for row in rows], typical)
@@ -107,7 +115,7 @@ def from_rows(rows: Sequence[Row], typical: Row) -> Conditions:
     return Conditions(MappingProxyType(values))
 
 
-def from_points(design: Design, columns: Mapping[str, Array]) -> Conditions:
+def from_points(design: Design, columns: Mapping[str, Array], typical: Row | None = None) -> Conditions:
     """Conditions a user asked for: one a row of `columns`, what is not named at its typ.
 
     Parameters
@@ -115,13 +123,15 @@ def from_points(design: Design, columns: Mapping[str, Array]) -> Conditions:
     design : Design
     columns : mapping of str to ndarray, shape (conditions,)
         SI values by the names of inputs, ``ambient``, supplies, references, potentiometers.
+    typical : dict of str to float, optional
+        What is not named; default `typical_row`.
 
     Raises
     ------
     CommandError
         For a name that is none of these.
     """
-    typical = typical_row(design)
+    typical = typical or typical_row(design)
     for name in columns:
         if name not in typical:
             allowed = ", ".join(typical)
@@ -170,15 +180,15 @@ def _input_groups(design: Design) -> list[tuple[str, ...]]:
     return list(dict.fromkeys(g for g in groups if g)) or [tuple(design.inputs)]
 
 
-def _potentiometer_rows(design: Design) -> list[Row]:
+def _potentiometer_rows(design: Design, typical: Row) -> list[Row]:
     ends = [{ref: position} for ref, part in design.parts.items() if part.kind == "potentiometer"
-            for position in (part.position.min, part.position.max) if position != part.position.typ]
+            for position in (part.position.min, part.position.max) if position != typical[ref]]
     return [row | end for end in ends for row in _input_rows(design)]
 
 
-def fault_scenarios(design: Design) -> Conditions:
+def fault_scenarios(design: Design, typical: Row | None = None) -> Conditions:
     """Fault scenarios: inputs at what they must survive, supplies absent alone and all together."""
-    typical = typical_row(design)
+    typical = typical or typical_row(design)
     powers = [n for n, net in design.nets.items() if net.role in ("supply", "reference")]
     scenarios: list[tuple[str, Row, tuple[str, ...]]] = []
     for name, row in _survival_rows(design):
@@ -197,17 +207,17 @@ def fault_scenarios(design: Design) -> Conditions:
 
 
 def _survival_rows(design: Design) -> list[tuple[str, Row]]:
-    from ..units import format_quantity
-
-    return [(f"{n} at {format_quantity(v, s.unit)}", {n: v}) for n, s in design.inputs.items()
-            for v in _distinct(s.survives or (s.low, s.high))] or [("no inputs", {})]
+    return _end_rows({n: (s, s.survives or (s.low, s.high)) for n, s in design.inputs.items()})
 
 
 def _range_rows(design: Design) -> list[tuple[str, Row]]:
-    from ..units import format_quantity
+    return _end_rows({n: (s, (s.low, s.high)) for n, s in design.inputs.items()})
 
-    return [(f"{n} at {format_quantity(v, s.unit)}", {n: v}) for n, s in design.inputs.items()
-            for v in _distinct((s.low, s.high))] or [("no inputs", {})]
+
+def _end_rows(ends: Mapping[str, tuple[Input, tuple[float, float]]]) -> list[tuple[str, Row]]:
+    """Each input alone at either end, with words for it."""
+    return [(f"{name} at {format_quantity(value, source.unit)}", {name: value})
+            for name, (source, pair) in ends.items() for value in _distinct(pair)] or [("no inputs", {})]
 
 
 def _distinct(values: Sequence[float]) -> list[float]:

@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+import hashlib
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -13,7 +14,7 @@ from ..errors import AnalysisError
 from .equations import Currents, Equations
 from .network import Network, build_network
 from .newton import State, solve
-from .thermal import ThermalNetwork, build_thermal
+from .thermal import build_thermal
 from .values import Overrides, Parameters, Values, compute_values
 
 if TYPE_CHECKING:
@@ -22,6 +23,7 @@ if TYPE_CHECKING:
 
 TEMPERATURE_STEP = 1e-7  # K: far inside 1 mK, so that voltages keep 1e-6 of reading
 THERMAL_ROUNDS = 60
+LEAST_TEMPERATURE, MOST_TEMPERATURE = 1.0, 2000.0  # K
 
 
 @dataclass(frozen=True)
@@ -148,9 +150,6 @@ class OperatingPoints:
     def _all_voltages(self) -> Array:
         return self.equations.node_voltages(self.state_vector.x, self.values)
 
-    def _element(self, elements: list[str], part: str) -> int:
-        return elements.index(part)
-
 
 def _blank(array: Array, converged: BoolArray) -> Array:
     mask = converged if array.ndim == 1 else converged[:, None]
@@ -237,7 +236,7 @@ def _dissipation(network: Network, v: Array, currents: Currents, values: Values,
 
 def solve_operating_points(
     design: Design, conditions: Conditions, *, with_clamps: bool = False, overrides: Overrides | None = None,
-    temperatures: dict[str, Array] | None = None, start: State | None = None,
+    temperatures: Mapping[str, Array] | None = None, cache: dict[Any, Any] | None = None,
 ) -> OperatingPoints:  # fmt: skip
     """Operating points with the electrical and thermal solutions brought together.
 
@@ -251,55 +250,97 @@ def solve_operating_points(
         Parameters in place of their nominal, see `Parameters`.
     temperatures : dict of str to ndarray, optional
         Part temperatures imposed in place of the computed ones [K].
-    start : State, optional
-        A solution near by.
+    cache : dict, optional
+        Solved states by all that they depend on; looked into and added to.
 
     Returns
     -------
     OperatingPoints
     """
-    network = build_network(design, with_clamps)
-    equations = Equations(network)
-    thermal = build_thermal(design)
-    parameters = Parameters(design, overrides)
-    imposed = temperatures or {}
-    nodes = np.broadcast_to(
-        thermal.temperatures(conditions.values["ambient"], np.zeros((conditions.size, len(thermal.held)))),
-        (conditions.size, len(thermal.held)),
+    task = _Task(design, conditions, with_clamps, Parameters(design, overrides), temperatures or {})
+    memory = {} if cache is None else cache
+    key = task.key()
+    if key not in memory:
+        memory[key] = task.run()
+    state, nodes = memory[key]
+    temps = task.temperatures(nodes)
+    return OperatingPoints(
+        task.network, task.equations, conditions, task.values(nodes), state, temps, task.parameters
     )
-    state = start
-    for _ in range(THERMAL_ROUNDS):
-        temps = {ref: nodes[:, i] for ref, i in thermal.node.items()} | imposed
-        values = compute_values(network, conditions, _lookup(temps, conditions), parameters)
-        state = solve(equations, values, state)
-        moved = _heat(network, equations, thermal, values, state, conditions, nodes)
-        change = np.abs(moved - nodes).max(axis=1, initial=0.0)
-        if (change[state.converged] < TEMPERATURE_STEP).all():
-            break
-        nodes = moved
-    else:
+
+
+class _Task:
+    """One batch to solve: what it depends on, and the loop between currents and temperatures."""
+
+    def __init__(
+        self, design: Design, conditions: Conditions, with_clamps: bool, parameters: Parameters,
+        imposed: Mapping[str, Array],
+    ) -> None:  # fmt: skip
+        self.network = build_network(design, with_clamps)
+        self.equations = Equations(self.network)
+        self.thermal = build_thermal(design)
+        self.conditions, self.parameters, self.imposed = conditions, parameters, imposed
+
+    @property
+    def ambient(self) -> Array:
+        return self.conditions.values["ambient"]
+
+    def temperatures(self, nodes: Array) -> dict[str, Array]:
+        """Temperatures of the parts that are not at ambient."""
+        return {ref: nodes[:, i] for ref, i in self.thermal.node.items()} | dict(self.imposed)
+
+    def values(self, nodes: Array) -> Values:
+        temps = self.temperatures(nodes)
+        return compute_values(self.network, self.conditions, lambda ref: temps.get(ref, self.ambient), self.parameters)
+
+    def unheated(self) -> Array:
+        """Temperatures of the thermal nodes without dissipation."""
+        return self.thermal.temperatures(self.ambient, np.zeros((self.conditions.size, len(self.thermal.held))))
+
+    def key(self) -> str:
+        """Digest of all that the solution depends on: topology, conditions, parameters read, thermal paths."""
+        network, thermal, design = self.network, self.thermal, self.network.design
+        self.values(self.unheated())  # reads every parameter that matters
+        lists = (network.resistors, network.branches, network.sources, network.diodes, network.clamps)
+        nets = [(n, net.role, net.tempco, net.compliance, net.source) for n, net in design.nets.items()]
+        text = repr((lists, network.nodes, network.transistors, network.amplifiers, nets, thermal.node,
+                     sorted(thermal.heated), network.with_clamps))
+        arrays = [network.terminals, network.pins, thermal.rise, thermal.from_ambient, thermal.held]
+        arrays += [*self.conditions.values.values(), *self.conditions.absent.values(), *self.imposed.values()]
+        digest = hashlib.sha256(text.encode() + repr([*self.imposed]).encode())
+        for name, value in sorted(self.parameters.read.items()):
+            digest.update(repr(name).encode() + value.tobytes())
+        for array in arrays:
+            digest.update(np.ascontiguousarray(array).tobytes())
+        return digest.hexdigest()
+
+    def run(self) -> tuple[State, Array]:
+        """Solve, heat, and solve again until no temperature moves."""
+        nodes, state = self.unheated(), None
+        change = np.zeros(self.conditions.size)
+        for _ in range(THERMAL_ROUNDS):
+            values = self.values(nodes)
+            state = solve(self.equations, values, state)
+            moved = self.heated(values, state, nodes)
+            change = np.abs(moved - nodes).max(axis=1, initial=0.0)
+            if (change[state.converged] < TEMPERATURE_STEP).all():
+                return state, nodes
+            nodes = moved
+        assert state is not None
         state.converged = state.converged & (change < TEMPERATURE_STEP)
-    return OperatingPoints(network, equations, conditions, values, state, temps, parameters)
+        return state, nodes
 
-
-def _lookup(temps: dict[str, Array], conditions: Conditions) -> Callable[[str], Array]:
-    return lambda ref: temps.get(ref, conditions.values["ambient"])
-
-
-def _heat(
-    network: Network, equations: Equations, thermal: ThermalNetwork, values: Values, state: State,
-    conditions: Conditions, nodes: Array,
-) -> Array:  # fmt: skip
-    """Temperatures of the thermal nodes for the dissipations at a state; kept where it did not converge."""
-    if not thermal.rise.any():
-        return nodes
-    v = equations.node_voltages(state.x, values)
-    currents = _currents(equations, values, state)
-    power = np.zeros((conditions.size, len(thermal.held)))
-    for ref, i in thermal.node.items():
-        if ref in thermal.heated:
-            power[:, i] += _dissipation(network, v, currents, values, ref)
-    found = thermal.temperatures(conditions.values["ambient"], power)
-    # a runaway leaves the physical span; such a point is reported as not converged
-    plausible = (found > 1) & (found < 2000)
-    return np.where(state.converged[:, None] & plausible, found, nodes)
+    def heated(self, values: Values, state: State, nodes: Array) -> Array:
+        """Temperatures of the thermal nodes for the dissipations at a state; kept where it did not converge."""
+        if not self.thermal.rise.any():
+            return nodes
+        v = self.equations.node_voltages(state.x, values)
+        currents = _currents(self.equations, values, state)
+        power = np.zeros((self.conditions.size, len(self.thermal.held)))
+        for ref, i in self.thermal.node.items():
+            if ref in self.thermal.heated:
+                power[:, i] += _dissipation(self.network, v, currents, values, ref)
+        found = self.thermal.temperatures(self.ambient, power)
+        # a runaway leaves the physical span; such a point is reported as not converged
+        plausible = (found > LEAST_TEMPERATURE) & (found < MOST_TEMPERATURE)
+        return np.where(state.converged[:, None] & plausible, found, nodes)

@@ -67,11 +67,15 @@ def find_modes(system: SmallSignal) -> Modes:
     mu, right = np.linalg.eig(response[:, columns, :])
     mu, right = mu.astype(complex), right.astype(complex)
     left = _inverse(right)
+    return Modes(mode_frequencies(mu), mu, right, left, columns, response)
+
+
+def mode_frequencies(mu: ComplexArray) -> ComplexArray:
+    """Natural frequencies of eigenvalues of ``G⁻¹C``, modes last [1/s]; NaN where one is at infinity."""
     size = np.abs(mu)
-    largest = size.max(axis=1, keepdims=True, initial=0.0)
+    largest = size.max(axis=-1, keepdims=True, initial=0.0)
     finite = (size > 1 / FASTEST) & (size > SLOWEST_SHARE * largest)
-    frequency = np.where(finite, -1 / np.where(finite, mu, 1), np.nan)
-    return Modes(frequency, mu, right, left, columns, response)
+    return np.where(finite, -1 / np.where(finite, mu, 1), np.nan)
 
 
 def _inverse(right: ComplexArray) -> ComplexArray:
@@ -229,13 +233,31 @@ def _stand_in(system: SmallSignal, converged: BoolArray) -> SmallSignal:
     return SmallSignal(g, c, system.output_rows, system.internal_columns, system.state_columns, system.linear)
 
 
+def damping_of(frequency: ComplexArray, fastest: float) -> Array:
+    """Least damping ratio of natural frequencies, modes last: 1 without complex pairs below `fastest` [1/s].
+
+    A mode in the right half-plane counts with its (negative) ratio, real ones too.
+    """
+    ratio = _ratios(frequency, fastest)
+    size = np.abs(frequency)
+    unstable = np.isfinite(size) & (frequency.real > 0)
+    real = np.where(unstable, -frequency.real / np.where(unstable, size, 1), np.inf)
+    return np.minimum(np.minimum(ratio, real).min(axis=-1, initial=np.inf), 1.0)
+
+
+def _ratios(s: ComplexArray, fastest: float) -> Array:
+    """Damping ratios of complex pairs below `fastest`, infinite elsewhere."""
+    size = np.abs(s)
+    pair = np.isfinite(size) & (np.abs(s.imag) > 1e-9 * size) & (size < fastest)
+    return np.where(pair, -s.real / np.where(pair, size, 1), np.inf)
+
+
 def _judge(modes: Modes, fastest: float) -> tuple[Array, Array, Array, AnyArray]:
     s = modes.frequency
     size = np.abs(s)
     real = np.where(np.isfinite(size), s.real, -np.inf)
     rightmost = real.max(axis=1, initial=-np.inf)
-    pair = np.isfinite(size) & (np.abs(s.imag) > 1e-9 * size) & (size < fastest)
-    ratio = np.where(pair, -s.real / np.where(pair, size, 1), np.inf)
+    ratio = _ratios(s, fastest)
     worst = ratio.argmin(axis=1)
     rows = np.arange(len(s))
     damping = np.minimum(ratio[rows, worst], 1.0)

@@ -72,7 +72,7 @@ def take(record: T, index: Any) -> T:
 
 
 class Parameters:
-    """Parameter values by part, with overrides.
+    """Parameter values by part, with overrides; `read` holds what has been asked for.
 
     Parameters
     ----------
@@ -84,13 +84,19 @@ class Parameters:
     def __init__(self, design: Design, overrides: Overrides | None = None) -> None:
         self.design = design
         self.overrides = dict(overrides or {})
+        self.read: dict[tuple[str, str], Array] = {}
 
     def of(self, ref: str, name: str, default: float = 0.0) -> Array:
         """Value of one parameter, shape (conditions,) or (1,); `default` where it is absent."""
+        self.read[ref, name] = found = self._find(ref, name, default)
+        return found
+
+    def _find(self, ref: str, name: str, default: float) -> Array:
         if (ref, name) in self.overrides:
             return np.atleast_1d(np.asarray(self.overrides[ref, name], dtype=float))
-        owner: Any = self.design.parts.get(ref) or self.design.nets[ref]
-        value = getattr(owner, name, None)
+        value: Any = self.design.parts.get(ref) or self.design.nets[ref]
+        for step in name.split("."):
+            value = getattr(value, step, None)
         return np.array([default if value is None else getattr(value, "typ", value)], dtype=float)
 
     def table(self, refs: list[str], names: tuple[str, ...], size: int) -> dict[str, Array]:
@@ -181,9 +187,7 @@ class _Context:
         return np.ones(1) if absent is None else np.where(absent, 0.0, 1.0)
 
     def headroom(self, ref: str, side: str) -> Array:
-        override = self.parameters.overrides.get((ref, f"output_headroom.{side}"))
-        value = getattr(self.part(ref).output_headroom, side).typ if override is None else override
-        return np.atleast_1d(np.asarray(value, dtype=float))
+        return self.parameters.of(ref, f"output_headroom.{side}")
 
     def part(self, ref: str) -> Part:
         return self.parameters.design.parts[ref]
@@ -198,7 +202,7 @@ class _Context:
         net = nets[node]
         if net.role == "ground":
             return np.zeros(1)
-        value = self.parameters.overrides.get((node, "voltage"), self.conditions.values[node])
+        value = self.conditions.values[node]
         if net.role == "input":
             return np.asarray(value)
         return value * passive.scale(self.ambient, net.tempco or 0.0) * self.present(node)

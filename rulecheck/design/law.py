@@ -1,6 +1,6 @@
 """The law of a requirement: ordinary arithmetic with dimensions, never run as code.
 
-The text becomes a tree of the nodes in `law_tree`, which know their value and their dimension.
+`law_text` makes the tree, `law_tree` its value and `law_dimension` its dimension.
 """
 
 from __future__ import annotations
@@ -12,8 +12,9 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
+from rulecheck.design.law_dimension import DimensionCheck, in_unit, missing_scale
 from rulecheck.design.law_text import read_tree
-from rulecheck.design.law_tree import Context, Node, in_unit, missing_scale
+from rulecheck.design.law_tree import Node, Values, evaluate
 from rulecheck.errors import LawError
 from rulecheck.units import NUMBER, Dimension
 
@@ -54,7 +55,7 @@ class Law:
         _check_names(text, found, set(names))
         return cls(text, frozenset(found), tree)
 
-    def evaluate(self, values: Mapping[str, NDArray[np.float64] | float]) -> NDArray[np.float64]:
+    def evaluate(self, values: Values) -> NDArray[np.float64]:
         """Value of the law over conditions, in SI.
 
         Parameters
@@ -67,8 +68,7 @@ class Law:
         ndarray, shape (conditions,)
             Shapes are broadcast; NaN or infinite where the law has no value.
         """
-        with np.errstate(all="ignore"):
-            return np.asarray(self.tree.evaluate(values), dtype=float)
+        return evaluate(self.tree, values)
 
     def dimension(
         self, dimensions: Mapping[str, Dimension], constants: Mapping[str, float] | None = None
@@ -87,7 +87,7 @@ class Law:
         LawError
             Where dimensions do not agree, with the place and the scale that is missing.
         """
-        found = self.tree.dimension(Context(self.text, dimensions, constants or {}))
+        found = DimensionCheck(self.text, dimensions, constants or {}).of(self.tree)
         return NUMBER if found is None else found
 
     def check(
@@ -103,7 +103,7 @@ class Law:
         LawError
             As of `dimension`, or saying by what scale to divide or multiply.
         """
-        found = self.tree.dimension(Context(self.text, dimensions, constants or {}))
+        found = DimensionCheck(self.text, dimensions, constants or {}).of(self.tree)
         if found is not None and found != output:
             message = f"the law {self.text!r} is {in_unit(found)}, the output is {in_unit(output)}"
             raise LawError(message, missing_scale(found, output))

@@ -1,4 +1,7 @@
-"""Reading the text of a law into its tree: a parser of its own, against a closed list of signs and functions."""
+"""Reading the text of a law into its tree, against a closed list of signs and functions.
+
+The parser is its own: a net may be called ``in`` or ``is``, which a programming language keeps for itself.
+"""
 
 from __future__ import annotations
 
@@ -104,10 +107,10 @@ class _Parser:
 
     def _sum(self) -> Node:
         start = self.position
-        terms = [(1.0, self._product())]
+        terms = [("+", self._product())]
         while self.token in ("+", "-"):
-            sign, _ = self._take()
-            terms.append((1.0 if sign == "+" else -1.0, self._product()))
+            operator, _ = self._take()
+            terms.append((operator, self._product()))
         return terms[0][1] if len(terms) == 1 else Sum(self._span(start), tuple(terms))
 
     def _product(self) -> Node:
@@ -131,7 +134,8 @@ class _Parser:
         if self.token != "**":
             return base
         self._take()
-        return Power(self._span(start), base, self._nested(self._signed))
+        exponent = self._nested(self._signed)
+        return Power(self._span(start), base, exponent)
 
     def _atom(self) -> Node:
         start = self.position
@@ -143,6 +147,8 @@ class _Parser:
             raise self._unexpected("a number, a name or a parenthesis")
         name, _ = self._take()
         if self.token != "(":
+            if name in FUNCTIONS and self.kind in ("name", "number"):
+                raise self._fault(f"{name} takes its argument in parentheses", f"write {name}(...)")
             self.names.setdefault(name, start)
             return Name(self._span(start), name)
         if name not in FUNCTIONS:
@@ -168,7 +174,7 @@ class _Parser:
         return inner
 
     def _nested(self, read: Callable[[], Node]) -> Node:
-        """What `read` reads, one level further in."""
+        """Read one level further in."""
         self.depth += 1
         if self.depth > DEEPEST:
             raise self._fault(f"it is nested deeper than {DEEPEST} levels", "name a part of it as a constant")

@@ -1,20 +1,17 @@
-"""The nodes of a law's tree: each knows its value over conditions and its dimension."""
+"""The tree of a law and its value over conditions."""
 
 from __future__ import annotations
 
-import abc
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
-from fractions import Fraction
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from rulecheck.errors import LawError
-from rulecheck.units import NUMBER, Dimension
 
-#: Functions of a law.
+#: All that a law may call, each of one argument.
 FUNCTIONS: dict[str, Callable[[Any], Any]] = {
     "sqrt": np.sqrt,
     "log": np.log,
@@ -23,18 +20,68 @@ FUNCTIONS: dict[str, Callable[[Any], Any]] = {
     "abs": np.abs,
 }
 
-LARGEST_POWER = 100.0  # no circuit comes near; a larger one is a slip
-
 Values = Mapping[str, NDArray[np.float64] | float]
 
 
 @dataclass(frozen=True, slots=True)
-class Context:
-    """What the dimension of a law rests on: its text, for messages, dimensions and known values by name."""
+class Number:
+    """A plain number. `span` is here, as in all nodes, the place in the text."""
 
-    text: str
-    dimensions: Mapping[str, Dimension]
-    constants: Mapping[str, float]
+    span: tuple[int, int]
+    value: float
+
+
+@dataclass(frozen=True, slots=True)
+class Name:
+    """An input, a reference, a constant."""
+
+    span: tuple[int, int]
+    name: str
+
+
+@dataclass(frozen=True, slots=True)
+class Negative:
+    """A part with its sign turned."""
+
+    span: tuple[int, int]
+    operand: Node
+
+
+@dataclass(frozen=True, slots=True)
+class Sum:
+    """Terms, each with its operator ``+`` or ``-``."""
+
+    span: tuple[int, int]
+    terms: tuple[tuple[str, Node], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Product:
+    """Factors, each with its operator ``*`` or ``/``."""
+
+    span: tuple[int, int]
+    factors: tuple[tuple[str, Node], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Power:
+    """A base and its exponent."""
+
+    span: tuple[int, int]
+    base: Node
+    exponent: Node
+
+
+@dataclass(frozen=True, slots=True)
+class Call:
+    """A function and its argument."""
+
+    span: tuple[int, int]
+    function: str
+    argument: Node
+
+
+Node = Number | Name | Negative | Sum | Product | Power | Call
 
 
 def fault(text: str, position: int, message: str, hint: str = "") -> LawError:
@@ -42,181 +89,35 @@ def fault(text: str, position: int, message: str, hint: str = "") -> LawError:
     return LawError(f"in the law {text!r} at character {position + 1}: {message}", hint)
 
 
-def in_unit(dimension: Dimension) -> str:
-    """Words for the dimension of something: ``in V``, ``a plain number``."""
-    return "a plain number" if dimension.is_number else f"in {dimension}"
+def evaluate(node: Node, values: Values) -> NDArray[np.float64]:
+    """Value of a part over conditions; NaN or infinite where it has none.
+
+    Raises
+    ------
+    KeyError
+        `values` lacks a name of it.
+    """
+    with np.errstate(all="ignore"):
+        return np.asarray(_value(node, values), dtype=float)
 
 
-def missing_scale(found: Dimension, wanted: Dimension, what: str = "it") -> str:
-    """Words for the scale that brings `what` from one dimension to another."""
-    ratio = found / wanted
-    if next(exponent for exponent in ratio.exponents if exponent) > 0:
-        return f"divide {what} by a scale in {ratio}"
-    return f"multiply {what} by a scale in {wanted / found}"
-
-
-@dataclass(frozen=True, slots=True)
-class Node(abc.ABC):
-    """A part of a law; `span` is its place in the text."""
-
-    span: tuple[int, int]
-
-    @abc.abstractmethod
-    def evaluate(self, values: Values) -> NDArray[np.float64]:
-        """Value over conditions."""
-
-    @abc.abstractmethod
-    def dimension(self, context: Context) -> Dimension | None:
-        """Dimension; None for a bare zero, which fits any."""
-
-    def fault(self, context: Context, message: str, hint: str = "") -> LawError:
-        """Error about this part."""
-        return fault(context.text, self.span[0], message, hint)
-
-    def shown(self, context: Context) -> str:
-        """Its text in quotes."""
-        return repr(context.text[slice(*self.span)])
-
-
-@dataclass(frozen=True, slots=True)
-class Number(Node):
-    """A plain number."""
-
-    value: float
-
-    def evaluate(self, values: Values) -> NDArray[np.float64]:  # noqa: D102
-        return np.asarray(self.value)
-
-    def dimension(self, context: Context) -> Dimension | None:  # noqa: D102
-        return NUMBER if self.value else None
-
-
-@dataclass(frozen=True, slots=True)
-class Name(Node):
-    """An input, a reference, a constant."""
-
-    name: str
-
-    def evaluate(self, values: Values) -> NDArray[np.float64]:  # noqa: D102
-        return np.asarray(values[self.name], dtype=float)
-
-    def dimension(self, context: Context) -> Dimension | None:  # noqa: D102
-        return context.dimensions[self.name]
-
-
-@dataclass(frozen=True, slots=True)
-class Negative(Node):
-    """A part with its sign turned."""
-
-    operand: Node
-
-    def evaluate(self, values: Values) -> NDArray[np.float64]:  # noqa: D102
-        return -self.operand.evaluate(values)
-
-    def dimension(self, context: Context) -> Dimension | None:  # noqa: D102
-        return self.operand.dimension(context)
-
-
-@dataclass(frozen=True, slots=True)
-class Sum(Node):
-    """Terms with their signs, +1 or -1."""
-
-    terms: tuple[tuple[float, Node], ...]
-
-    def evaluate(self, values: Values) -> NDArray[np.float64]:  # noqa: D102
-        total = np.asarray(0.0)
-        for sign, term in self.terms:
-            total = total + sign * term.evaluate(values)
-        return total
-
-    def dimension(self, context: Context) -> Dimension | None:  # noqa: D102
-        common: Dimension | None = None
-        shown = ""
-        for _, term in self.terms:
-            found = term.dimension(context)
-            if common is None:
-                common, shown = found, term.shown(context)
-            elif found is not None and found != common:
-                message = f"{term.shown(context)} is {in_unit(found)}, {shown} is {in_unit(common)}"
-                hint = missing_scale(found, common, term.shown(context))
-                raise term.fault(context, f"{message}: they cannot be added", hint)
-        return common
-
-
-@dataclass(frozen=True, slots=True)
-class Product(Node):
-    """Factors with the operator before each, ``*`` or ``/``."""
-
-    factors: tuple[tuple[str, Node], ...]
-
-    def evaluate(self, values: Values) -> NDArray[np.float64]:  # noqa: D102
-        total = np.asarray(1.0)
-        for operator, factor in self.factors:
-            value = factor.evaluate(values)
-            total = total * value if operator == "*" else np.divide(total, value)
-        return total
-
-    def dimension(self, context: Context) -> Dimension | None:  # noqa: D102
-        total = NUMBER
-        for operator, factor in self.factors:
-            found = factor.dimension(context) or NUMBER
-            total = total * found if operator == "*" else total / found
-        return total
-
-
-@dataclass(frozen=True, slots=True)
-class Power(Node):
-    """A base and its exponent."""
-
-    base: Node
-    exponent: Node
-
-    def evaluate(self, values: Values) -> NDArray[np.float64]:  # noqa: D102
-        return np.asarray(np.power(self.base.evaluate(values), self.exponent.evaluate(values)))
-
-    def dimension(self, context: Context) -> Dimension | None:  # noqa: D102
-        raised_to = self.exponent.dimension(context) or NUMBER
-        if not raised_to.is_number:
-            message = f"the exponent {self.exponent.shown(context)} is {in_unit(raised_to)}"
-            raise self.exponent.fault(context, message, missing_scale(raised_to, NUMBER))
-        base = self.base.dimension(context) or NUMBER
-        power = self._known_exponent(context)
-        if power is not None and not abs(power) <= LARGEST_POWER:
-            message = f"the exponent {self.exponent.shown(context)} is {power:g}"
-            raise self.exponent.fault(context, message, f"at most {LARGEST_POWER:g} are taken")
-        if base.is_number:
-            return NUMBER
-        if power is None:
-            message = f"{self.base.shown(context)} is {in_unit(base)}, and its exponent is not a constant"
-            raise self.fault(context, message, missing_scale(base, NUMBER, self.base.shown(context)))
-        return base**power
-
-    def _known_exponent(self, context: Context) -> float | None:
-        try:
-            with np.errstate(all="ignore"):
-                return float(self.exponent.evaluate(context.constants))
-        except KeyError:  # a name in it has no fixed value
-            return None
-
-
-@dataclass(frozen=True, slots=True)
-class Call(Node):
-    """A function of one argument."""
-
-    function: str
-    argument: Node
-
-    def evaluate(self, values: Values) -> NDArray[np.float64]:  # noqa: D102
-        return np.asarray(FUNCTIONS[self.function](self.argument.evaluate(values)))
-
-    def dimension(self, context: Context) -> Dimension | None:  # noqa: D102
-        found = self.argument.dimension(context)
-        if self.function == "abs" or found is None:
-            return found if self.function in ("abs", "sqrt") else NUMBER
-        if self.function == "sqrt":
-            return found ** Fraction(1, 2)
-        if not found.is_number:
-            shown = self.argument.shown(context)
-            message = f"{shown} is {in_unit(found)}, {self.function} takes a plain number"
-            raise self.argument.fault(context, message, missing_scale(found, NUMBER, shown))
-        return NUMBER
+def _value(node: Node, values: Values) -> Any:  # noqa: ANN401
+    match node:
+        case Number(value=number):
+            return np.float64(number)
+        case Name(name=name):
+            return np.asarray(values[name], dtype=float)
+        case Negative(operand=operand):
+            return -_value(operand, values)
+        case Sum(terms=terms):
+            return sum(_value(term, values) * (1.0 if sign == "+" else -1.0) for sign, term in terms)
+        case Product(factors=factors):
+            total = np.float64(1.0)
+            for operator, factor in factors:
+                value = _value(factor, values)
+                total = total * value if operator == "*" else total / value
+            return total
+        case Power(base=base, exponent=exponent):
+            return np.power(_value(base, values), _value(exponent, values))
+        case Call(function=function, argument=argument):
+            return FUNCTIONS[function](_value(argument, values))

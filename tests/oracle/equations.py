@@ -438,8 +438,10 @@ class Network:
         return f[:, 0].real, f[:, 1:].imag / STEP
 
     def damping(self, x, step):
-        """Share of a Newton step that keeps every junction from running away forwards."""
-        share = min(1.0, 10.0 / max(np.max(np.abs(step)), 1e-300)) if self.gain_limit < math.inf else 1.0
+        """Share of a Newton step that keeps nodes in reach and every junction from running away forwards."""
+        reach = 10.0 if self.gain_limit < math.inf else 1e3
+        nodes = [row for name, row in self.index.items() if ":" not in name]
+        share = min(1.0, reach / max(np.max(np.abs(step[nodes])), 1e-300))
         for element in self.elements:
             for p, n, sign in element.junctions() if hasattr(element, "junctions") else ():
                 now = sign * (self.entry(x, p) - self.entry(x, n))

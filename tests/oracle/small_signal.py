@@ -109,7 +109,7 @@ class Linear:
         phase = np.unwrap(np.angle(np.concatenate([[dc], t])))[1:]
         crossings = [
             self.crossing(ref, grid, k, phase[k])
-            for k in np.flatnonzero(np.diff(np.sign(np.abs(t) - 1)) != 0)
+            for k in np.flatnonzero((np.abs(t[:-1]) > 1) != (np.abs(t[1:]) > 1))
         ]
         margin, crossover = min(crossings, default=(None, None))
         return {
@@ -122,7 +122,9 @@ class Linear:
         def excess(x):
             return math.log(abs(self.return_ratio(ref, math.exp(x))[0]))
 
-        f = math.exp(scipy.optimize.brentq(excess, math.log(grid[k]), math.log(grid[k + 1]), xtol=1e-13))
+        hair = 1e-9  # a crossing on a grid point itself may fall to either side by rounding
+        low, high = math.log(grid[k]) - hair, math.log(grid[k + 1]) + hair
+        f = math.exp(scipy.optimize.brentq(excess, low, high, xtol=1e-13))
         before, after = self.return_ratio(ref, [grid[k], f])
         return 180 + math.degrees(phase + np.angle(after / before)), f
 

@@ -1,0 +1,192 @@
+"""Search for the least compensation capacitors that keep loops stable at every operating point.
+
+Neither damping nor margin is monotonic in a capacitor, and capacitors of loops that share a node act
+on each other. So candidates are scanned over the E12 series, all loops together, on the hardest
+conditions; what passes there is confirmed on all.
+"""
+
+from __future__ import annotations
+
+import itertools
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from ..devices.constants import Array
+from ..series import decade_values
+from .stability import analyse_loops, damping_of, mode_frequencies
+
+if TYPE_CHECKING:
+    from .operating_points import OperatingPoints
+    from .small_signal import SmallSignal
+
+LEAST, MOST = 1e-12, 100e-9
+"""Span of the search [F]."""
+HARD_CONDITIONS = 48
+CONFIRMED_AT_MOST = 24
+BATCH = 4096
+
+
+@dataclass(frozen=True)
+class Compensation:
+    """Capacitors from output to inverting input that meet damping and margin at every condition.
+
+    Attributes
+    ----------
+    capacitors : dict of str to float
+        By amplifier [F].
+    damping : float
+        Least damping ratio that is left.
+    margin : float
+        Least phase margin of the amplifiers named [deg].
+    """
+
+    capacitors: dict[str, float]
+    damping: float
+    margin: float
+
+
+def required_capacitors(
+    points: OperatingPoints, system: SmallSignal, amplifiers: Sequence[str], damping: float, margin: float
+) -> Compensation | None:
+    """Least E12 capacitors, one an amplifier, that meet the limits at every condition where it is linear.
+
+    A capacitor that already lies from output to inverting input counts as replaced.
+
+    Parameters
+    ----------
+    points : OperatingPoints
+    system : SmallSignal
+        Linearised at `points`.
+    amplifiers : sequence of str
+        Loops searched together; two are scanned in all combinations, more in step and then one by one.
+    damping : float
+        Least damping ratio.
+    margin : float
+        Least phase margin [deg].
+
+    Returns
+    -------
+    Compensation or None
+        None where no values in the span do.
+    """
+    search = _Search(points, system, tuple(amplifiers), damping, margin)
+    for candidate in search.candidates():
+        found = search.confirm(candidate)
+        if found is not None:
+            return search.reduce(found)
+    return None
+
+
+class _Search:
+    def __init__(
+        self, points: OperatingPoints, system: SmallSignal, amplifiers: tuple[str, ...], damping: float, margin: float
+    ) -> None:
+        self.points, self.amplifiers = points, amplifiers
+        self.damping, self.margin = damping, margin
+        self.stamps = [_stamp(points, a, system.capacitance.shape[-1]) for a in amplifiers]
+        present = np.array([present_capacitor(points, a) for a in amplifiers])
+        self.system = replace(
+            system, capacitance=system.capacitance - np.tensordot(present, self.stamps, axes=1)
+        )
+        self.values = decade_values("E12", LEAST, MOST)
+        widest = max(float(points.parameters.of(r, "gain_bandwidth").max()) for r in points.network.amplifiers)
+        self.fastest = 200 * np.pi * widest
+        self._prepare(present)
+
+    def _prepare(self, present: Array) -> None:
+        """Reduce the network on the hardest conditions to ``N = N_0 + Σ c_k·N_k``."""
+        linear = self.points.converged & self.system.linear.all(axis=1)
+        here = np.flatnonzero(linear)
+        tensor = np.abs(np.tensordot(np.ones(len(self.stamps)), np.abs(self.stamps), axes=1))
+        touched = np.any(self.system.capacitance != 0, axis=(0, 1)) | np.any(tensor != 0, axis=0)
+        columns = np.flatnonzero(touched)
+        inverse = np.linalg.inv(self.system.conductance[here])[:, columns, :]
+        self.fixed = inverse @ self.system.capacitance[here][:, :, columns]
+        self.per_farad = [inverse @ stamp[:, columns] for stamp in self.stamps]
+        worst = np.zeros(len(here))
+        for value in (present, np.full(len(present), 1e-11), np.full(len(present), 1e-9)):
+            ratio = damping_of(mode_frequencies(self._mu(value[None], slice(None))[0]), self.fastest)
+            worst = np.maximum(worst, -ratio)
+        pick = np.sort(np.argsort(worst)[-HARD_CONDITIONS:])
+        spread = np.linspace(0, len(here) - 1, min(len(here), HARD_CONDITIONS)).astype(int)
+        self.hard = np.unique(np.concatenate([pick, spread]))
+
+    def _mu(self, candidates: Array, conditions: Array | slice) -> Array:
+        """Eigenvalues for each candidate and condition, shape (candidates, conditions, modes)."""
+        n = self.fixed[conditions][None] + sum(
+            candidates[:, k, None, None, None] * m[conditions][None] for k, m in enumerate(self.per_farad)
+        )
+        return np.asarray(np.linalg.eigvals(n))
+
+    def _passing(self, candidates: Array) -> Array:
+        """Candidates whose natural frequencies are damped enough on the hard conditions."""
+        step = max(1, BATCH // len(self.hard))
+        passed = []
+        for first in range(0, len(candidates), step):  # chunks bound the memory; each is one batch
+            some = candidates[first : first + step]
+            frequency = mode_frequencies(self._mu(some, self.hard))
+            ratio = damping_of(frequency.reshape(-1, frequency.shape[-1]), self.fastest).reshape(len(some), -1)
+            passed.append(some[ratio.min(axis=1) >= self.damping])
+        return np.concatenate(passed) if passed else candidates[:0]
+
+    def candidates(self) -> Array:
+        """Passing candidates, the least total capacitance (in the logarithm) first."""
+        count = len(self.amplifiers)
+        if count == 2:
+            coarse = decade_values("E3", LEAST, MOST)
+            pairs = np.array(list(itertools.product(coarse, coarse)))
+        else:
+            pairs = np.repeat(np.asarray(self.values)[:, None], count, axis=1)
+        passed = self._passing(pairs)
+        return passed[np.argsort(np.log(passed).sum(axis=1), kind="stable")][:CONFIRMED_AT_MOST]
+
+    def confirm(self, candidate: Array) -> Compensation | None:
+        """The candidate with its figures, where it meets both limits at every condition."""
+        c = self.system.capacitance + np.tensordot(candidate, self.stamps, axes=1)
+        loops = analyse_loops(self.points, replace(self.system, capacitance=c))
+        damping = float(np.nanmin(loops.least_damping))
+        if damping < self.damping or np.nanmax(loops.rightmost) >= 0:
+            return None
+        margins = [loops.phase_margin(a) for a in self.amplifiers]
+        least = min((float(np.nanmin(m)) for m in margins if np.isfinite(m).any()), default=np.inf)
+        if least < self.margin:
+            return None
+        return Compensation(dict(zip(self.amplifiers, map(float, candidate), strict=True)), damping, least)
+
+    def reduce(self, found: Compensation) -> Compensation:
+        """Step each capacitor of several down the series while the limits still hold."""
+        if len(self.amplifiers) == 1:
+            return found
+        for k, amplifier in enumerate(self.amplifiers):
+            for value in reversed([v for v in self.values if v < found.capacitors[amplifier] * 0.99]):
+                trial = np.array(list(found.capacitors.values()))
+                trial[k] = value
+                smaller = self.confirm(trial) if len(self._passing(trial[None])) else None
+                if smaller is None:
+                    break
+                found = smaller
+        return found
+
+
+def _stamp(points: OperatingPoints, amplifier: str, size: int) -> Array:
+    """Matrix of one farad from an amplifier's output to its inverting input."""
+    network = points.network
+    pins = network.design.parts[amplifier].pins
+    a, b = (network.nodes[pins[p]] for p in ("OUT", "IN-"))
+    vector = np.zeros(size)
+    if a < network.free:
+        vector[a] += 1
+    if b < network.free:
+        vector[b] -= 1
+    return np.outer(vector, vector)
+
+
+def present_capacitor(points: OperatingPoints, amplifier: str) -> float:
+    """Capacitance that already lies from an amplifier's output to its inverting input [F]."""
+    design = points.network.design
+    ends = {design.parts[amplifier].pins["OUT"], design.parts[amplifier].pins["IN-"]}
+    return sum(p.value.typ for p in design.parts.values()
+               if p.kind == "capacitor" and set(p.pins.values()) == ends)

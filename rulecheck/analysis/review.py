@@ -1,0 +1,249 @@
+"""Everything computed about one design, each part when it is first asked for."""
+
+from __future__ import annotations
+
+import hashlib
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from functools import cached_property
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from ..circuit.graph import build_graph
+from ..circuit.structure import Structure, find_structure
+from ..devices.constants import Array
+from .compensation import Compensation, required_capacitors
+from .conditions import Conditions, Row, fault_scenarios, review_grid, typical_row
+from .operating_points import OperatingPoints, Worst, solve_operating_points
+from .small_signal import SmallSignal, linearise
+from .stability import Loops, analyse_loops
+from .transfer import EXPONENT_STEP, Transfer, compare, trim_positions
+from .values import Overrides
+
+if TYPE_CHECKING:
+    import networkx as nx
+
+    from ..design.model import Design, Requirement
+
+DEFAULT_SHARE = 0.005
+"""Allowed error as a share of reading where no requirement says."""
+SHARE = 0.25
+
+
+class Review:
+    """A design and its analyses, as rules see them.
+
+    Parameters
+    ----------
+    design : Design
+    conditions : Conditions, optional
+        In place of the review grid.
+    cache : dict, optional
+        Solutions shared between reviews of nearly equal designs, such as those of a design and of its
+        remedies; they are found by what they depend on.
+    """
+
+    def __init__(
+        self, design: Design, conditions: Conditions | None = None, cache: dict[Any, Any] | None = None
+    ) -> None:
+        self.design = design
+        self._given = conditions
+        self._cache: dict[Any, Any] = {} if cache is None else cache
+
+    @cached_property
+    def circuit(self) -> nx.MultiGraph[Any]:
+        """The graph of parts and nets, frozen."""
+        return build_graph(self.design)
+
+    @cached_property
+    def structure(self) -> Structure:
+        """Feedback loops, summing nodes, log and antilog transistors, junction loops."""
+        return find_structure(self.design, self.circuit)
+
+    @cached_property
+    def typical(self) -> Row:
+        """Every quantity at its typ, trims set."""
+        return typical_row(self.design) | trim_positions(self.design, self.solve)
+
+    @cached_property
+    def conditions(self) -> Conditions:
+        """The review grid, or the conditions given."""
+        return review_grid(self.design, self.typical) if self._given is None else self._given
+
+    @cached_property
+    def operating_points(self) -> OperatingPoints:
+        """Operating points at all review conditions."""
+        return self.solve(self.conditions)
+
+    @cached_property
+    def faults(self) -> OperatingPoints:
+        """Operating points of the fault scenarios, with input clamps in place."""
+        return self.solve(fault_scenarios(self.design, self.typical), with_clamps=True)
+
+    @cached_property
+    def _system(self) -> SmallSignal:
+        return linearise(self.operating_points)
+
+    @cached_property
+    def _loops_key(self) -> str:
+        return _digest(self._system.conductance.tobytes(), self._system.capacitance.tobytes())
+
+    @cached_property
+    def loops(self) -> Loops:
+        """Natural frequencies and margins at all review conditions."""
+        key = ("loops", self._loops_key)
+        if key not in self._cache:
+            self._cache[key] = analyse_loops(self.operating_points, self._system)
+        loops: Loops = self._cache[key]
+        return loops
+
+    @cached_property
+    def transfer(self) -> Mapping[str, Transfer]:
+        """Output against law, by requirement that has one."""
+        return {name: compare(r, self.operating_points, self.solve, self.typical)
+                for name, r in self.design.requirements.items() if r.law is not None}
+
+    def solve(
+        self, conditions: Conditions, *, with_clamps: bool = False, overrides: Overrides | None = None,
+        temperatures: Mapping[str, Array] | None = None,
+    ) -> OperatingPoints:  # fmt: skip
+        """Operating points of this design at any conditions; see `solve_operating_points`."""
+        return solve_operating_points(
+            self.design, conditions, with_clamps=with_clamps, overrides=overrides,
+            temperatures=dict(temperatures or {}), cache=self._cache,
+        )  # fmt: skip
+
+    def re_solve(
+        self, *, values: Overrides | None = None, temperatures: Mapping[str, Array] | None = None,
+        vbe_offsets: Mapping[str, float] | None = None,
+    ) -> OperatingPoints:  # fmt: skip
+        """Operating points at the review conditions with something changed.
+
+        Parameters
+        ----------
+        values : mapping of (part reference, parameter) to float or ndarray
+            Parameters in place of their nominal.
+        temperatures : mapping of str to ndarray, shape (conditions,) [K]
+            Part temperatures imposed.
+        vbe_offsets : mapping of str to float [V]
+            Added to base-emitter voltages.
+
+        Returns
+        -------
+        OperatingPoints
+        """
+        changed = dict(values or {}) | {(ref, "mismatch"): v for ref, v in (vbe_offsets or {}).items()}
+        return self.solve(self.conditions, overrides=changed, temperatures=temperatures)
+
+    def requirements_of(self, net: str) -> list[Requirement]:
+        """Requirements with an accuracy whose output is `net`."""
+        return [r for r in self.design.requirements.values() if r.output == net and r.has_accuracy]
+
+    def allowed_error(self, net: str) -> Array:
+        """Error allowed at an output net at each condition, in its units.
+
+        What the requirement with a law allows (the least, of several); NaN outside its range, and
+        everywhere where there is none.
+        """
+        rows = [np.where(t.judged, t.allowed, np.nan) for t in self.transfer.values()
+                if t.requirement.output == net and t.requirement.has_accuracy]
+        blank = np.full(self.conditions.size, np.nan)
+        return np.fmin.reduce(rows) if rows else blank
+
+    def share(self, net: str) -> Array:
+        """Error that one cause may take of an output net, at each condition, in its units.
+
+        A quarter of what the requirement allows. Without a requirement half a percent of reading, or
+        for an output that crosses zero half a percent of the input, through the log slope.
+
+        Parameters
+        ----------
+        net : str
+
+        Returns
+        -------
+        ndarray, shape (conditions,)
+            NaN outside the requirement's range.
+        """
+        allowed = self.allowed_error(net)
+        if np.isfinite(allowed).any():
+            return SHARE * allowed
+        output = self.operating_points.voltage(net)
+        if np.nanmin(output) * np.nanmax(output) > 0:
+            return DEFAULT_SHARE * np.abs(output)
+        slopes = [np.abs(self.log_slope(net, name)) for name in self.design.inputs]
+        return DEFAULT_SHARE * np.fmax.reduce(slopes) if slopes else np.full(output.shape, np.nan)
+
+    def log_slope(self, net: str, source: str) -> Array:
+        """Change of a net's voltage for a change of one in the logarithm of an input, at each condition [V]."""
+        x = self.conditions.values[source]
+        if not np.any(x):
+            return np.full(x.shape, np.nan)
+        up, down = (self.solve(Conditions({**self.conditions.values, source: x * np.exp(step)}))
+                    for step in (EXPONENT_STEP, -EXPONENT_STEP))
+        return np.where(x == 0, np.nan, (up.voltage(net) - down.voltage(net)) / (2 * EXPONENT_STEP))
+
+    def cost(self, changed: OperatingPoints) -> list[Cost]:
+        """What a change of parameters or temperatures does to each output, against its share.
+
+        Parameters
+        ----------
+        changed : OperatingPoints
+            Of this design at the review conditions, from `re_solve`.
+
+        Returns
+        -------
+        list of Cost
+            One an output net, the dearest first.
+        """
+        points = self.operating_points
+        costs = []
+        for net in (n for n, entry in self.design.nets.items() if entry.role == "output"):
+            error, share = changed.voltage(net) - points.voltage(net), self.share(net)
+            with np.errstate(all="ignore"):
+                ratio = np.abs(error) / share
+            if np.isfinite(ratio).any():
+                costs.append(Cost(net, error, share, ratio, points.worst(ratio)))
+        return sorted(costs, key=lambda c: -c.worst.value)
+
+    def required_capacitors(
+        self, amplifiers: Sequence[str], damping: float = 0.3, margin: float = 45.0
+    ) -> Compensation | None:
+        """Least compensation capacitors of loops searched together; see `compensation.required_capacitors`."""
+        key = ("capacitors", tuple(amplifiers), damping, margin, self._loops_key)
+        if key not in self._cache:
+            self._cache[key] = required_capacitors(
+                self.operating_points, self._system, amplifiers, damping, margin
+            )
+        found: Compensation | None = self._cache[key]
+        return found
+
+
+@dataclass(frozen=True)
+class Cost:
+    """What a change does to one output.
+
+    Attributes
+    ----------
+    output : str
+        Net.
+    error : ndarray, shape (conditions,)
+        Change of the output, in its units.
+    share : ndarray
+        What one cause may take.
+    ratio : ndarray
+        abs(error) over share; NaN where the output is not judged.
+    worst : Worst
+        Of the ratio.
+    """
+
+    output: str
+    error: Array
+    share: Array
+    ratio: Array
+    worst: Worst
+
+
+def _digest(*parts: bytes) -> str:
+    return hashlib.sha256(b"".join(parts)).hexdigest()

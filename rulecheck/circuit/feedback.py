@@ -1,0 +1,188 @@
+"""Feedback loops: the ways from an amplifier's output back to its inputs; and the summing nodes they hold."""
+
+from __future__ import annotations
+
+from collections import deque
+from collections.abc import Iterable, Iterator, Mapping
+from dataclasses import dataclass, field
+from typing import Literal
+
+from .surrogate import Feedback
+from .wiring import TRANSISTORS, Wiring, ends
+
+LONGEST_PATH = 16  # parts; the longest sensible loop through two amplifiers and their log transistors has ten
+MOST_PATHS = 64  # an amplifier and input
+MOST_STEPS = 20_000  # an amplifier
+TWO_TERMINAL = ("resistor", "capacitor", "diode", "voltage-source")
+
+Input = Literal["IN-", "IN+"]
+
+
+@dataclass(frozen=True, slots=True)
+class Step:
+    """One part of a path, entered at one pin and left at another."""
+
+    part: str
+    entry: str
+    exit: str
+
+
+@dataclass(frozen=True, slots=True)
+class FeedbackLoop:
+    """One way from an amplifier's output to one of its inputs.
+
+    Attributes
+    ----------
+    amplifier : str
+    input : str
+        ``IN-`` or ``IN+``.
+    parts : tuple of str
+        Parts on the way from the output; empty where the input stands on the output's net.
+    nets : tuple of str
+        Nets on the way, the output's first and the input's last.
+    steps : tuple of Step
+        The parts with the pins they are entered and left at.
+    """
+
+    amplifier: str
+    input: Input
+    parts: tuple[str, ...]
+    nets: tuple[str, ...]
+    steps: tuple[Step, ...] = field(default=(), repr=False)
+
+
+@dataclass(frozen=True, slots=True)
+class SummingNode:
+    """A net at an amplifier's input, held at the level of the other input by negative feedback.
+
+    Attributes
+    ----------
+    net : str
+        The input's net, or one joined to it by a resistor without current.
+    amplifier, input : str
+    level_net : str
+        Net of the other input.
+    """
+
+    net: str
+    amplifier: str
+    input: Input
+    level_net: str
+
+
+def summing_nodes(wiring: Wiring, feedback: Iterable[Feedback]) -> tuple[SummingNode, ...]:
+    """Nets that negative feedback holds, in the order of the amplifiers in the file."""
+    found = []
+    for loop in feedback:
+        if loop.sign <= 0:
+            continue
+        pins = wiring.design.parts[loop.amplifier].pins
+        held: Input = "IN-" if loop.input == "IN-" else "IN+"
+        level = pins["IN+" if held == "IN-" else "IN-"]
+        point = wiring.point_of[pins[held]]
+        if point in wiring.known:
+            continue
+        for net in sorted(wiring.nets_at[point], key=lambda net: net != pins[held]):
+            found.append(SummingNode(net=net, amplifier=loop.amplifier, input=held, level_net=level))
+    return tuple(found)
+
+
+def feedback_loops(wiring: Wiring, held: Mapping[str, str]) -> tuple[FeedbackLoop, ...]:
+    """Loops of all amplifiers, shortest first for each, the amplifiers in the order of the file.
+
+    Parameters
+    ----------
+    wiring : Wiring
+    held : mapping of point to amplifier
+        Points that negative feedback holds. A signal goes on from there only through that amplifier.
+
+    Returns
+    -------
+    tuple of FeedbackLoop
+
+    Notes
+    -----
+    A path ends at nets of ground, supplies, references and inputs, and at outputs of other amplifiers, which
+    nothing but that amplifier moves. It takes a transistor from base to collector or emitter and from emitter
+    to collector. The search is breadth first and bounded in length and number.
+    """
+    return tuple(loop for amp in wiring.amplifiers() for loop in _Search(wiring, held, amp).run())
+
+
+class _Search:
+    """Breadth-first search for the loops of one amplifier."""
+
+    def __init__(self, wiring: Wiring, held: Mapping[str, str], amplifier: str) -> None:
+        self.wiring = wiring
+        self.held = held
+        self.amplifier = amplifier
+        self.pins = wiring.design.parts[amplifier].pins
+
+    def run(self) -> Iterator[FeedbackLoop]:
+        start = self.pins["OUT"]
+        if self.wiring.point_of[start] in self.wiring.known:
+            return
+        queue: deque[tuple[tuple[str, ...], tuple[Step, ...]]] = deque([((start,), ())])
+        counts: dict[Input, int] = {"IN-": 0, "IN+": 0}
+        for _ in range(MOST_STEPS):
+            if not queue:
+                return
+            nets, steps = queue.popleft()
+            for pin in counts:
+                if nets[-1] == self.pins[pin] and counts[pin] < MOST_PATHS:
+                    counts[pin] += 1
+                    yield FeedbackLoop(self.amplifier, pin, tuple(s.part for s in steps), nets, steps)
+            if len(steps) < LONGEST_PATH and (len(nets) == 1 or self._passes(nets[-1], steps)):
+                queue.extend(self._longer(nets, steps))
+
+    def _passes(self, net: str, steps: tuple[Step, ...]) -> bool:
+        """Whether a signal goes on from a net that it has reached."""
+        point = self.wiring.point_of[net]
+        if point in self.wiring.known or self.held.get(point) == self.amplifier:
+            return False
+        arrived_at_output = steps[-1].exit == "OUT"
+        return arrived_at_output or not self.wiring.is_driven(point)
+
+    def _longer(
+        self, nets: tuple[str, ...], steps: tuple[Step, ...]
+    ) -> Iterator[tuple[tuple[str, ...], tuple[Step, ...]]]:
+        holder = self.held.get(self.wiring.point_of[nets[-1]]) if len(nets) > 1 else None
+        through = bool(steps) and steps[-1].exit == "OUT"
+        for step in self._steps_from(nets[-1]):
+            if holder is not None and not through and not self._stays(step, nets[-1], holder):
+                continue
+            net = self.wiring.design.parts[step.part].pins[step.exit]
+            if net not in nets and all(step.part != other.part for other in steps):
+                yield (*nets, net), (*steps, step)
+
+    def _stays(self, step: Step, net: str, holder: str) -> bool:
+        """Whether a step from a held net goes into its amplifier, or along the held point."""
+        if step.part == holder:
+            return True
+        beyond = self.wiring.design.parts[step.part].pins[step.exit]
+        return self.wiring.point_of[beyond] == self.wiring.point_of[net]
+
+    def _steps_from(self, net: str) -> Iterator[Step]:
+        for ref, pin in self.wiring.pins_on.get(net, ()):
+            if ref == self.amplifier:
+                continue
+            for exit_pin in exits(self.wiring, ref, pin):
+                yield Step(ref, pin, exit_pin)
+
+
+def exits(wiring: Wiring, ref: str, pin: str) -> tuple[str, ...]:
+    """Pins of a part at which a signal that enters at `pin` comes out."""
+    part = wiring.design.parts[ref]
+    if part.kind in TWO_TERMINAL:
+        return tuple(other for other in part.pins if other != pin) if ends(part) else ()
+    if part.kind == "potentiometer":
+        if pin == "WIPER" or "WIPER" not in part.pins:
+            return tuple(other for other in part.pins if other != pin)
+        return ("WIPER",)
+    if part.kind in TRANSISTORS:
+        tied = "B" in part.pins and part.pins.get("C") == part.pins["B"]
+        ways = {"C": ("E",), "E": ("C",)} if tied else {"B": ("C", "E"), "E": ("C",)}
+        return tuple(other for other in ways.get(pin, ()) if other in part.pins)
+    if part.kind == "op-amp" and pin in ("IN+", "IN-") and "OUT" in part.pins:
+        return ("OUT",)
+    return ()
