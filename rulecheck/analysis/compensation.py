@@ -14,9 +14,9 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from ..devices.constants import Array
+from ..devices.constants import Array, ComplexArray, Index
 from ..series import decade_values
-from .stability import analyse_loops, damping_of, mode_frequencies
+from .stability import analyse_loops, damping_of, judged_conditions, mode_frequencies
 
 if TYPE_CHECKING:
     from .operating_points import OperatingPoints
@@ -72,6 +72,8 @@ def required_capacitors(
     Compensation or None
         None where no values in the span do.
     """
+    if not judged_conditions(points, system).any():
+        return None
     search = _Search(points, system, tuple(amplifiers), damping, margin)
     for candidate in search.candidates():
         found = search.confirm(candidate)
@@ -82,15 +84,18 @@ def required_capacitors(
 
 class _Search:
     def __init__(
-        self, points: OperatingPoints, system: SmallSignal, amplifiers: tuple[str, ...], damping: float, margin: float
+        self,
+        points: OperatingPoints,
+        system: SmallSignal,
+        amplifiers: tuple[str, ...],
+        damping: float,
+        margin: float,
     ) -> None:
         self.points, self.amplifiers = points, amplifiers
         self.damping, self.margin = damping, margin
         self.stamps = [_stamp(points, a, system.capacitance.shape[-1]) for a in amplifiers]
         present = np.array([present_capacitor(points, a) for a in amplifiers])
-        self.system = replace(
-            system, capacitance=system.capacitance - np.tensordot(present, self.stamps, axes=1)
-        )
+        self.system = replace(system, capacitance=system.capacitance - np.tensordot(present, self.stamps, axes=1))
         self.values = decade_values("E12", LEAST, MOST)
         widest = max(float(points.parameters.of(r, "gain_bandwidth").max()) for r in points.network.amplifiers)
         self.fastest = 200 * np.pi * widest
@@ -98,8 +103,8 @@ class _Search:
 
     def _prepare(self, present: Array) -> None:
         """Reduce the network on the hardest conditions to ``N = N_0 + Σ c_k·N_k``."""
-        linear = self.points.converged & self.system.linear.all(axis=1)
-        here = np.flatnonzero(linear)
+        self.judged = judged_conditions(self.points, self.system)
+        here = np.flatnonzero(self.judged)
         tensor = np.abs(np.tensordot(np.ones(len(self.stamps)), np.abs(self.stamps), axes=1))
         touched = np.any(self.system.capacitance != 0, axis=(0, 1)) | np.any(tensor != 0, axis=0)
         columns = np.flatnonzero(touched)
@@ -114,7 +119,7 @@ class _Search:
         spread = np.linspace(0, len(here) - 1, min(len(here), HARD_CONDITIONS)).astype(int)
         self.hard = np.unique(np.concatenate([pick, spread]))
 
-    def _mu(self, candidates: Array, conditions: Array | slice) -> Array:
+    def _mu(self, candidates: Array, conditions: Index) -> ComplexArray:
         """Eigenvalues for each candidate and condition, shape (candidates, conditions, modes)."""
         n = self.fixed[conditions][None] + sum(
             candidates[:, k, None, None, None] * m[conditions][None] for k, m in enumerate(self.per_farad)
@@ -147,10 +152,10 @@ class _Search:
         """The candidate with its figures, where it meets both limits at every condition."""
         c = self.system.capacitance + np.tensordot(candidate, self.stamps, axes=1)
         loops = analyse_loops(self.points, replace(self.system, capacitance=c))
-        damping = float(np.nanmin(loops.least_damping))
-        if damping < self.damping or np.nanmax(loops.rightmost) >= 0:
+        damping = float(loops.least_damping[self.judged].min())
+        if damping < self.damping or loops.rightmost[self.judged].max() >= 0:
             return None
-        margins = [loops.phase_margin(a) for a in self.amplifiers]
+        margins = [loops.phase_margin(a)[self.judged] for a in self.amplifiers]
         least = min((float(np.nanmin(m)) for m in margins if np.isfinite(m).any()), default=np.inf)
         if least < self.margin:
             return None
@@ -188,5 +193,4 @@ def present_capacitor(points: OperatingPoints, amplifier: str) -> float:
     """Capacitance that already lies from an amplifier's output to its inverting input [F]."""
     design = points.network.design
     ends = {design.parts[amplifier].pins["OUT"], design.parts[amplifier].pins["IN-"]}
-    return sum(p.value.typ for p in design.parts.values()
-               if p.kind == "capacitor" and set(p.pins.values()) == ends)
+    return sum(p.value.typ for p in design.parts.values() if p.kind == "capacitor" and set(p.pins.values()) == ends)

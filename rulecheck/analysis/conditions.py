@@ -84,7 +84,7 @@ def spaced(source: Input, count: int = POINTS_PER_INPUT) -> Array:
     """Points over an input's range by its spacing, ends included exactly."""
     if source.log_spacing:
         sign = np.sign(source.low)
-        points = sign * np.geomspace(abs(source.low), abs(source.high), count)
+        points: Array = sign * np.geomspace(abs(source.low), abs(source.high), count)
     else:
         points = np.linspace(source.low, source.high, count)
     points[0], points[-1] = source.low, source.high
@@ -101,10 +101,12 @@ def review_grid(design: Design, typical: Row | None = None) -> Conditions:
         What is not varied; default `typical_row`.
     """
     typical = typical or typical_row(design)
-    rows = [row | supply | {"ambient": ambient}
-            for row in _input_rows(design) + _potentiometer_rows(design, typical)
-            for ambient in _distinct((design.ambient.min, design.ambient.typ, design.ambient.max))
-            for supply in supply_rows(design)]
+    rows = [
+        row | supply | {"ambient": ambient}
+        for row in _input_rows(design) + _potentiometer_rows(design, typical)
+        for ambient in _distinct((design.ambient.min, design.ambient.typ, design.ambient.max))
+        for supply in supply_rows(design)
+    ]
     return from_rows([typical | row for row in rows], typical)
 
 
@@ -137,15 +139,18 @@ def from_points(design: Design, columns: Mapping[str, Array], typical: Row | Non
             allowed = ", ".join(typical)
             raise CommandError(f"there is nothing to set by the name {name!r}", f"columns may be {allowed}")
     size = max((np.size(c) for c in columns.values()), default=1)
-    values = {name: _frozen(np.broadcast_to(np.asarray(columns.get(name, typ), dtype=float), (size,)).copy())
-              for name, typ in typical.items()}
+    values = {
+        name: _frozen(np.broadcast_to(np.asarray(columns.get(name, typ), dtype=float), (size,)).copy())
+        for name, typ in typical.items()
+    }
     return Conditions(MappingProxyType(values))
 
 
 def supply_rows(design: Design) -> list[Row]:
     """Supplies by magnitude: all least, typical, all greatest, and the two crosswise by polarity."""
-    supplies = {name: net.voltage for name, net in design.nets.items()
-                if net.role == "supply" and net.voltage is not None}
+    supplies = {
+        name: net.voltage for name, net in design.nets.items() if net.role == "supply" and net.voltage is not None
+    }
     weak = {n: v.min if v.typ >= 0 else v.max for n, v in supplies.items()}
     strong = {n: v.max if v.typ >= 0 else v.min for n, v in supplies.items()}
     typ = {n: v.typ for n, v in supplies.items()}
@@ -175,14 +180,20 @@ def _input_rows(design: Design) -> list[Row]:
 
 def _input_groups(design: Design) -> list[tuple[str, ...]]:
     """Inputs that reach one requirement together: those its law names, else all of them."""
-    groups = [tuple(n for n in design.inputs if r.law is not None and n in r.law.names)
-              for r in design.requirements.values()]
+    groups = [
+        tuple(n for n in design.inputs if r.law is not None and n in r.law.names) for r in design.requirements.values()
+    ]
     return list(dict.fromkeys(g for g in groups if g)) or [tuple(design.inputs)]
 
 
 def _potentiometer_rows(design: Design, typical: Row) -> list[Row]:
-    ends = [{ref: position} for ref, part in design.parts.items() if part.kind == "potentiometer"
-            for position in (part.position.min, part.position.max) if position != typical[ref]]
+    ends = [
+        {ref: position}
+        for ref, part in design.parts.items()
+        if part.kind == "potentiometer"
+        for position in (part.position.min, part.position.max)
+        if position != typical[ref]
+    ]
     return [row | end for end in ends for row in _input_rows(design)]
 
 
@@ -199,8 +210,11 @@ def fault_scenarios(design: Design, typical: Row | None = None) -> Conditions:
             scenarios.append((f"supply {supply} absent, {name}", row, off))
     for name, row in _survival_rows(design):
         scenarios.append((f"all supplies and references absent, {name}", row, tuple(powers)))
-    cases = [(words, typical | row | {"ambient": ambient}, off) for words, row, off in scenarios
-             for ambient in _distinct((design.ambient.min, design.ambient.max))]
+    cases = [
+        (words, typical | row | {"ambient": ambient}, off)
+        for words, row, off in scenarios
+        for ambient in _distinct((design.ambient.min, design.ambient.max))
+    ]
     values = {n: _frozen(np.array([row[n] if n not in off else 0.0 for _, row, off in cases])) for n in typical}
     absent = {n: _frozen(np.array([n in off for _, _, off in cases])) for n in powers}
     return Conditions(MappingProxyType(values), tuple(words for words, _, _ in cases), MappingProxyType(absent))
@@ -216,8 +230,11 @@ def _range_rows(design: Design) -> list[tuple[str, Row]]:
 
 def _end_rows(ends: Mapping[str, tuple[Input, tuple[float, float]]]) -> list[tuple[str, Row]]:
     """Each input alone at either end, with words for it."""
-    return [(f"{name} at {format_quantity(value, source.unit)}", {name: value})
-            for name, (source, pair) in ends.items() for value in _distinct(pair)] or [("no inputs", {})]
+    return [
+        (f"{name} at {format_quantity(value, source.unit)}", {name: value})
+        for name, (source, pair) in ends.items()
+        for value in _distinct(pair)
+    ] or [("no inputs", {})]
 
 
 def _distinct(values: Sequence[float]) -> list[float]:

@@ -12,7 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..devices import amplifier, diode, transistor
-from ..devices.constants import Array, BoolArray
+from ..devices.constants import Array, BoolArray, Index, IntArray
 from .network import Element, Network
 from .values import Values
 
@@ -27,11 +27,11 @@ class Tangents:
     v_bc: Array
     diode: Array
 
-    def take(self, index: BoolArray | Array) -> Tangents:
+    def take(self, index: Index) -> Tangents:
         """The chosen conditions."""
         return Tangents(self.v_be[index], self.v_bc[index], self.diode[index])
 
-    def put(self, index: BoolArray | Array, other: Tangents) -> None:
+    def put(self, index: Index, other: Tangents) -> None:
         """Write `other` into the chosen conditions."""
         self.v_be[index], self.v_bc[index], self.diode[index] = other.v_be, other.v_bc, other.diode
 
@@ -48,7 +48,7 @@ class Aid:
     matrix: Array
     anchor: Array
 
-    def take(self, index: BoolArray | Array) -> Aid:
+    def take(self, index: Index) -> Aid:
         """The chosen conditions."""
         return Aid(self.weight[index], self.matrix, self.anchor[index])
 
@@ -88,7 +88,7 @@ class Equations:
             matrix[i, self.network.row(e.b)] -= 1
         return matrix
 
-    def _scatter(self, rows: Array) -> Array:
+    def _scatter(self, rows: IntArray) -> Array:
         """Matrix that adds the columns of (conditions, devices·terminals) into their rows."""
         flat = rows.T.ravel().astype(int)
         matrix = np.zeros((flat.size, self.size + 1))

@@ -15,6 +15,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from ..errors import AnalysisError
+
 if TYPE_CHECKING:
     from ..design.model import Design, Part
 
@@ -110,20 +112,44 @@ def build_network(design: Design, with_clamps: bool = False) -> Network:
     Returns
     -------
     Network
+
+    Raises
+    ------
+    AnalysisError
+        Where a pin that the equations need is not connected, or there is no ground.
     """
+    _check_pins(design)
     network = Network(design, with_clamps)
     _number_nodes(network)
     for ref, part in design.parts.items():
         _add_part(network, ref, part)
     _add_inputs(network)
     network.terminals = np.array(
-        [[_internal(network, design.parts[r], pin) for pin in "CBE"] for r in network.transistors], dtype=np.intp
+        [[_internal(network, design.parts[r], pin) for pin in "CBE"] for r in network.transistors],
+        dtype=np.intp,
     ).reshape(-1, 3)
     network.pins = np.array(
         [[network.nodes[design.parts[r].pins[pin]] for pin in AMPLIFIER_PINS] for r in network.amplifiers],
         dtype=np.intp,
     ).reshape(-1, 5)
     return network
+
+
+REQUIRED_PINS = {
+    "npn": ("C", "B", "E"), "pnp": ("C", "B", "E"), "op-amp": AMPLIFIER_PINS, "diode": ("A", "K"),
+    "photodiode": ("A", "K"), "potentiometer": ("END1", "WIPER", "END2"),
+}  # fmt: skip
+TWO_PINS = ("resistor", "capacitor", "voltage-source", "current-source")
+
+
+def _check_pins(design: Design) -> None:
+    for ref, part in design.parts.items():
+        missing = [p for p in REQUIRED_PINS.get(part.kind, ()) if p not in part.pins]
+        if missing or (part.kind in TWO_PINS and len(part.pins) != 2):
+            names = ", ".join(missing) or "one of two"
+            raise AnalysisError(f"{ref}: pin {names} is not connected", "give it a net, or set mounted = false")
+    if not any(net.role == "ground" for net in design.nets.values()):
+        raise AnalysisError("no net has the role of ground", 'add `GND = { role = "ground" }` to [nets]')
 
 
 TERMINAL_RESISTANCE = {"C": "collector_resistance", "B": "base_resistance", "E": "bulk_emitter_resistance"}

@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from ..devices import amplifier
-from ..devices.constants import Array, BoolArray
+from ..devices.constants import Array, BoolArray, Index, IntArray
 from ..devices.junction import critical_voltage, limited_step
 from .equations import Aid, Equations, Tangents
 from .values import Values, take
@@ -36,13 +36,13 @@ class State:
     x: Array
     tangents: Tangents
     converged: BoolArray
-    moved: Array
+    moved: IntArray
 
-    def take(self, index: Array) -> State:
+    def take(self, index: Index) -> State:
         """The chosen conditions."""
         return State(self.x[index], self.tangents.take(index), self.converged[index], self.moved[index])
 
-    def put(self, index: Array, other: State) -> None:
+    def put(self, index: Index, other: State) -> None:
         """Write `other` into the chosen conditions."""
         self.x[index], self.converged[index], self.moved[index] = other.x, other.converged, other.moved
         self.tangents.put(index, other.tangents)
@@ -53,12 +53,20 @@ def power_off(equations: Equations, size: int) -> State:
     network = equations.network
     zeros = [np.zeros((size, n)) for n in (len(network.transistors), len(network.transistors), len(network.diodes))]
     return State(
-        np.zeros((size, equations.size)), Tangents(*zeros), np.zeros(size, bool), np.zeros(size, dtype=np.intp)
+        np.zeros((size, equations.size)),
+        Tangents(*zeros),
+        np.zeros(size, bool),
+        np.zeros(size, dtype=np.intp),
     )
 
 
 def iterate(
-    equations: Equations, values: Values, start: State, iterations: int, aid: Aid | None = None, loose: float = 1.0
+    equations: Equations,
+    values: Values,
+    start: State,
+    iterations: int,
+    aid: Aid | None = None,
+    loose: float = 1.0,
 ) -> State:
     """Newton's method from `start` for at most `iterations`; conditions that arrive are dropped from the batch.
 
@@ -78,9 +86,7 @@ def iterate(
         Of all conditions; `converged` is that of this run.
     """
     state = State(start.x.copy(), start.tangents.take(slice(None)), np.zeros(len(start.x), bool), start.moved.copy())
-    state.tangents = Tangents(
-        start.tangents.v_be.copy(), start.tangents.v_bc.copy(), start.tangents.diode.copy()
-    )
+    state.tangents = Tangents(start.tangents.v_be.copy(), start.tangents.v_bc.copy(), start.tangents.diode.copy())
     active = np.arange(len(state.x))
     here, now, help_now = values, state.take(active), aid
     linear = equations.linear_matrix(here, help_now)
@@ -135,7 +141,8 @@ def _step(equations: Equations, values: Values, now: State, step: Array, one_fli
     excess = np.abs(step) / (floor + RELATIVE_STEP * np.abs(now.x))
     voltages = np.abs(step[:, : network.free])
     now.moved = voltages.argmax(axis=1) if network.free else np.zeros(len(step), dtype=np.intp)
-    return (excess <= loose).all(axis=1) & ~limited & ~held & ~bad
+    small: BoolArray = (excess <= loose).all(axis=1) & ~limited & ~held & ~bad
+    return small
 
 
 def _move_amplifiers(equations: Equations, values: Values, now: State, old: Array, one_flip: bool) -> BoolArray:
@@ -158,7 +165,8 @@ def _move_amplifiers(equations: Equations, values: Values, now: State, old: Arra
         stay = np.where(last_region == 0, np.clip(u, low, high), last)
         moved = np.where(flips & ~worst, stay, moved)
     now.x[:, rows] = moved
-    return flips.any(axis=1)
+    changed: BoolArray = flips.any(axis=1)
+    return changed
 
 
 def solve(equations: Equations, values: Values, start: State | None = None) -> State:
@@ -172,40 +180,41 @@ def solve(equations: Equations, values: Values, start: State | None = None) -> S
     if not state.converged.all():
         _try(_from_conducting, equations, values, state)
     if not state.converged.all() and state.converged.any():
-        near = _nearest(values, state.converged)
-        _try(lambda e, v, left: iterate(e, v, state.take(near[left]), 40), equations, values, state)
+        near = state.take(_nearest(values, state.converged)[~state.converged])
+        _try(lambda e, v: iterate(e, v, near, 40), equations, values, state)
     for way in (_switch_on, _step_sources, _step_conductances):
         if not state.converged.all():
-            _try(lambda e, v, _, way=way: way(e, v), equations, values, state)
+            _try(way, equations, values, state)
     return state
 
 
-def _try(way: Callable[[Equations, Values, Array], State], equations: Equations, values: Values, state: State) -> None:
+def _try(way: Callable[[Equations, Values], State], equations: Equations, values: Values, state: State) -> None:
     """Put into `state` what one way reaches of the conditions that are left."""
     left = np.flatnonzero(~state.converged)
     with np.errstate(over="ignore", invalid="ignore"):  # a wild iterate is dropped, not warned of
-        found = way(equations, take(values, left), left)
+        found = way(equations, take(values, left))
     improved = np.flatnonzero(found.converged)
     state.put(left[improved], found.take(improved))
     state.moved[left] = found.moved
 
 
-def _nearest(values: Values, converged: BoolArray) -> Array:
+def _nearest(values: Values, converged: BoolArray) -> IntArray:
     """For each condition the converged one whose driving values are nearest."""
     drives = np.concatenate([values.fixed, values.source * 1e6, values.branch_resistance * 1e-3], axis=1)
     drives = drives / (np.ptp(drives, axis=0) + 1e-30)
     known = np.flatnonzero(converged)
     distance = ((drives[:, None, :] - drives[None, known, :]) ** 2).sum(axis=-1)
-    return known[distance.argmin(axis=1)]
+    nearest: IntArray = known[distance.argmin(axis=1)]
+    return nearest
 
 
 CONDUCTING = 0.9
 """Share of the critical voltage at which base-emitter junctions start."""
 
 
-def _from_conducting(equations: Equations, values: Values, left: Array) -> State:
+def _from_conducting(equations: Equations, values: Values) -> State:
     """Newton's method from 0 V everywhere with every base-emitter junction conducting."""
-    state = power_off(equations, len(left))
+    state = power_off(equations, values.fixed.shape[0])
     hot = values.transistor
     state.tangents.v_be[:] = CONDUCTING * critical_voltage(hot.saturation, hot.slope)
     return iterate(equations, values, state, 60)

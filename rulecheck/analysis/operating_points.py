@@ -104,8 +104,10 @@ class OperatingPoints:
 
     def clamp_currents(self) -> dict[str, Array]:
         """Currents of the input clamps and drive limits by name (``U1.IN-.hi``: from IN- to V+) [A]."""
-        return {f"{ref}.{name}": _blank(self._currents.clamp[:, i], self.converged)
-                for i, (ref, name) in enumerate(e.key for e in self.network.clamps)}
+        return {
+            f"{ref}.{name}": _blank(self._currents.clamp[:, i], self.converged)
+            for i, (ref, name) in enumerate(e.key for e in self.network.clamps)
+        }
 
     def clamp_current(self, amplifier: str, pin: str) -> Array:
         """Largest current in the clamps of one amplifier pin [A]."""
@@ -114,8 +116,7 @@ class OperatingPoints:
 
     def dissipation(self, part: str) -> Array:
         """Power turned to heat in a transistor, amplifier, diode or resistor [W]."""
-        return _blank(_dissipation(self.network, self._all_voltages, self._currents, self.values, part),
-                      self.converged)
+        return _blank(_dissipation(self.network, self._all_voltages, self._currents, self.values, part), self.converged)
 
     def worst(self, values: Array) -> Worst:
         """Largest of `values` over the converged conditions, and where.
@@ -164,8 +165,7 @@ def _currents(equations: Equations, values: Values, state: State) -> Currents:
 
 def _two_terminal(kind: str) -> Callable[[OperatingPoints, str, str], Array]:
     def current(points: OperatingPoints, part: str, pin: str) -> Array:
-        along = _along(points.network, points._currents, points.values, part, pin)  # noqa: SLF001
-        return along
+        return _along(points.network, points._currents, points.values, part, pin)
 
     current.__name__ = kind
     return current
@@ -188,13 +188,13 @@ def _along(network: Network, currents: Currents, values: Values, part: str, pin:
 
 def _transistor_current(points: OperatingPoints, part: str, pin: str) -> Array:
     i = points.network.transistors.index(part)
-    c, b = points._currents.collector[:, i], points._currents.base[:, i]  # noqa: SLF001
+    c, b = points._currents.collector[:, i], points._currents.base[:, i]
     return {"C": c, "B": b, "E": -c - b}[pin]
 
 
 def _amplifier_current(points: OperatingPoints, part: str, pin: str) -> Array:
     i = points.network.amplifiers.index(part)
-    out = points._currents.output[:, i]  # noqa: SLF001
+    out = points._currents.output[:, i]
     if pin == "OUT":
         return -out
     keys = {e.key: j for j, e in enumerate(points.network.sources)}
@@ -218,7 +218,10 @@ _PIN_CURRENT: dict[str, Callable[[OperatingPoints, str, str], Array]] = {
 
 def _dissipation(network: Network, v: Array, currents: Currents, values: Values, part: str) -> Array:
     design = network.design
-    kind, pins = design.parts[part].kind, {p: v[:, network.nodes[n]] for p, n in design.parts[part].pins.items()}
+    kind, pins = (
+        design.parts[part].kind,
+        {p: v[:, network.nodes[n]] for p, n in design.parts[part].pins.items()},
+    )
     if kind in ("npn", "pnp"):
         i = network.transistors.index(part)
         return (pins["C"] - pins["E"]) * currents.collector[:, i] + (pins["B"] - pins["E"]) * currents.base[:, i]
@@ -230,7 +233,8 @@ def _dissipation(network: Network, v: Array, currents: Currents, values: Values,
         return quiet * (pins["V+"] - pins["V-"]) + sourced + sunk
     if kind in ("resistor", "diode", "potentiometer"):
         flows = [(p, _along(network, currents, values, part, p)) for p in design.parts[part].pins]
-        return np.sum([pins[p] * current for p, current in flows], axis=0)
+        total: Array = np.sum([pins[p] * current for p, current in flows], axis=0)
+        return total
     return np.zeros(len(v))
 
 
@@ -264,9 +268,7 @@ def solve_operating_points(
         memory[key] = task.run()
     state, nodes = memory[key]
     temps = task.temperatures(nodes)
-    return OperatingPoints(
-        task.network, task.equations, conditions, task.values(nodes), state, temps, task.parameters
-    )
+    return OperatingPoints(task.network, task.equations, conditions, task.values(nodes), state, temps, task.parameters)
 
 
 class _Task:
@@ -303,8 +305,18 @@ class _Task:
         self.values(self.unheated())  # reads every parameter that matters
         lists = (network.resistors, network.branches, network.sources, network.diodes, network.clamps)
         nets = [(n, net.role, net.tempco, net.compliance, net.source) for n, net in design.nets.items()]
-        text = repr((lists, network.nodes, network.transistors, network.amplifiers, nets, thermal.node,
-                     sorted(thermal.heated), network.with_clamps))
+        text = repr(
+            (
+                lists,
+                network.nodes,
+                network.transistors,
+                network.amplifiers,
+                nets,
+                thermal.node,
+                sorted(thermal.heated),
+                network.with_clamps,
+            )
+        )
         arrays = [network.terminals, network.pins, thermal.rise, thermal.from_ambient, thermal.held]
         arrays += [*self.conditions.values.values(), *self.conditions.absent.values(), *self.imposed.values()]
         digest = hashlib.sha256(text.encode() + repr([*self.imposed]).encode())

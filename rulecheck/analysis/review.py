@@ -25,6 +25,7 @@ if TYPE_CHECKING:
     import networkx as nx
 
     from ..design.model import Design, Requirement
+    from ..findings import Edit
 
 DEFAULT_SHARE = 0.005
 """Allowed error as a share of reading where no requirement says."""
@@ -98,11 +99,31 @@ class Review:
         loops: Loops = self._cache[key]
         return loops
 
+    def loops_with(self, values: Overrides) -> Loops:
+        """Loops at the same operating points with capacitances or poles changed; see `linearise`."""
+        return analyse_loops(self.operating_points, linearise(self.operating_points, values))
+
+    def edited(self, edits: Sequence[Edit]) -> Review:
+        """The review of this design after edits of its file, in memory.
+
+        Raises
+        ------
+        EditError, DesignError
+            Where an edit does not fit, or the design is not valid any more.
+        """
+        from ..design.edit import apply_edits
+        from ..design.load import load_text
+
+        return Review(load_text(apply_edits(self.design.text, edits), self.design.path), cache=self._cache)
+
     @cached_property
     def transfer(self) -> Mapping[str, Transfer]:
         """Output against law, by requirement that has one."""
-        return {name: compare(r, self.operating_points, self.solve, self.typical)
-                for name, r in self.design.requirements.items() if r.law is not None}
+        return {
+            name: compare(r, self.operating_points, self.solve, self.typical)
+            for name, r in self.design.requirements.items()
+            if r.law is not None
+        }
 
     def solve(
         self, conditions: Conditions, *, with_clamps: bool = False, overrides: Overrides | None = None,
@@ -146,8 +167,11 @@ class Review:
         What the requirement with a law allows (the least, of several); NaN outside its range, and
         everywhere where there is none.
         """
-        rows = [np.where(t.judged, t.allowed, np.nan) for t in self.transfer.values()
-                if t.requirement.output == net and t.requirement.has_accuracy]
+        rows = [
+            np.where(t.judged, t.allowed, np.nan)
+            for t in self.transfer.values()
+            if t.requirement.output == net and t.requirement.has_accuracy
+        ]
         blank = np.full(self.conditions.size, np.nan)
         return np.fmin.reduce(rows) if rows else blank
 
@@ -180,8 +204,10 @@ class Review:
         x = self.conditions.values[source]
         if not np.any(x):
             return np.full(x.shape, np.nan)
-        up, down = (self.solve(Conditions({**self.conditions.values, source: x * np.exp(step)}))
-                    for step in (EXPONENT_STEP, -EXPONENT_STEP))
+        up, down = (
+            self.solve(Conditions({**self.conditions.values, source: x * np.exp(step)}))
+            for step in (EXPONENT_STEP, -EXPONENT_STEP)
+        )
         return np.where(x == 0, np.nan, (up.voltage(net) - down.voltage(net)) / (2 * EXPONENT_STEP))
 
     def cost(self, changed: OperatingPoints) -> list[Cost]:
@@ -213,9 +239,7 @@ class Review:
         """Least compensation capacitors of loops searched together; see `compensation.required_capacitors`."""
         key = ("capacitors", tuple(amplifiers), damping, margin, self._loops_key)
         if key not in self._cache:
-            self._cache[key] = required_capacitors(
-                self.operating_points, self._system, amplifiers, damping, margin
-            )
+            self._cache[key] = required_capacitors(self.operating_points, self._system, amplifiers, damping, margin)
         found: Compensation | None = self._cache[key]
         return found
 

@@ -12,8 +12,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from ..devices import diode, transistor
-from ..devices.constants import Array, BoolArray
-from .values import columns
+from ..devices.constants import Array, BoolArray, IntArray
+from .values import Overrides, Parameters, columns
 
 if TYPE_CHECKING:
     from .operating_points import OperatingPoints
@@ -37,18 +37,20 @@ class SmallSignal:
 
     conductance: Array
     capacitance: Array
-    output_rows: Array
-    internal_columns: Array
-    state_columns: Array
+    output_rows: IntArray
+    internal_columns: IntArray
+    state_columns: IntArray
     linear: BoolArray
 
 
-def linearise(points: OperatingPoints) -> SmallSignal:
+def linearise(points: OperatingPoints, overrides: Overrides | None = None) -> SmallSignal:
     """Linearise at all operating points; conditions that did not converge hold meaningless numbers.
 
     Parameters
     ----------
     points : OperatingPoints
+    overrides : mapping of (part reference, parameter) to float or ndarray, optional
+        Capacitances, transit times and poles in place of their nominal; they move no operating point.
 
     Returns
     -------
@@ -67,11 +69,12 @@ def linearise(points: OperatingPoints) -> SmallSignal:
     c = np.zeros_like(g)
     linear = np.stack([points.linear(r) for r in network.amplifiers], axis=1) if amps else np.zeros((count, 0), bool)
     states = base + np.arange(amps)
-    _amplifier_poles(points, g, c, equations.gain_rows, states, linear)
+    p = Parameters(network.design, {**points.parameters.overrides, **(overrides or {})})
+    _amplifier_poles(points, p, g, c, equations.gain_rows, states, linear)
     stamp = _Stamp(c, [*range(network.free), *[size] * (len(network.nodes) - network.free)])
-    _transistor_charges(points, stamp)
-    _diode_charges(points, stamp)
-    _capacitors(points, stamp)
+    _transistor_charges(points, p, stamp)
+    _diode_charges(points, p, stamp)
+    _capacitors(points, p, stamp)
     return SmallSignal(
         g[:, :size, :size], c[:, :size, :size], equations.output_rows, equations.gain_rows, states, linear
     )
@@ -93,9 +96,8 @@ class _Stamp:
 
 
 def _amplifier_poles(
-    points: OperatingPoints, g: Array, c: Array, rows: Array, states: Array, linear: BoolArray
+    points: OperatingPoints, p: Parameters, g: Array, c: Array, rows: IntArray, states: IntArray, linear: BoolArray
 ) -> None:
-    p = points.parameters
     count = len(g)
     for i, ref in enumerate(points.network.amplifiers):
         row, state, on = rows[i], states[i], linear[:, i]
@@ -111,8 +113,8 @@ def _amplifier_poles(
         c[:, state, row] = np.where(on, -1 / (2 * np.pi * second), 0.0)
 
 
-def _transistor_charges(points: OperatingPoints, stamp: _Stamp) -> None:
-    network, p = points.network, points.parameters
+def _transistor_charges(points: OperatingPoints, p: Parameters, stamp: _Stamp) -> None:
+    network = points.network
     tangents = points.equations.junction_voltages(points.state_vector.x, points.values)
     response = transistor.respond(tangents.v_be, tangents.v_bc, points.values.transistor)
     for i, ref in enumerate(network.transistors):
@@ -122,8 +124,7 @@ def _transistor_charges(points: OperatingPoints, stamp: _Stamp) -> None:
         stamp.add(base, collector, p.of(ref, "collector_capacitance"))
 
 
-def _diode_charges(points: OperatingPoints, stamp: _Stamp) -> None:
-    p = points.parameters
+def _diode_charges(points: OperatingPoints, p: Parameters, stamp: _Stamp) -> None:
     voltage = points.equations.junction_voltages(points.state_vector.x, points.values).diode
     _, conductance = diode.respond(voltage, points.values.diode)
     for i, element in enumerate(points.network.diodes):
@@ -132,8 +133,8 @@ def _diode_charges(points: OperatingPoints, stamp: _Stamp) -> None:
         stamp.add(element.a, element.b, p.of(ref, "capacitance") + stored)
 
 
-def _capacitors(points: OperatingPoints, stamp: _Stamp) -> None:
-    network, p = points.network, points.parameters
+def _capacitors(points: OperatingPoints, p: Parameters, stamp: _Stamp) -> None:
+    network = points.network
     ground = next(i for n, i in network.nodes.items() if n in p.design.nets and p.design.nets[n].role == "ground")
     for ref, part in p.design.parts.items():
         pins = [network.nodes[n] for n in part.pins.values()]

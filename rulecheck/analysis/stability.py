@@ -7,11 +7,12 @@ are ``s = −1/μ`` for the eigenvalues μ of N there, and every transfer functi
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from functools import cached_property
 from typing import TYPE_CHECKING
 
 import numpy as np
 
-from ..devices.constants import AnyArray, Array, BoolArray, ComplexArray
+from ..devices.constants import AnyArray, Array, BoolArray, ComplexArray, IntArray
 from .margins import Margins, margins
 from .small_signal import SmallSignal, linearise
 
@@ -47,7 +48,7 @@ class Modes:
     mu: ComplexArray
     right: ComplexArray
     left: ComplexArray
-    columns: Array
+    columns: IntArray
     response: Array
 
 
@@ -107,7 +108,8 @@ class ReturnRatio:
         if s.ndim > weight.ndim - 1:
             weight, mu, start = weight[:, None, :], mu[:, None, :], start[:, None]
         u = start - s * np.sum(weight / (1 + s[..., None] * mu), axis=-1)
-        return -u / (1 + u)
+        ratio: ComplexArray = -u / (1 + u)
+        return ratio
 
 
 def return_ratio(system: SmallSignal, modes: Modes, amplifier: int) -> ReturnRatio:
@@ -187,17 +189,39 @@ class Loops:
         """Least ``|1 + T|`` over frequency."""
         return self.margins(amplifier).modulus_margin
 
-    def participants(self, index: int) -> tuple[str, ...]:
-        """Amplifiers that take part in the critical mode of one condition, the strongest first."""
-        mode = int(self._critical[index])
-        share = np.abs(self.modes.right[index, :, mode] * self.modes.left[index, mode, :])
+    @property
+    def judged(self) -> BoolArray:
+        """Conditions at which stability is judged: every amplifier that is ever linear is so, shape (conditions,)."""
+        return judged_conditions(self.points, self.system)
+
+    @cached_property
+    def participation(self) -> BoolArray:
+        """Which amplifiers take part in the critical mode, shape (conditions, amplifiers)."""
+        rows = np.arange(len(self._critical))
+        right = self.modes.right[rows, :, self._critical]
+        share = np.abs(right * self.modes.left[rows, self._critical, :])
         place = {int(c): i for i, c in enumerate(self.modes.columns)}
-        own = {}
-        for i, ref in enumerate(self.points.network.amplifiers):
-            states = (int(self.system.state_columns[i]), int(self.system.internal_columns[i]))
-            own[ref] = sum(float(share[place[c]]) for c in states if c in place)
-        most = max(own.values(), default=0.0)
-        return tuple(r for r, s in sorted(own.items(), key=lambda item: -item[1]) if most and s >= TAKES_PART * most)
+        own = np.zeros((len(rows), len(self.points.network.amplifiers)))
+        for i in range(own.shape[1]):
+            for column in (self.system.state_columns[i], self.system.internal_columns[i]):
+                if int(column) in place:
+                    own[:, i] += share[:, place[int(column)]]
+        most = own.max(axis=1, keepdims=True, initial=0.0)
+        taking_part: BoolArray = (own >= TAKES_PART * most) & (most > 0)
+        return taking_part
+
+    def participants(self, index: int) -> tuple[str, ...]:
+        """Amplifiers that take part in the critical mode of one condition."""
+        return tuple(
+            ref for ref, part in zip(self.points.network.amplifiers, self.participation[index], strict=True) if part
+        )
+
+
+def judged_conditions(points: OperatingPoints, system: SmallSignal) -> BoolArray:
+    """Converged conditions at which no amplifier is saturated, those left out that always are."""
+    ever = system.linear[points.converged].any(axis=0)
+    judged: BoolArray = points.converged & (system.linear | ~ever).all(axis=1)
+    return judged
 
 
 def analyse_loops(points: OperatingPoints, system: SmallSignal | None = None) -> Loops:
@@ -216,11 +240,13 @@ def analyse_loops(points: OperatingPoints, system: SmallSignal | None = None) ->
     system = linearise(points) if system is None else system
     system = _stand_in(system, points.converged)
     modes = find_modes(system)
-    widest = max((float(points.parameters.of(r, "gain_bandwidth").max()) for r in points.network.amplifiers),
-                 default=np.inf)
+    widest = max(
+        (float(points.parameters.of(r, "gain_bandwidth").max()) for r in points.network.amplifiers),
+        default=np.inf,
+    )
     rightmost, damping, frequency, critical = _judge(modes, 2 * np.pi * widest * DAMPING_SPAN)
     blank = [np.where(points.converged, a, np.nan) for a in (rightmost, damping, frequency)]
-    return Loops(points, system, modes, *blank, critical)
+    return Loops(points, system, modes, blank[0], blank[1], blank[2], critical)
 
 
 def _stand_in(system: SmallSignal, converged: BoolArray) -> SmallSignal:
@@ -242,7 +268,8 @@ def damping_of(frequency: ComplexArray, fastest: float) -> Array:
     size = np.abs(frequency)
     unstable = np.isfinite(size) & (frequency.real > 0)
     real = np.where(unstable, -frequency.real / np.where(unstable, size, 1), np.inf)
-    return np.minimum(np.minimum(ratio, real).min(axis=-1, initial=np.inf), 1.0)
+    least: Array = np.minimum(np.minimum(ratio, real).min(axis=-1, initial=np.inf), 1.0)
+    return least
 
 
 def _ratios(s: ComplexArray, fastest: float) -> Array:

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from ..devices.constants import Array
+from ..devices.constants import Array, BoolArray
 
 if TYPE_CHECKING:
     from ..design.model import Design
@@ -70,8 +70,9 @@ def build_thermal(design: Design) -> ThermalNetwork:
             for b in other:
                 _join(conductance, a, b, 1 / link.theta)
     node = {ref: i for nodes in dice.values() for ref, i in nodes.items() if ref in design.parts}
-    shared = frozenset(r for r in node if design.parts[r].kind in DICE_KINDS
-                       or len(design.packages[design.parts[r].package].parts) > 1)
+    shared = frozenset(
+        r for r in node if design.parts[r].kind in DICE_KINDS or len(design.packages[design.parts[r].package].parts) > 1
+    )
     return _solve(node, conductance, to_ambient, held_at, shared)
 
 
@@ -137,7 +138,7 @@ def _solve(
     return ThermalNetwork(node, rise, from_ambient, offset, heated)
 
 
-def _reach(conductance: Array, anchored: Array) -> Array:
+def _reach(conductance: Array, anchored: BoolArray) -> BoolArray:
     """Nodes with a thermal path to an anchored one."""
     reached = anchored.copy()
     for _ in range(len(reached)):

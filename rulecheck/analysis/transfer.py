@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 EXPONENT_STEP = 1e-3
 TRIM_POSITIONS = 41
 TRIM_ROUNDS = 12
+FINEST_TRIM = 1e-12
 
 Solver = Callable[[Conditions], "OperatingPoints"]
 
@@ -58,7 +59,7 @@ def _law(requirement: Requirement, conditions: Conditions, points: OperatingPoin
     law, design = requirement.law, points.network.design
     if law is None:
         return np.full(conditions.size, np.nan)
-    known: dict[str, Array | float] = dict(requirement.constants)
+    known: dict[str, Any] = dict(requirement.constants)
     for name in law.names:
         if name in known:
             continue
@@ -66,7 +67,7 @@ def _law(requirement: Requirement, conditions: Conditions, points: OperatingPoin
         reference = net is not None and net.role in ("reference", "supply")
         known[name] = points.voltage(name) if reference else conditions.values[name]
     with np.errstate(all="ignore"):  # outside its domain a law is NaN, which is then not judged
-        return np.broadcast_to(np.asarray(law.evaluate(known), dtype=float), (conditions.size,))
+        return np.broadcast_to(law.evaluate(known), (conditions.size,))
 
 
 def compare(requirement: Requirement, points: OperatingPoints, solver: Solver, typical: Row) -> Transfer:
@@ -120,9 +121,7 @@ def judged(requirement: Requirement, points: OperatingPoints, typical: Row) -> B
     return inside
 
 
-def _exponents(
-    requirement: Requirement, points: OperatingPoints, solver: Solver, name: str
-) -> tuple[Array, Array]:
+def _exponents(requirement: Requirement, points: OperatingPoints, solver: Solver, name: str) -> tuple[Array, Array]:
     """Local exponents of output and law in one input, by central difference in its logarithm."""
     x = points.conditions.values[name]
     if not np.any(x):
@@ -169,14 +168,18 @@ def _null(design: Design, requirement: Requirement, ref: str, solver: Solver, ot
     low, high = spread.min, spread.max
     if low == high:
         low, high = 0.0, 1.0
-    for _ in range(TRIM_ROUNDS):
+    best = float(spread.typ)
+    for _ in range(TRIM_ROUNDS):  # each round narrows the span to one cell of the last
         positions = np.linspace(low, high, TRIM_POSITIONS)
         error = trim_error(design, requirement, {**others, ref: positions}, solver)
+        if not np.isfinite(error).any():
+            break
+        best = float(positions[np.nanargmin(np.abs(error))])
         sign = np.flatnonzero(np.diff(np.sign(error)) != 0)
-        if not sign.size or high - low < 1e-12:
+        if not sign.size or high - low < FINEST_TRIM:
             break
         low, high = positions[sign[0]], positions[sign[0] + 1]
-    return float(positions[np.nanargmin(np.abs(error))]) if np.isfinite(error).any() else spread.typ
+    return best
 
 
 def trim_error(

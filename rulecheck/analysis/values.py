@@ -9,7 +9,9 @@ from typing import TYPE_CHECKING, Any, TypeVar
 import numpy as np
 
 from ..devices import amplifier, diode, passive, transistor
-from ..devices.constants import Array
+from ..devices.constants import Array, Index
+from ..devices.diode import HotDiode
+from ..devices.transistor import HotTransistor
 from .network import Element
 
 if TYPE_CHECKING:
@@ -46,10 +48,10 @@ class Values:
     branch_resistance: Array
     branch_voltage: Array
     source: Array
-    transistor: transistor.HotTransistor
+    transistor: HotTransistor
     polarity: Array
-    diode: diode.HotDiode
-    clamp: diode.HotDiode
+    diode: HotDiode
+    clamp: HotDiode
     gain: Array
     offset: Array
     low_headroom: Array
@@ -57,7 +59,7 @@ class Values:
     output_resistance: Array
 
 
-def take(record: T, index: Any) -> T:
+def take(record: T, index: Index) -> T:
     """The record with every array (nested too) reduced to the conditions that `index` picks."""
     parts: dict[str, Any] = {}
     for entry in fields(record):  # type: ignore[arg-type]  # a dataclass by construction
@@ -89,6 +91,11 @@ class Parameters:
     def of(self, ref: str, name: str, default: float = 0.0) -> Array:
         """Value of one parameter, shape (conditions,) or (1,); `default` where it is absent."""
         self.read[ref, name] = found = self._find(ref, name, default)
+        return found
+
+    def change(self, ref: str, name: str) -> Array:
+        """An override of something that no design states; 0 where there is none, shape (conditions,) or (1,)."""
+        self.read[ref, name] = found = np.atleast_1d(np.asarray(self.overrides.get((ref, name), 0.0), dtype=float))
         return found
 
     def _find(self, ref: str, name: str, default: float) -> Array:
@@ -146,7 +153,7 @@ def compute_values(
     amps = network.amplifiers
     hot = columns([temperature(r) for r in network.transistors], size)
     table = p.table(network.transistors, TRANSISTOR_NAMES, size)
-    table["mismatch"] = columns([p.of(r, "vbe_offset") + p.of(r, "mismatch") for r in network.transistors], size)
+    table["mismatch"] = columns([p.of(r, "vbe_offset") + p.change(r, "mismatch") for r in network.transistors], size)
     return Values(
         fixed=columns([context.fixed(name) for name in network.fixed], size),
         conductance=columns([1 / np.minimum(context.resistance(e), INDEFINITE) for e in network.resistors], size),
@@ -242,12 +249,12 @@ class _Context:
         p = self.parameters
         doubling = p.of(ref, "bias_current_doubling", default=np.inf)
         currents = amplifier.input_currents(
-            p.of(ref, "bias_current"), p.of(ref, "offset_current_now"), doubling, self.temperature(ref)
+            p.of(ref, "bias_current"), p.change(ref, "offset_current"), doubling, self.temperature(ref)
         )
         return currents[0 if name == "IN+" else 1]
 
 
-def _hot_diodes(context: _Context) -> diode.HotDiode:
+def _hot_diodes(context: _Context) -> HotDiode:
     network, p, size = context.network, context.parameters, context.conditions.size
     records = []
     for element in network.diodes:
@@ -259,6 +266,5 @@ def _hot_diodes(context: _Context) -> diode.HotDiode:
         else:
             records.append(diode.heat(p.table([ref], DIODE_NAMES, size), heat))
     empty = np.zeros((size, 0))
-    join = {f.name: np.concatenate([getattr(r, f.name) for r in records] or [empty], axis=1)
-            for f in fields(diode.HotDiode)}
-    return diode.HotDiode(**join)
+    join = {f.name: np.concatenate([getattr(r, f.name) for r in records] or [empty], axis=1) for f in fields(HotDiode)}
+    return HotDiode(**join)

@@ -90,9 +90,7 @@ def constraints(wiring: Wiring, junctions: Iterable[str], held: Mapping[str, tup
     return rows + [_tagged(row, "sum", point, (), wiring) for point, row in sums.items()]
 
 
-def _tagged(
-    row: Row, kind: str, name: str, voltages: Iterable[tuple[str, Fraction]], wiring: Wiring
-) -> Row:
+def _tagged(row: Row, kind: str, name: str, voltages: Iterable[tuple[str, Fraction]], wiring: Wiring) -> Row:
     for point, factor in voltages:
         _add_voltage(row, point, factor, wiring)
     row["eq", f"{kind} {name}"] = ONE
@@ -114,7 +112,7 @@ def _add(row: Row, column: Column, value: Fraction) -> None:
 
 
 def _current_sums(wiring: Wiring, junctions: Iterable[str]) -> dict[str, Row]:
-    """Current out of each point that no amplifier or ideal source drives, as rows by point."""
+    """Sum up the current out of each point that no amplifier or ideal source drives."""
     sums: dict[str, Row] = {point: {} for point in wiring.nets_at if not wiring.is_driven(point)}
     for resistance in wiring.resistances:
         for here, there in ((resistance.a, resistance.b), (resistance.b, resistance.a)):
@@ -133,7 +131,7 @@ def _current_sums(wiring: Wiring, junctions: Iterable[str]) -> dict[str, Row]:
 
 
 def _flows(wiring: Wiring, junctions: Iterable[str]) -> Iterator[tuple[Column, tuple[str, str]]]:
-    """Columns of currents with the points they flow between, from the first through the part to the second."""
+    """List columns of currents with the points they flow between, from the first to the second."""
     for ref in junctions:
         yield ("I", ref), current_path(wiring, ref)
     for ref in wiring.parts("voltage-source", "current-source", "photodiode"):
@@ -148,7 +146,7 @@ def _flows(wiring: Wiring, junctions: Iterable[str]) -> Iterator[tuple[Column, t
 
 
 def fixed_spread(wiring: Wiring, column: Column) -> Spread | None:
-    """Spread of what a column stands for where that is fixed: a supply, a reference, a source; None otherwise."""
+    """Spread of what a column stands for where it is fixed: a supply, reference or source; else None."""
     kind, name = column
     if kind == "S":
         part = wiring.design.parts[name]

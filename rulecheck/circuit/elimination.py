@@ -81,22 +81,26 @@ def reduced(rows: Iterable[Row], columns: Iterable[Column], cost: Cost) -> dict[
 
     Columns are tried in the order given; each row is a relation of least support in these columns.
     """
-    pivots, _ = eliminate(rows, columns, cost)
+    return back_substituted(eliminate(rows, columns, cost)[0])
+
+
+def back_substituted(pivots: Mapping[Column, Row]) -> dict[Column, Row]:
+    """Pivots of an elimination with the columns eliminated later replaced in those before."""
     done: dict[Column, Row] = {}
-    for column, row in reversed(pivots.items()):
+    for column, row in reversed(list(pivots.items())):
         done[column] = substitute(row, done, column)
     return done
 
 
 def substitute(row: Row, pivots: Mapping[Column, Row], spared: Column | None = None) -> Row:
-    """The row with every column that has a pivot replaced, `spared` left alone; pivots must be reduced."""
+    """Replace every column of a row that has a pivot but `spared`; pivots must be reduced."""
     for column in [c for c in row if c in pivots and c != spared]:
         row = subtract(row, pivots[column], row[column])
     return row
 
 
 def blocks(rows: Iterable[Row], joins: Callable[[Column], bool]) -> list[list[Row]]:
-    """Rows sorted into groups that share no column for which `joins` holds, in the order of their first rows."""
+    """Sort rows into groups that share no column for which `joins` holds, in the order of first rows."""
     rows = list(rows)
     parent = list(range(len(rows)))
 

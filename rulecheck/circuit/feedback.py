@@ -129,7 +129,8 @@ class _Search:
                 return
             nets, steps = queue.popleft()
             for pin in counts:
-                if nets[-1] == self.pins[pin] and counts[pin] < MOST_PATHS:
+                arrived = nets[-1] == self.pins[pin] and self.wiring.point_of[nets[-1]] not in self.wiring.known
+                if arrived and counts[pin] < MOST_PATHS:
                     counts[pin] += 1
                     yield FeedbackLoop(self.amplifier, pin, tuple(s.part for s in steps), nets, steps)
             if len(steps) < LONGEST_PATH and (len(nets) == 1 or self._passes(nets[-1], steps)):

@@ -7,7 +7,7 @@ figures of a real operating point are not needed for that.
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -21,9 +21,10 @@ THERMAL_VOLTAGE = 25.85e-3  # V: kT/q at 300 K
 FORWARD_BETA = 200.0
 GAIN = 1e5
 LEAST_CONDUCTANCE = 1e-9  # S: to ground at every point, stands for output resistances left out
+STIFF = 1.0  # S: a voltage source between two points, stiff against every resistance of such circuits
 LEAST_RESPONSE = 1e-9  # below it an input does not follow its output
 
-Floats = NDArray[np.float64]
+Floats = NDArray[np.floating]
 
 
 @dataclass(frozen=True, slots=True)
@@ -127,7 +128,9 @@ def _read(wiring: Wiring, amp: str, moves: Floats, place: dict[str, int], output
     if amp not in outputs or moves[outputs[amp]] == 0.0:
         return Feedback(amp, 0, "IN-")
     led = {
-        pin: sign * float(moves[place[point]] / moves[outputs[amp]]) if (point := wiring.point(amp, pin)) in place else 0.0
+        pin: sign * float(moves[place[point]] / moves[outputs[amp]])
+        if (point := wiring.point(amp, pin)) in place
+        else 0.0
         for pin, sign in (("IN-", 1.0), ("IN+", -1.0))
     }
     total = led["IN-"] + led["IN+"]
@@ -138,25 +141,28 @@ def _read(wiring: Wiring, amp: str, moves: Floats, place: dict[str, int], output
 def _conductances(wiring: Wiring, junctions: list[str], place: dict[str, int]) -> Floats:
     """Nodal conductances of the points in `place`; points held by sources are at rest."""
     matrix = np.eye(len(place)) * LEAST_CONDUCTANCE
-
-    def stamp(source: str, sink: str, positive: str, negative: str, conductance: float) -> None:
-        """Current from `source` through a part to `sink`, led by the voltage from `positive` to `negative`."""
+    for (source, sink), (positive, negative), conductance in _stamps(wiring, junctions):
         for row, sign in ((source, 1.0), (sink, -1.0)):
             for column, direction in ((positive, 1.0), (negative, -1.0)):
                 if row in place and column in place:
                     matrix[place[row], place[column]] += sign * direction * conductance
+    return matrix
 
+
+Stamp = tuple[tuple[str, str], tuple[str, str], float]
+
+
+def _stamps(wiring: Wiring, junctions: list[str]) -> Iterator[Stamp]:
+    """Points that a current flows between, points whose voltage leads it, and the conductance."""
     for resistance in wiring.resistances:
-        stamp(resistance.a, resistance.b, resistance.a, resistance.b, float(1 / resistance.ohm))
+        ends = resistance.a, resistance.b
+        yield ends, ends, float(1 / resistance.ohm)
     for ref in wiring.parts("voltage-source"):
         if points := wiring.two_points(ref):
-            stamp(*points, *points, 1.0)  # stiff against every resistance of such circuits
+            yield points, points, STIFF
+    conductance = CURRENT / THERMAL_VOLTAGE
     for ref in junctions:
-        ends = junction_ends(wiring, ref)
-        if ends is None:
-            continue
-        conductance = CURRENT / THERMAL_VOLTAGE
-        stamp(*current_path(wiring, ref), *ends, conductance)
-        if not is_diode_like(wiring, ref):
-            stamp(*ends, *ends, conductance / FORWARD_BETA)
-    return matrix
+        if junction := junction_ends(wiring, ref):
+            yield current_path(wiring, ref), junction, conductance
+            if not is_diode_like(wiring, ref):
+                yield junction, junction, conductance / FORWARD_BETA

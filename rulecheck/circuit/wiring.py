@@ -36,7 +36,7 @@ class Resistance:
 
 
 def exact(value: float) -> Fraction:
-    """A figure as the fraction that its decimal text stands for, so that equal ratios cancel exactly."""
+    """Take a figure as the fraction that its decimal text stands for, so that equal ratios cancel."""
     return Fraction(f"{value:.12g}")
 
 
@@ -82,7 +82,7 @@ class Wiring:
     resistances : tuple of Resistance
         Between different points only.
     resistances_at : mapping of point to those resistances that end there
-    pins_at : mapping of point to (reference, pin) pairs, in the order of the file
+    pins_at : mapping of point to (reference, pin) pairs
     pins_on : mapping of net to (reference, pin) pairs
     nets_at : mapping of point to its nets, in the order of the file
     """
@@ -106,11 +106,11 @@ class Wiring:
         return (self.point_of[nets[0]], self.point_of[nets[1]]) if nets else None
 
     def parts(self, *kinds: str) -> Iterator[str]:
-        """References of the parts of these kinds, in the order of the file."""
+        """List the parts of these kinds, in the order of the file."""
         return (ref for ref, part in self.design.parts.items() if part.kind in kinds)
 
     def amplifiers(self) -> Iterator[str]:
-        """References of amplifiers with both inputs and the output connected."""
+        """List the amplifiers with both inputs and the output connected."""
         return (ref for ref in self.parts("op-amp") if has_pins(self.design.parts[ref], "IN+", "IN-", "OUT"))
 
     def is_driven(self, point: str) -> bool:
@@ -118,7 +118,7 @@ class Wiring:
         return point in self.known or any(pin == "OUT" for _, pin in self.pins_at.get(point, ()))
 
     def carriers_at(self, point: str) -> list[str]:
-        """References of what can carry current at a point, one entry a pin; empty text for loads and inputs."""
+        """List what can carry current at a point, one entry a pin; empty text for loads and inputs."""
         carriers = [resistance.part for resistance in self.resistances_at.get(point, ())]
         carriers += [ref for ref, pin in self.pins_at.get(point, ()) if _carries(self.design.parts[ref], pin)]
         return carriers + ["" for net in self.nets_at[point] if self.drives_current(net)]

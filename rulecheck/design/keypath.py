@@ -89,7 +89,7 @@ def value_at(data: object, path: KeyPath) -> object:
     for segment in path:
         if isinstance(data, Mapping) and segment in data:
             data = data[segment]
-        elif isinstance(data, list) and segment.isdecimal() and int(segment) < len(data):
+        elif isinstance(data, list) and segment in map(str, range(len(data))):
             data = data[int(segment)]
         else:
             raise KeyError(join_key(path))

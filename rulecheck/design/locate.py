@@ -46,15 +46,16 @@ class Span:
         it is first named in; its own header wins over those of its sub-tables.
     line, column : int
         Start of `value`, from 1; the column counts characters.
-    written : bool
-        Whether the path has a value, element or header of its own, rather than being implied by a longer one.
+    kind : str
+        ``"value"`` for a value or element, ``"header"`` for a table with a header of its own,
+        ``"implied"`` where only longer paths name it.
     """
 
     key: Range
     value: Range
     line: int
     column: int
-    written: bool
+    kind: Literal["value", "header", "implied"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -115,16 +116,17 @@ class Spans(Mapping[KeyPath, Span]):
         whole = (entry.start, entry.keys[-1][1]) if entry.kind == "pair" else entry.value
         for length, key in enumerate(entry.keys[:-1], entry.context + 1):
             if entry.path[:length] not in self._spans:
-                self._spans[entry.path[:length]] = self._span(key, whole, written=False)
+                self._spans[entry.path[:length]] = self._span(key, whole, "implied")
         known = self._spans.get(entry.path)
-        if known is None or not known.written:
-            self._spans[entry.path] = self._span(entry.keys[-1], entry.value, written=True)
+        if known is None or known.kind == "implied":
+            kind: Literal["value", "header"] = "header" if entry.kind in ("table", "array") else "value"
+            self._spans[entry.path] = self._span(entry.keys[-1], entry.value, kind)
         for child in self.children.get(entry.path, ()):
             self._enter(child)
 
-    def _span(self, key: Range, value: Range, *, written: bool) -> Span:
+    def _span(self, key: Range, value: Range, kind: Literal["value", "header", "implied"]) -> Span:
         line, column = self.position(value[0])
-        return Span(key, value, line, column, written)
+        return Span(key, value, line, column, kind)
 
     def position(self, offset: int) -> tuple[int, int]:
         """Line and column of `offset`, from 1; a byte-order mark takes no column."""
@@ -140,7 +142,7 @@ class Spans(Mapping[KeyPath, Span]):
         for length in range(len(segments), 0, -1):
             if segments[:length] in self._spans:
                 return segments[:length], self._spans[segments[:length]]
-        return (), self._span((0, 0), (0, 0), written=False)
+        return (), self._span((0, 0), (0, 0), "implied")
 
     def __getitem__(self, path: Sequence[str | int]) -> Span:
         return self._spans[tuple(map(str, path))]
@@ -150,6 +152,12 @@ class Spans(Mapping[KeyPath, Span]):
 
     def __len__(self) -> int:
         return len(self._spans)
+
+
+def skip_trivia(text: str, at: int) -> int:
+    """Pass over the blanks, line ends and comments at `at`."""
+    match = _TRIVIA.match(text, at)
+    return match.end() if match else at
 
 
 def scan(text: str) -> Spans:
@@ -174,11 +182,11 @@ class _Scanner:
         self.last_index: dict[KeyPath, int] = {}  # of each array of tables so far
 
     def scan(self) -> Spans:
-        at = self.trivia(int(self.text.startswith(BYTE_ORDER_MARK)))
+        at = skip_trivia(self.text, int(self.text.startswith(BYTE_ORDER_MARK)))
         while at < len(self.text):
             entry = self.header_at(at) if self.text[at] == "[" else self.pair_at(at, self.header)
             self.entries.append(entry)
-            at = self.trivia(entry.end)
+            at = skip_trivia(self.text, entry.end)
         return Spans(self.text, self.entries, self.children)
 
     def header_at(self, start: int) -> Entry:
@@ -232,7 +240,7 @@ class _Scanner:
         """Find the end of the array or inline table at `start`."""
         closing = "]" if self.text[start] == "[" else "}"
         found: list[Entry] = []
-        at = self.trivia(start + 1)
+        at = skip_trivia(self.text, start + 1)
         while not self.text.startswith(closing, at):
             if closing == "}":
                 entry = self.pair_at(at, path)
@@ -241,9 +249,9 @@ class _Scanner:
                 value = self.value_at(at, own)
                 entry = Entry("element", own, len(path), *value, (value,), value)
             found.append(entry)
-            at = self.trivia(entry.end)
+            at = skip_trivia(self.text, entry.end)
             if not self.text.startswith(closing, at):
-                at = self.trivia(self.expect(",", at))
+                at = skip_trivia(self.text, self.expect(",", at))
         self.children[path] = tuple(found)
         return at + 1
 
@@ -254,11 +262,6 @@ class _Scanner:
 
     def blanks(self, at: int) -> int:
         match = _BLANKS.match(self.text, at)
-        return match.end() if match else at
-
-    def trivia(self, at: int) -> int:
-        """Pass over the blanks, line ends and comments at `at`."""
-        match = _TRIVIA.match(self.text, at)
         return match.end() if match else at
 
     def error(self, due: str, at: int) -> ValueError:

@@ -14,10 +14,13 @@ ELEMENTARY_CHARGE = 1.602176634e-19
 NOMINAL_TEMPERATURE = 298.15
 """Temperature at which parameters are stated, K."""
 
-Array = NDArray[np.float64]
+Array = NDArray[np.floating[Any]]
 BoolArray = NDArray[np.bool_]
-ComplexArray = NDArray[np.complex128]
+IntArray = NDArray[np.integer[Any]]
+ComplexArray = NDArray[np.complexfloating[Any, Any]]
 AnyArray = NDArray[Any]
+Index = AnyArray | slice
+"""Chooses conditions: integers, booleans or a slice."""
 
 
 def thermal_voltage(temperature: Array) -> Array:

@@ -1,1 +1,1 @@
-"""An independent solver of the model equations, built on general libraries, and what the program must share with it."""
+"""An independent solver of the model equations, and what the program must share with it."""

@@ -18,14 +18,12 @@ class Heat:
         for ref, table in design["parts"].items():
             self.packages.setdefault(table["package"], []).append(ref)
         self.declared = design.get("packages", {})
-        self.links = [
-            (*link["between"], number(link["theta"])) for link in design.get("thermal_links", [])
-        ]
+        self.links = [(*link["between"], number(link["theta"])) for link in design.get("thermal_links", [])]
         self.linked = {name for link in self.links for name in link[:2]}
         self.dice = {name: self.dice_of(name) for name in {*self.packages, *self.linked, *self.declared}}
 
     def dice_of(self, package):
-        """The groups of parts that share a temperature: all of a single die, each by itself on separate ones."""
+        """Parts that share a temperature: all of a single die, each by itself on separate ones."""
         refs = self.packages.get(package, [])
         parts = self.design["parts"]
         junctions = [ref for ref in refs if parts[ref]["kind"] in DICE_KINDS]
@@ -34,7 +32,7 @@ class Heat:
         return [[ref] for ref in refs] if die == "separate" else [refs]
 
     def theta(self, package, refs):
-        """Thermal resistance to ambient of a die, its package's own or its model's; none where neither says."""
+        """Thermal resistance of a die to ambient, from its package or model; none where neither says."""
         own = self.declared.get(package, {}).get("theta_ja")
         stated = [self.design["parts"][ref].get("theta_ja") for ref in self.packages.get(package, [])]
         values = [nominal(t) for t in ([own] if own is not None else stated) if t is not None]
@@ -61,9 +59,7 @@ class Heat:
                     join(g, row[a, i], row[b, j], theta)
         self.hold(g, p, row)
         rise = np.linalg.solve(g, p) if nodes else p
-        return {
-            ref: self.ambient + rise[row[name, k]] for name, k in nodes for ref in self.dice[name][k]
-        }
+        return {ref: self.ambient + rise[row[name, k]] for name, k in nodes for ref in self.dice[name][k]}
 
     def node_equation(self, g, p, row, name, k, power):
         """Heat of one die and its way to ambient and to the other dice of its package."""

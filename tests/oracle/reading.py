@@ -51,14 +51,24 @@ def read(text, catalogue_text=None):
     return {**data, "parts": parts}
 
 
+DEFAULTS = {
+    "emission_coefficient": 1.0,
+    "reverse_beta": 2.0,
+    "beta_exponent": 1.5,
+    "early_voltage": math.inf,
+    "knee_current": math.inf,
+    "leakage_emission_coefficient": 2.0,
+    "bandgap": 1.12,
+    "temperature_exponent": 3.0,
+    "leakage_doubling": 10.0,
+    "second_pole": math.inf,
+    "dark_current_doubling": 10.0,
+    "shunt_resistance": math.inf,
+}
+
+
 class Parameters:
     """Nominal parameters of one part by name, with the defaults of the model where they are not given."""
-
-    DEFAULTS = {
-        "emission_coefficient": 1.0, "reverse_beta": 2.0, "beta_exponent": 1.5, "early_voltage": math.inf,
-        "knee_current": math.inf, "leakage_emission_coefficient": 2.0, "bandgap": 1.12, "temperature_exponent": 3.0,
-        "leakage_doubling": 10.0, "second_pole": math.inf, "dark_current_doubling": 10.0, "shunt_resistance": math.inf,
-    }  # fmt: skip
 
     def __init__(self, table):
         self.table = table
@@ -67,7 +77,7 @@ class Parameters:
         """The nominal value; zero where nothing is said and the model knows no other default."""
         if name in self.table:
             return nominal(self.table[name])
-        return self.DEFAULTS.get(name, 0.0)
+        return DEFAULTS.get(name, 0.0)
 
     def end(self, name, end):
         """The nominal of one end of a two-sided limit such as a headroom."""

@@ -8,11 +8,11 @@ import numpy as np
 import scipy.linalg
 import scipy.optimize
 
-from .equations import Junction
+from .elements import STEP, Junction
 
 
 class Linear:
-    """Matrices G and C of the unknowns at an operating point, with the poles of the amplifiers as further unknowns."""
+    """Matrices G and C at an operating point, with the poles of the amplifiers as further unknowns."""
 
     def __init__(self, point):
         self.network = network = point.network
@@ -32,21 +32,14 @@ class Linear:
         """Every capacitance between two nodes, those of the devices included."""
         yield from self.network.capacitances
         for q in self.network.transistors.values():
-            p = self.parameters(q)
+            p = q.p
             yield q.b, q.e, p.emitter_capacitance + p.transit_time * q.diffusion(self.network)
             yield q.b, q.c, p.collector_capacitance
         for element in self.network.elements:
             if isinstance(element, Junction) and hasattr(element, "transit_time"):
                 v = self.network.v(element.anode) - self.network.v(element.cathode)
-                slope = element.current(v + 1e-30j).imag[0] / 1e-30
+                slope = element.current(v + 1j * STEP).imag[0] / STEP
                 yield element.anode, element.cathode, element.fixed_capacitance + element.transit_time * slope
-
-    def parameters(self, transistor):
-        """Parameters of a transistor element."""
-        from .reading import Parameters
-
-        ref = next(ref for ref, q in self.network.transistors.items() if q is transistor)
-        return Parameters(self.network.design["parts"][ref])
 
     def capacitor(self, a, b, value):
         """Add a capacitance between two nodes."""
@@ -69,7 +62,12 @@ class Linear:
         """Finite natural frequencies in 1/s."""
         rows = np.max(np.abs(self.g), axis=1)
         g, c = self.g / rows[:, None], self.c / rows[:, None]
-        top = 1e4 * 2 * math.pi * max((a.p.gain_bandwidth for a in self.network.amplifiers.values()), default=1e9)
+        top = (
+            1e4
+            * 2
+            * math.pi
+            * max((a.p.gain_bandwidth for a in self.network.amplifiers.values()), default=1e9)
+        )
         # unit of time near the fastest pole keeps the pencil balanced
         alpha, beta = scipy.linalg.eig(-g, c * top, right=False, homogeneous_eigvals=True)
         finite = np.abs(beta) > 1e-13 * np.hypot(np.abs(alpha), np.abs(beta))
@@ -84,7 +82,9 @@ class Linear:
         """Least damping ratio over complex pairs, 1 where there is none."""
         fastest = max((a.p.gain_bandwidth for a in self.network.amplifiers.values()), default=math.inf)
         values = self.natural_frequencies()
-        pairs = values[(np.abs(values.imag) > 1e-7 * np.abs(values)) & (np.abs(values) < 200 * math.pi * fastest)]
+        pairs = values[
+            (np.abs(values.imag) > 1e-7 * np.abs(values)) & (np.abs(values) < 200 * math.pi * fastest)
+        ]
         return float(np.min(-pairs.real / np.abs(pairs))) if len(pairs) else 1.0
 
     def return_ratio(self, ref, frequency):
@@ -107,18 +107,20 @@ class Linear:
         t = self.return_ratio(ref, grid)
         dc = float(self.return_ratio(ref, 0.0)[0].real)
         phase = np.unwrap(np.angle(np.concatenate([[dc], t])))[1:]
-        crossings = [
-            self.crossing(ref, grid, k, phase[k])
-            for k in np.flatnonzero((np.abs(t[:-1]) > 1) != (np.abs(t[1:]) > 1))
-        ]
+        above = np.abs(t) > 1
+        crossings = [self.crossing(ref, grid, k, phase[k]) for k in np.flatnonzero(above[:-1] != above[1:])]
         margin, crossover = min(crossings, default=(None, None))
         return {
-            "dc_return_ratio": dc, "phase_margin": margin, "crossover": crossover,
-            "modulus_margin": self.modulus_margin(ref, grid, t), "gain_margin": self.gain_margin(ref, grid, phase),
-        }  # fmt: skip
+            "dc_return_ratio": dc,
+            "phase_margin": margin,
+            "crossover": crossover,
+            "modulus_margin": self.modulus_margin(ref, grid, t),
+            "gain_margin": self.gain_margin(ref, grid, phase),
+        }
 
     def crossing(self, ref, grid, k, phase):
         """Phase margin and frequency of the unity crossing after one grid point."""
+
         def excess(x):
             return math.log(abs(self.return_ratio(ref, math.exp(x))[0]))
 

@@ -1,4 +1,4 @@
-"""Small designs for checks: parts as plain tables, written out as a design file, and the program's figures of it."""
+"""Small designs for checks: parts as plain tables, the design file of them, and the program's figures."""
 
 from __future__ import annotations
 
@@ -52,7 +52,7 @@ def temperature_of(thermal_voltage):
 def saturation(current, temperature, bandgap=1.12, exponent=3.0):
     """The saturation current at 25 degC of a junction that has `current` at another temperature.
 
-    The temperature law is that of "IS(T) = IS(T0)(T/T0)^3 exp[(Eg/k)(1/T0 - 1/T)]" (electronics.stackexchange 615312).
+    The law is ``IS(T) = IS(T0)(T/T0)^3 exp((Eg/k)(1/T0 - 1/T))`` (electronics.stackexchange 615312).
     """
     growth = (temperature / 298.15) ** exponent * math.exp(
         CHARGE * bandgap / BOLTZMANN * (1 / 298.15 - 1 / temperature)
@@ -135,7 +135,9 @@ def text_of(parts, nets, **tables):
     nets = {"GND": {"role": "ground"}, "VP": supply(15.0), "VN": supply(-15.0), **nets}
     lines = ["format = 1", 'catalogues = ["parts.toml"]', "[design]", 'title = "check"']
     for name, table in {"nets": nets, "parts": parts, **tables}.items():
-        for header, keys in [(f"[[{name}]]", t) for t in table] if isinstance(table, list) else [(f"[{name}]", table)]:
+        for header, keys in (
+            [(f"[[{name}]]", t) for t in table] if isinstance(table, list) else [(f"[{name}]", table)]
+        ):
             lines += [header, *(f'"{key}" = {toml(entry)}' for key, entry in keys.items())]
     return "\n".join(lines) + "\n"
 

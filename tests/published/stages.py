@@ -20,7 +20,7 @@ def log_pair(common="GND", output="L", low="VN", high="VP", **first):
 
 
 def antilog_pair(base, scale, **last):
-    """Two antilog transistors: ``V(OUT) = scale · I(S3) exp(V(base)/V_T)``; `last` are parameters of the second."""
+    """Two antilog transistors: ``V(OUT) = scale · I(S3) exp(V(base)/V_T)``; `last` is for the second."""
     return {
         "Q3": transistor("S3", "GND", "T2"),
         "U3": amplifier("GND", "S3", "T2"),
@@ -31,7 +31,7 @@ def antilog_pair(base, scale, **last):
 
 
 def four_junctions(scale, **each):
-    """The stacked multiplier and divider: ``V(OUT) = scale · I(S1) I(S2)/I(S3)``; `each` are transistor parameters."""
+    """The stacked multiplier and divider: ``V(OUT) = scale · I(S1) I(S2)/I(S3)``."""
     return {
         "Q1": transistor("S1", "GND", "A", **each),
         "U1": amplifier("GND", "S1", "A"),

@@ -1,7 +1,7 @@
-"""The numeric cases: figures of an independent solver of the model equations for four designs and their faults.
+"""The numeric cases: figures of another solver of the equations for four designs and their faults.
 
-Tolerances are those of ``cases/README.md``: nets 1e-6 of reading or of 1 mV, temperatures 2 mK, margins 0.1 degrees,
-rightmost natural frequency 1e-3, damping 0.005; in faults nets to 1 mV and clamp currents to 1 %.
+Tolerances are those of ``cases/README.md``: nets 1e-6 of reading or of 1 mV, temperatures 2 mK, margins 0.1
+degrees, rightmost natural frequency 1e-3, damping 0.005; in faults nets to 1 mV and clamp currents to 1 %.
 """
 
 from __future__ import annotations
@@ -11,7 +11,6 @@ import json
 from pathlib import Path
 
 import pytest
-
 from rulecheck.testing import fault_figures_of, figures_of
 
 CASES = Path(__file__).parent / "cases"
@@ -76,9 +75,7 @@ def test_states(name):
     """Every amplifier is in the state expected; what is not listed is linear."""
     parts = figures(name)["parts"]
     amplifiers = {ref: table["state"] for ref, table in parts.items() if "state" in table}
-    wanted = {
-        ref: [STATES[record["state"].get(ref, 0)] for record in expected(name)] for ref in amplifiers
-    }
+    wanted = {ref: [STATES[record["state"].get(ref, 0)] for record in expected(name)] for ref in amplifiers}
     assert amplifiers
     assert amplifiers == wanted
 
@@ -90,7 +87,11 @@ def test_states(name):
         ("phase_margin", 0.0, 0.1),
         ("crossover", 1e-3, 0.0),
         ("modulus_margin", 0.0, 1e-3),
-        ("dc_return_ratio", 1e-2, 0.0),  # the cases give the real part at 0.1 Hz, up to 0.7 % below that at rest
+        (
+            "dc_return_ratio",
+            1e-2,
+            0.0,
+        ),  # the cases give the real part at 0.1 Hz, up to 0.7 % below that at rest
     ],
 )
 def test_loops(name, key, relative, absolute):
@@ -145,9 +146,7 @@ FAULTS = [
     (record["design"], sum(r["design"] == record["design"] for r in expected("faults")[:k]), record)
     for k, record in enumerate(expected("faults"))
 ]
-fault = pytest.mark.parametrize(
-    ("name", "k", "record"), FAULTS, ids=[f"{name}-{k}" for name, k, _ in FAULTS]
-)
+fault = pytest.mark.parametrize(("name", "k", "record"), FAULTS, ids=[f"{name}-{k}" for name, k, _ in FAULTS])
 
 
 @fault

@@ -41,7 +41,11 @@ def test_bias_current_without_compensation():
 
 @pytest.mark.parametrize(
     ("r1", "r2", "bias", "offset", "error"),
-    [(22e3, 2.2e6, 80e-9, 20e-9, 44e-3), (2.2e3, 220e3, 80e-9, 20e-9, 4.4e-3), (2.2e3, 220e3, 0.0, 3e-9, 0.66e-3)],
+    [
+        (22e3, 2.2e6, 80e-9, 20e-9, 44e-3),
+        (2.2e3, 220e3, 80e-9, 20e-9, 4.4e-3),
+        (2.2e3, 220e3, 0.0, 3e-9, 0.66e-3),
+    ],
 )
 def test_offset_current_with_compensation(r1, r2, bias, offset, error):
     """With equal resistances at both inputs only the offset current counts: 44, 4.4 and 0.66 mV.
@@ -51,5 +55,7 @@ def test_offset_current_with_compensation(r1, r2, bias, offset, error):
     found = error_figures(r1, r2, True, bias, offset)
     assert found["nets"]["OUT"][0] == pytest.approx(0.0, abs=1e-6)
     budget = found["requirements"]["gain"]["budget"]
-    shares = [entry["contribution"][0] for entry in budget if entry["parameter"].endswith("U1.offset_current")]
+    shares = [
+        entry["contribution"][0] for entry in budget if entry["parameter"].endswith("U1.offset_current")
+    ]
     assert [abs(share) for share in shares] == pytest.approx([error], rel=1e-4)

@@ -158,9 +158,10 @@ def test_translinear_product():
 
 
 def test_translinear_error_of_bulk_emitter_resistance():
-    """0.4 ohm in every emitter gives 399.0727 uA for 400 and 8.959213 mA for 10, and no error at equal currents.
+    """0.4 ohm in every emitter gives 399.0727 uA for 400, 8.959213 mA for 10, and equal currents exactly.
 
-    Translinear loop of Gilbert, Electronics Letters 11(1) 14-16 (1975), with the rBE of the MAT02 data sheet; computed.
+    Translinear loop of Gilbert, Electronics Letters 11(1) 14-16 (1975), with the rBE of the MAT02 data
+    sheet; computed.
     """
     currents = [(200e-6, 100e-6, 50e-6), (1e-3, 1e-3, 100e-6), (1e-4, 1e-4, 1e-4)]
     found = products({"bulk_emitter_resistance": 0.4}, currents)

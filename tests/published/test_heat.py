@@ -14,14 +14,19 @@ def loaded_follower(supply_current, loads, theta, ambient):
         **{f"RL{k}": resistor("OUT", "GND", value) for k, value in enumerate(loads)},
     }
     nets = {"VP": supply(5.0), "VN": supply(-5.0), "VIN": voltage_input(-2.5, 2.5)}
-    found = figures(parts, nets, [{"VIN": 2.5, "ambient": ambient}], packages={"U1": {"theta_ja": f"{theta} K/W"}})
+    found = figures(
+        parts, nets, [{"VIN": 2.5, "ambient": ambient}], packages={"U1": {"theta_ja": f"{theta} K/W"}}
+    )
     temperature = found["parts"]["U1"]["temperature"][0]
     return temperature - 273.15, (temperature - ambient) / theta
 
 
 @pytest.mark.parametrize(
     ("supply_current", "loads", "theta", "ambient", "power", "junction"),
-    [(23.5e-3, (100.0, 500.0), 64.9, 105.0, 0.3100, 125.119), (6.2e-3, (20.0, 804.0), 150.0, 85.0, 0.38227, 142.34)],
+    [
+        (23.5e-3, (100.0, 500.0), 64.9, 105.0, 0.3100, 125.119),
+        (6.2e-3, (20.0, 804.0), 150.0, 85.0, 0.38227, 142.34),
+    ],
     ids=["OPA817", "OPA690"],
 )
 def test_junction_of_a_loaded_amplifier(supply_current, loads, theta, ambient, power, junction):
@@ -41,7 +46,9 @@ def idle(supplies, currents, theta, ambient):
         for k, current in enumerate(currents)
     }
     nets = {"VP": supply(supplies[0]), "VN": supply(supplies[1])}
-    found = figures(parts, nets, [{"ambient": ambient + 273.15}], packages={"U": {"theta_ja": f"{theta} K/W"}})
+    found = figures(
+        parts, nets, [{"ambient": ambient + 273.15}], packages={"U": {"theta_ja": f"{theta} K/W"}}
+    )
     return [found["parts"][ref]["temperature"][0] - 273.15 for ref in parts]
 
 

@@ -35,13 +35,18 @@ def diode_on_resistor(voltage, resistance, temperature, i_s, **more):
 
 @pytest.mark.parametrize(
     ("voltage", "resistance", "current"),
-    [(0.9, 249.0, 1.0848517386e-3), (0.7, 10.0, 3.747051e-3), (0.7, 51.0, 1.287542e-3), (0.7, 249.0, 0.3884826e-3)],
+    [
+        (0.9, 249.0, 1.0848517386e-3),
+        (0.7, 10.0, 3.747051e-3),
+        (0.7, 51.0, 1.287542e-3),
+        (0.7, 249.0, 0.3884826e-3),
+    ],
 )
 def test_diode_with_series_resistance(voltage, resistance, current):
     """The Lambert W solution of a diode of 25 fA and 0.3 ohm on a resistor: 1.08485 mA from 0.9 V.
 
-    Banwell & Jayakumar, Electronics Letters 36(4) 291-292 (2000), as worked in the Boost.Math documentation, with
-    V_T = 1.38e-23·298/1.6e-19; further points computed.
+    Banwell & Jayakumar, Electronics Letters 36(4) 291-292 (2000), as worked in the Boost.Math
+    documentation, with V_T = 1.38e-23·298/1.6e-19; further points computed.
     """
     temperature = temperature_of(1.38e-23 * 298 / 1.6e-19)
     found, _ = diode_on_resistor(voltage, resistance, temperature, 25e-15, series_resistance=0.3)
@@ -55,7 +60,9 @@ def test_diode_of_a_tenth_volt_a_decade():
     """
     n_vt = 0.1 / math.log(10)
     i_s = 1e-3 / math.expm1(0.7 / n_vt)
-    current, voltage = diode_on_resistor(5.0, 1e3, 298.15, i_s, emission_coefficient=n_vt / thermal_voltage(298.15))
+    current, voltage = diode_on_resistor(
+        5.0, 1e3, 298.15, i_s, emission_coefficient=n_vt / thermal_voltage(298.15)
+    )
     assert current == pytest.approx(4.237291e-3, rel=1e-6)
     assert voltage == pytest.approx(0.762709, abs=1e-6)
 
@@ -100,7 +107,8 @@ def amplifier_bias():
 def test_bias_current_of_an_amplifier():
     """Two diode drops and 39 kohm between +-5 V carry 225.85 uA.
 
-    Textbook companion, chapter "The 741 IC OP-AMP", Ex 2.1: 225.88 uA after one iteration, converged value computed.
+    Textbook companion, chapter "The 741 IC OP-AMP", Ex 2.1: 225.88 uA after one iteration, converged value
+    computed.
     """
     parts, temperature = amplifier_bias()
     nets = {"VP": supply(5.0), "VN": supply(-5.0)}
@@ -146,7 +154,8 @@ def test_four_resistor_bias():
 
 
 @pytest.mark.parametrize(
-    ("vbe", "bandgap", "slope"), [(0.60, 1.11, -1.959), (0.65, 1.11, -1.792), (0.70, 1.11, -1.625), (0.60, 1.12, -1.992)]
+    ("vbe", "bandgap", "slope"),
+    [(0.60, 1.11, -1.959), (0.65, 1.11, -1.792), (0.70, 1.11, -1.625), (0.60, 1.12, -1.992)],
 )
 def test_temperature_coefficient_of_the_base_emitter_voltage(vbe, bandgap, slope):
     """dV_BE/dT at constant current is ``(V_BE - (3 V_T + V_G))/T``: -1.96 mV/K at 0.6 V and 300 K.
@@ -173,7 +182,9 @@ def test_one_kelvin_between_paired_junctions():
     parts = {}
     for k, package in ((1, "COOL"), (2, "WARM")):
         parts[f"I{k}"] = current_source("VP", f"B{k}", 1e-3)
-        parts[f"Q{k}"] = transistor(f"B{k}", f"B{k}", "GND", saturation_current=i_s, bandgap=1.11, package=package)
+        parts[f"Q{k}"] = transistor(
+            f"B{k}", f"B{k}", "GND", saturation_current=i_s, bandgap=1.11, package=package
+        )
     packages = {"COOL": {"held_temperature": "26.35 degC"}, "WARM": {"held_temperature": "27.35 degC"}}
     found = figures(parts, {}, packages=packages)["parts"]
     assert [found[q]["temperature"][0] for q in ("Q1", "Q2")] == pytest.approx([299.5, 300.5], abs=1e-6)
@@ -194,14 +205,20 @@ def test_saturation_current_over_temperature():
 
 
 @pytest.mark.parametrize(
-    ("temperature", "published"), [(298.15, 25.692579), (300.0, 25.852000), (300.15, 25.864926), (293.15, 25.261712)]
+    ("temperature", "published"),
+    [(298.15, 25.692579), (300.0, 25.852000), (300.15, 25.864926), (293.15, 25.261712)],
 )
 def test_thermal_voltage(temperature, published):
     """kT/q is 25.69 mV at 25 degC, as the slope of a diode shows.
 
     Analog Devices AD8304 Rev. A p. 8 (25.69 mV); CODATA 2018 constants.
     """
-    parts = {"D1": diode("A", "GND"), "I1": current_source("VP", "A", 1e-3), "D2": diode("B", "GND"), "I2": current_source("VP", "B", 1e-4)}
+    parts = {
+        "D1": diode("A", "GND"),
+        "I1": current_source("VP", "A", 1e-3),
+        "D2": diode("B", "GND"),
+        "I2": current_source("VP", "B", 1e-4),
+    }
     found = figures(parts, {}, [{"ambient": temperature}])["nets"]
     slope = (found["A"][0] - found["B"][0]) / math.log(10)
     assert slope * 1e3 == pytest.approx(published, rel=1e-6)
@@ -237,4 +254,6 @@ def test_output_follows_the_base_of_a_log_transistor(base):
     nets = {"VREF": reference(10.0), "VIN": voltage_input(-0.5, 0.5)}
     found = figures(parts, nets, [{"VIN": -0.3, "ambient": 298.15}])
     level = {"GND": 0.0, "VIN": -0.3}[base]
-    assert found["nets"]["OUT"][0] == pytest.approx(level - thermal_voltage(298.15) * math.log(1e-4 / 1e-14), abs=1e-6)
+    assert found["nets"]["OUT"][0] == pytest.approx(
+        level - thermal_voltage(298.15) * math.log(1e-4 / 1e-14), abs=1e-6
+    )

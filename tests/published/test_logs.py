@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import math
 
 import pytest
@@ -30,7 +31,9 @@ def outputs(parts, nets, points, net="OUT"):
 
 
 @pytest.mark.parametrize(
-    ("temperature", "published"), [(298.15, 59.15935), (300.0, 59.5264), (293.15, 58.167)], ids=["25C", "300K", "20C"]
+    ("temperature", "published"),
+    [(298.15, 59.15935), (300.0, 59.5264), (293.15, 58.167)],
+    ids=["25C", "300K", "20C"],
 )
 def test_a_decade_of_current(temperature, published):
     """A ratio of ten gives 59 mV at 25 degC.
@@ -262,5 +265,5 @@ def test_decades_of_log_conformity():
     parts["Q1"]["saturation_current"] = "1e-18 A"
     points = [{"S": 10.0**k, "ambient": 298.15} for k in range(-11, -1)]
     found = figures(parts, {"S": current_input(1e-12, 1e-2)}, points)["parts"]["Q1"]["vbe"]
-    steps = [1e3 * (high - low) for low, high in zip(found, found[1:], strict=False)]
+    steps = [1e3 * (high - low) for low, high in itertools.pairwise(found)]
     assert steps == pytest.approx([1e3 * 0.025692579 * math.log(10)] * 9, rel=1e-4)

@@ -27,7 +27,7 @@ def loop(found, ref="U1"):
 
 
 def franco_log_stage(cf, emitter_resistor):
-    """Loop of the transdiode stage of the textbook example at 1 mA, where kT/q is the 26 mV that its re uses."""
+    """Loop of the textbook stage at 1 mA, at the temperature whose kT/q is the 26 mV that its re uses."""
     parts = {
         "R": resistor("VIN", "SUM", 10e3),
         "RO": resistor("SUM", "GND", 100e3),  # VA/ic of the transistor
@@ -70,15 +70,15 @@ def test_log_stage_margins_with_and_without_emitter_resistor(cf, emitter_resisto
 def test_the_capacitor_of_the_log_stage_rule_puts_the_pole_at_half_the_crossing():
     """With the 90.402 pF of the rule the pair has ``f0 = sqrt(2)·fp``, which holds for that capacitor alone.
 
-    S. Franco, Example 13.1 (companion): ``pi·Rb·ft·Cf^2 - Cf - (Cn+Cmu) = 0`` gives 90.402 pF; the stage is taken as
-    the transimpedance loop that has the same quadratic (TI THS4631 data sheet SLOS451B eq. 1).
+    S. Franco, Example 13.1 (companion): ``pi·Rb·ft·Cf^2 - Cf - (Cn+Cmu) = 0`` gives 90.402 pF;
+    the stage is taken as the transimpedance loop of the same quadratic (TI THS4631 data sheet SLOS451B eq. 1).
     """
     pair = transimpedance_pair(rf=4.3e3, cs=20e-12, cf=90.402e-12, bandwidth=1e6)
     assert pair["natural"] == pytest.approx(math.sqrt(2) / (4.3e3 * 90.402e-12), rel=1e-4)
 
 
 def loop_of_poles(gain, bandwidth, second_pole, third_pole=None):
-    """Loop of an amplifier of two poles as a follower, the third pole by a resistor and a capacitor in its feedback."""
+    """Loop of a follower of two poles, with a third one by a resistor and a capacitor in its feedback."""
     parts = {"U1": amplifier(
         "GND", "IN" if third_pole else "OUT", "OUT",
         open_loop_gain=gain, gain_bandwidth=bandwidth, second_pole=second_pole,
@@ -132,7 +132,7 @@ def test_loops_of_two_and_three_poles(gain, bandwidth, second, third, crossover,
 
 
 def test_differentiator_has_no_margin():
-    """An ideal differentiator of 159 kohm and 10 nF with a 1 MHz amplifier has a margin of 0.6 deg and a Q of 100.
+    """An ideal differentiator of 159 kohm, 10 nF and 1 MHz has a margin of 0.6 deg and a Q of 100.
 
     S. Franco, Example 8.2 (p. 358): fx 10.0 kHz, Q 100, PM 0.6 deg.
     """
@@ -154,13 +154,16 @@ def test_differentiator_has_no_margin():
 def test_stray_input_capacitance(cf, crossover, margin):
     """Stray capacitance at the inverting input leaves 14.7 deg, and the neutral capacitor brings 90 deg back.
 
-    S. Franco, Example 8.3 (p. 360), inputs seen, results computed: Cext 3 pF, Cd 7 pF, Cc/2 6 pF, 30 kohm, 20 MHz.
+    S. Franco, Example 8.3 (p. 360), inputs seen, results computed: Cext 3 pF, Cd 7 pF, Cc/2 6 pF, 30 kohm,
+    20 MHz.
     """
     parts = {
         "R1": resistor("VIN", "SUM", 30e3),
         "R2": resistor("SUM", "OUT", 30e3),
         "CEXT": capacitor("SUM", "GND", 3e-12),
-        "U1": amplifier("GND", "SUM", "OUT", gain_bandwidth=20e6, input_capacitance=7e-12, common_mode_capacitance=6e-12),
+        "U1": amplifier(
+            "GND", "SUM", "OUT", gain_bandwidth=20e6, input_capacitance=7e-12, common_mode_capacitance=6e-12
+        ),
     }
     if cf:
         parts["CF"] = capacitor("SUM", "OUT", cf)
@@ -170,7 +173,7 @@ def test_stray_input_capacitance(cf, crossover, margin):
 
 
 def reduced_loop(across_inputs, gain=1e5, **more):
-    """The inverting amplifier of three poles with a network across its inputs; a fast follower makes the third pole."""
+    """The inverting amplifier with a network across its inputs; a fast follower makes the third pole."""
     parts = {
         "R1": resistor("VIN", "SUM", 10e3),
         "R2": resistor("SUM", "OUT", 100e3),
@@ -184,7 +187,8 @@ def reduced_loop(across_inputs, gain=1e5, **more):
 def test_loop_gain_reduction_counts_the_third_pole():
     """A resistor across the inputs meant for 45 deg gives 40.35 deg, since the third pole counts.
 
-    S. Franco, Example 8.11: a0 1e5, poles 10 kHz, 3 MHz, 30 MHz, Rc 430 ohm; a0·beta 410 seen, the rest computed.
+    S. Franco, Example 8.11: a0 1e5, poles 10 kHz, 3 MHz, 30 MHz, Rc 430 ohm; a0·beta 410 seen, the rest
+    computed.
     """
     found = loop(reduced_loop({"RC": resistor("SUM", "GND", 430)}))
     assert found["phase_margin"] == pytest.approx(40.35, abs=0.05)
@@ -236,7 +240,9 @@ def test_exact_transimpedance_capacitor():
     """
     pair = transimpedance_pair(rf=100e3, cs=28e-12, cf=0.7126e-12, bandwidth=180e6)
     assert pair["natural"] == pytest.approx(math.sqrt(2) / (100e3 * 0.7126e-12), rel=3e-4)
-    assert pair["natural"] / (2 * math.pi) == pytest.approx(math.sqrt(180e6 / (2 * math.pi * 100e3 * 28.7126e-12)), rel=1e-4)
+    assert pair["natural"] / (2 * math.pi) == pytest.approx(
+        math.sqrt(180e6 / (2 * math.pi * 100e3 * 28.7126e-12)), rel=1e-4
+    )
 
 
 @pytest.mark.parametrize(
@@ -245,8 +251,8 @@ def test_exact_transimpedance_capacitor():
 def test_rule_of_forty_five_degrees_gives_more(factor, margin):
     """The capacitor of the 45 deg rule gives 51.8 deg, its Butterworth and doubled values 65.5 and 76.3 deg.
 
-    Rule: Analog Devices AD823A data sheet pp. 16-18, ``CF = sqrt(CS/(2 pi RF fu))``; exact margins computed for
-    1 GHz, 1 nF and 1 Mohm, limits atan(sqrt(phi)) = 51.83, 65.53 and 76.35 deg.
+    Rule: Analog Devices AD823A data sheet pp. 16-18, ``CF = sqrt(CS/(2 pi RF fu))``; exact margins computed
+    for 1 GHz, 1 nF and 1 Mohm, limits atan(sqrt(phi)) = 51.83, 65.53 and 76.35 deg.
     """
     cf = factor * math.sqrt(1e-9 / (2 * math.pi * 1e6 * 1e9))
     found = loop(transimpedance(rf=1e6, cs=1e-9, cf=cf, bandwidth=1e9))
@@ -254,7 +260,7 @@ def test_rule_of_forty_five_degrees_gives_more(factor, margin):
 
 
 def test_maximally_flat_transimpedance():
-    """1.77701 pF makes a 10 MHz, 100 kohm, 10 pF stage maximally flat at 1.1625 MHz, with a margin of 66.76 deg.
+    """1.77701 pF makes a 10 MHz, 100 kohm, 10 pF stage flat to 1.1625 MHz, with a margin of 66.76 deg.
 
     jensign.com, "Transimpedance f3db and Cf design curves" (2012); example computed from its formula.
     """
@@ -282,7 +288,7 @@ def test_feedback_holds_the_gain(share, output):
 
 
 def biased_stage(load=None):
-    """The collector-to-base biased stage, its transconductance of 40 mS as a gain of 40 behind the 1 kohm of RD."""
+    """The biased stage, its transconductance of 40 mS as a gain of 40 behind the 1 kohm of RD."""
     parts = {
         "RPI": resistor("IN", "GND", 2.5e3),
         "RF": resistor("IN", "OUT", 10e3),
@@ -296,8 +302,8 @@ def biased_stage(load=None):
 def test_return_ratio_of_a_collector_to_base_biased_stage():
     """Return ratio 2.439, transresistance -7074.5 ohm and output resistance 265.96 ohm of the biased stage.
 
-    Gray-Meyer, "return ratio" article (formulas from memory), with gm 40 mS, r_pi 2.5 kohm, RF 10 kohm, RD 1 kohm,
-    RS 1 kohm: T = gm RD/(1 + (RF+RD)/(r_pi||RS)); the output resistance by Blackman's formula.
+    Gray-Meyer, "return ratio" article (formulas from memory), with gm 40 mS, r_pi 2.5 kohm, RF 10 kohm, RD
+    1 kohm, RS 1 kohm: T = gm RD/(1 + (RF+RD)/(r_pi||RS)); the output resistance by Blackman's formula.
     """
     free, loaded = biased_stage(), biased_stage(load=1e3)
     assert loop(free)["dc_return_ratio"] == pytest.approx(2.4390244, rel=1e-6)
@@ -320,7 +326,8 @@ def test_return_ratio_of_a_collector_to_base_biased_stage():
 def test_bandwidth_of_a_log_stage_follows_its_current(current, capacitance, frequency):
     """The slowest pole of a log stage is ``I/(2 pi V_T C)``.
 
-    LOG100 data sheet p. 7 and LOG104 p. 6 (capacitors seen, frequencies computed); ADL5303 overview (2 kHz at 1 nA).
+    LOG100 data sheet p. 7 and LOG104 p. 6 (capacitors seen, frequencies computed); ADL5303 overview (2 kHz
+    at 1 nA).
     """
     parts = {
         "Q1": transistor("IN", "GND", "OUT"),

@@ -1,0 +1,134 @@
+"""Applying remedies to the text of a design, one at a time, reviewed again after each."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+from rulecheck.errors import CommandError
+from rulecheck.findings import Finding, Remedy
+from rulecheck.review.remedies import edited
+from rulecheck.review.runner import DesignReview, Options
+from rulecheck.review.words import did_you_mean
+
+if TYPE_CHECKING:
+    from rulecheck.design.model import Design
+    from rulecheck.review.registry import Registry
+
+#: A remedy that is proven again and again without end would be a rule's fault; this ends it.
+MOST_ROUNDS = 200
+
+
+@dataclass(frozen=True, slots=True)
+class Step:
+    """One remedy applied for one finding."""
+
+    finding: Finding
+    remedy: Remedy
+
+
+@dataclass(frozen=True, slots=True)
+class Fixed:
+    """What came of applying remedies: the steps, and the review of the design after them."""
+
+    steps: tuple[Step, ...]
+    review: DesignReview
+
+    @property
+    def text(self) -> str:
+        """Text of the design with all remedies applied."""
+        return self.review.design.text
+
+
+def choose(review: DesignReview, selector: str) -> Step:
+    """The remedy that ``ID`` or ``ID:REMEDY`` names; without a remedy the first proven one.
+
+    Parameters
+    ----------
+    review : DesignReview
+    selector : str
+
+    Raises
+    ------
+    CommandError
+        There is no such finding or remedy, or nothing that may be applied.
+    """
+    findings = {finding.id: finding for finding in review.findings}
+    rule, _, rest = selector.partition(":")
+    number, _, letter = rest.partition(":")
+    name = f"{rule}:{number}"
+    if name not in findings:
+        hint = did_you_mean(name, findings) or "'rulecheck fix FILE' lists them"
+        raise CommandError(f"there is no finding {selector!r}", hint)
+    finding = findings[name]
+    remedies = {remedy.id: remedy for remedy in finding.remedies}
+    if not letter:
+        proven = [remedy for remedy in finding.remedies if review.trials.proven(finding, remedy)]
+        if not proven:
+            raise CommandError(f"no remedy of {name} is proven", f"name one to apply it nevertheless: {name}:a")
+        return Step(finding, proven[0])
+    if letter not in remedies:
+        raise CommandError(f"{name} has no remedy {letter!r}", f"it has {', '.join(remedies) or 'none'}")
+    if not remedies[letter].edits:
+        raise CommandError(f"remedy {letter} of {name} is not one that an edit can make", remedies[letter].title)
+    return Step(finding, remedies[letter])
+
+
+def apply(review: DesignReview, step: Step, registry: Registry, options: Options) -> Fixed:
+    """Apply one remedy and review the design again.
+
+    Parameters
+    ----------
+    review : DesignReview
+        Of the design as it is.
+    step : Step
+    registry : Registry
+    options : Options
+
+    Raises
+    ------
+    RulecheckError
+        The edits do not fit, or what they make is no design.
+    """
+    return Fixed((step,), _reviewed_again(review, step, registry, options, {}))
+
+
+def apply_all_proven(design: Design, registry: Registry, options: Options) -> Fixed:
+    """Apply one proven remedy after another until none is left; findings with a concession are let be.
+
+    Parameters
+    ----------
+    design : Design
+    registry : Registry
+    options : Options
+    """
+    cache: dict[Any, Any] = {}
+    review = DesignReview(design, registry, options, cache)
+    steps: list[Step] = []
+    seen = {design.text}
+    while len(steps) < MOST_ROUNDS:
+        step = next(_proven(review, seen), None)
+        if step is None:
+            break
+        review = _reviewed_again(review, step, registry, options, cache)
+        seen.add(review.design.text)
+        steps.append(step)
+    return Fixed(tuple(steps), review)
+
+
+def _proven(review: DesignReview, seen: set[str]) -> Iterator[Step]:
+    """Proven remedies that lead to a text not met before, so that two rules cannot undo each other for ever."""
+    for finding in review.findings:
+        for remedy in finding.remedies if finding.concession is None else ():
+            if review.trials.proven(finding, remedy) and edited(review.design.text, remedy) not in seen:
+                yield Step(finding, remedy)
+
+
+def _reviewed_again(
+    review: DesignReview, step: Step, registry: Registry, options: Options, cache: dict[Any, Any]
+) -> DesignReview:
+    from rulecheck.design.load import load_text
+
+    text = edited(review.design.text, step.remedy)
+    return DesignReview(load_text(text, review.design.path), registry, options, cache)

@@ -1,0 +1,127 @@
+"""Remedies of loops: compensation capacitors computed together, with an emitter resistor where they need one."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from rulecheck.api import (
+    BOLTZMANN,
+    ELEMENTARY_CHARGE,
+    Add,
+    Edit,
+    Move,
+    Remedy,
+    Review,
+    Set,
+    format_quantity,
+    join_key,
+    nearest,
+)
+
+from ._edits import next_reference
+
+EMITTER_DROP = 1.0
+"""Volts across an emitter resistor at the greatest signal current: little of the swing, much of the loop gain."""
+
+
+def remedies(review: Review, amplifiers: list[str], damping: float, margin: float) -> list[Remedy]:
+    """Ways to calm the loops of `amplifiers`: capacitors alone, else emitter resistors with capacitors.
+
+    Parameters
+    ----------
+    review : Review
+    amplifiers : list of str
+        Loops to compensate together.
+    damping, margin : float
+        Least damping ratio and phase margin [deg] to reach at every review condition.
+
+    Returns
+    -------
+    list of Remedy
+    """
+    found = review.required_capacitors(amplifiers, damping, margin)
+    if found is not None:
+        return [Remedy(_title(review, found.capacitors), _capacitor_edits(review, found.capacitors))]
+    resistors = _emitter_resistors(review, amplifiers)
+    if resistors:
+        calmer = review.edited(resistors)
+        found = calmer.required_capacitors(amplifiers, damping, margin)
+        if found is not None:
+            title = "put an emitter resistor into the loop, and " + _title(calmer, found.capacitors)
+            return [Remedy(title, [*resistors, *_capacitor_edits(calmer, found.capacitors)])]
+    return [Remedy("no capacitor from 1 pF to 100 nF meets the limits: lower the loop gain, or take an amplifier "
+                   "with a lower gain-bandwidth or a higher second pole")]  # fmt: skip
+
+
+def _capacitor_edits(review: Review, capacitors: dict[str, float]) -> list[Edit]:
+    """Set the capacitor of each loop where it has one, else add it."""
+    edits: list[Edit] = []
+    taken: list[str] = []
+    for amplifier, farad in capacitors.items():
+        pins = review.design.parts[amplifier].pins
+        present = _between(review, pins["OUT"], pins["IN-"])
+        value = format_quantity(farad, "F", 3)
+        if present:
+            edits.append(Set(join_key(("parts", present[0], "value")), value))
+            continue
+        name = next_reference(review.design, "C", taken)
+        taken.append(name)
+        table = {"kind": "capacitor", "value": value, "tolerance": "5 %", "pins": [pins["IN-"], pins["OUT"]]}
+        edits.append(Add(join_key(("parts", name)), table))
+    return edits
+
+
+def _between(review: Review, a: str, b: str) -> list[str]:
+    return [r for r, p in review.design.parts.items() if p.kind == "capacitor" and set(p.pins.values()) == {a, b}]
+
+
+def _title(review: Review, capacitors: dict[str, float]) -> str:
+    words = []
+    for amplifier, farad in capacitors.items():
+        bandwidth = _least_bandwidth(review, amplifier, farad)
+        left = f" (leaves {format_quantity(bandwidth, 'Hz', 3)})" if np.isfinite(bandwidth) else ""
+        words.append(f"{format_quantity(farad, 'F', 3)} from OUT to IN- of {amplifier}{left}")
+    return "compensate with " + ", ".join(words)
+
+
+def _least_bandwidth(review: Review, amplifier: str, farad: float) -> float:
+    """Bandwidth ``I/(2π·V_T·C)`` at the least current of the loop's log transistors [Hz]."""
+    points = review.operating_points
+    least = np.inf
+    for log in review.structure.log_transistors:
+        if log.amplifier == amplifier and review.design.parts[log.part].kind in ("npn", "pnp"):
+            current = np.abs(points.current(log.part, "C"))
+            slope = BOLTZMANN / ELEMENTARY_CHARGE * points.temperature(log.part)
+            least = min(least, float(np.nanmin(current / slope)))
+    return least / (2 * np.pi * farad) if np.isfinite(least) else np.nan
+
+
+def _emitter_resistors(review: Review, amplifiers: list[str]) -> list[Edit]:
+    """Edits that put a resistor between an amplifier's output and the emitter it drives directly."""
+    design, points = review.design, review.operating_points
+    edits: list[Edit] = []
+    taken: list[str] = []
+    nets = set(design.nets)
+    for log in review.structure.log_transistors:
+        part = design.parts[log.part]
+        if log.amplifier not in amplifiers or part.kind not in ("npn", "pnp"):
+            continue
+        output = design.parts[log.amplifier].pins["OUT"]
+        if part.pins["E"] != output:
+            continue
+        most = float(np.nanmax(np.abs(points.current(log.part, "C"))))
+        value = nearest(EMITTER_DROP / most, "E24") if most > 0 else 10e3
+        driven = f"{output}_{log.amplifier}"
+        while driven in nets:
+            driven += "_"
+        nets.add(driven)
+        name = next_reference(design, "R", taken)
+        taken.append(name)
+        edits.append(Move(join_key(("parts", log.amplifier, "pins", "OUT")), driven))
+        for ref in _between(review, output, design.parts[log.amplifier].pins["IN-"]):
+            pin = next(p for p, n in design.parts[ref].pins.items() if n == output)
+            edits.append(Move(join_key(("parts", ref, "pins", pin)), driven))
+        table = {"kind": "resistor", "value": format_quantity(value, "ohm", 3), "tolerance": "1 %",
+                 "pins": [driven, output]}  # fmt: skip
+        edits.append(Add(join_key(("parts", name)), table))
+    return edits

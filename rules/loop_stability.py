@@ -1,0 +1,122 @@
+"""Loops that oscillate or ring.
+
+Natural frequencies decide: margins of single amplifiers can all be comfortable while two loops that
+share a node ring together. Margins say which amplifier and how far.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator
+from typing import Annotated
+
+import numpy as np
+
+from rulecheck.api import BaseModel, Evidence, Finding, Review, Rule, Severity, Unit, format_quantity
+
+from ._compensation import remedies
+from ._words import figures
+
+
+class LoopStability(Rule):
+    """Natural frequencies in the right half-plane, or with little damping; amplifiers with little margin.
+
+    The gain around a log loop moves over decades with the signal current, so a loop that is calm at one
+    current may ring at another: every review condition is judged at which no amplifier is saturated.
+    One finding names all amplifiers whose loops take part in the critical mode; they are cured together.
+    """
+
+    name = "loop-stability"
+    title = "Loop that oscillates or rings"
+    source = "Nyquist and natural frequencies, textbook theory; limits: common practice, no source"
+    default_severity = Severity.MINOR
+    needs = ("operating_points", "loops")
+
+    class Settings(BaseModel):
+        """Limits."""
+
+        damping: float = 0.3
+        serious_damping: float = 0.15
+        phase_margin: Annotated[float, Unit("deg")] = 45.0
+
+    def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
+        """Judge the modes first, then the margins of amplifiers that no ringing mode explains."""
+        loops = review.loops
+        amplifiers = loops.points.network.amplifiers
+        signs = [loops.dc_return_ratio(a) for a in amplifiers]
+        negative = np.all([~(t < 0) for t in signs], axis=0) if signs else np.zeros(0, bool)
+        judged = loops.judged & negative
+        if not amplifiers or not judged.any():
+            return
+        ringing = judged & ((loops.least_damping < settings.damping) | (loops.rightmost > 0))
+        named: set[str] = set()
+        for group in _groups(loops.participation, ringing):
+            parts = [amplifiers[i] for i in group]
+            named.update(parts)
+            taking_part = ringing & loops.participation[:, group].any(axis=1)
+            yield self._ringing(review, settings, parts, np.where(taking_part, loops.least_damping, np.nan))
+        for amplifier in amplifiers:
+            margin = np.where(judged, loops.phase_margin(amplifier), np.nan)
+            if amplifier not in named and np.isfinite(margin).any() and np.nanmin(margin) < settings.phase_margin:
+                yield self._thin(review, settings, amplifier, margin)
+
+    def _ringing(self, review: Review, settings: Settings, parts: list[str], damping: np.ndarray) -> Finding:
+        loops = review.loops
+        unstable = np.isfinite(damping) & (loops.rightmost > 0)
+        worst = loops.points.least(np.where(unstable, -loops.rightmost, damping) if unstable.any() else damping)
+        ratio, frequency = (
+            float(loops.least_damping[worst.index]),
+            float(loops.damping_frequency[worst.index]),
+        )
+        at = f" near {format_quantity(frequency, 'Hz', 3)}" if np.isfinite(frequency) else ""
+        who = ", ".join(parts)
+        evidence = [
+            Evidence("damping ratio", ratio, "1", settings.damping, ">=", over=loops.least_damping),
+            Evidence("rightmost natural frequency", float(loops.rightmost[worst.index]), "1/s", 0.0, "<",
+                     over=loops.rightmost),
+            *(Evidence(f"phase margin of {a}", float(loops.phase_margin(a)[worst.index]), "deg",
+                       settings.phase_margin, ">=", over=loops.phase_margin(a)) for a in parts),
+        ]  # fmt: skip
+        if unstable.any():
+            message, consequence = (
+                f"{who}: unstable{at}",
+                "the circuit oscillates or latches instead of computing",
+            )
+        else:
+            message = f"{who}: damping ratio {ratio:.2f}{at}, limit {settings.damping:g}"
+            overshoot = 100 * np.exp(-np.pi * ratio / np.sqrt(max(1 - ratio**2, 1e-9)))
+            consequence = f"a step rings with about {overshoot:.0f} % overshoot"
+        serious = bool(unstable.any()) or ratio < settings.serious_damping
+        return Finding(
+            message, parts=parts, severity=Severity.MAJOR if serious else Severity.MINOR, consequence=consequence,
+            conditions=worst.conditions, evidence=figures(evidence),
+            remedies=remedies(review, parts, settings.damping, settings.phase_margin), at=f"parts.{parts[0]}",
+        )  # fmt: skip
+
+    def _thin(self, review: Review, settings: Settings, amplifier: str, margin: np.ndarray) -> Finding:
+        worst = review.loops.points.least(margin)
+        crossover = float(review.loops.crossover(amplifier)[worst.index])
+        return Finding(
+            f"{amplifier}: phase margin {worst.value:.1f}° at {format_quantity(crossover, 'Hz', 3)}, "
+            f"limit {settings.phase_margin:g}°",
+            parts=[amplifier], severity=Severity.MINOR, conditions=worst.conditions,
+            consequence="strays and spread of the parts may make the loop ring",
+            evidence=figures([
+                Evidence("phase margin", worst.value, "deg", settings.phase_margin, ">=", over=margin),
+                Evidence("modulus margin", float(review.loops.modulus_margin(amplifier)[worst.index]), "1"),
+            ]),
+            remedies=remedies(review, [amplifier], settings.damping, settings.phase_margin),
+        )  # fmt: skip
+
+
+def _groups(participation: np.ndarray, chosen: np.ndarray) -> Iterator[list[int]]:
+    """Amplifiers that take part together at any chosen condition, as connected groups."""
+    shared = participation[chosen].astype(int)
+    linked = shared.T @ shared > 0
+    left = set(np.flatnonzero(np.diag(linked)))
+    while left:
+        group, front = set(), {min(left)}
+        while front:
+            group |= front
+            front = {int(j) for i in front for j in np.flatnonzero(linked[i])} - group
+        left -= group
+        yield sorted(group)

@@ -1,0 +1,166 @@
+"""The computed transfer against the law of the requirement."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from typing import Annotated
+
+import numpy as np
+
+from rulecheck.api import (
+    BaseModel,
+    Dimension,
+    Evidence,
+    Finding,
+    LawError,
+    Remedy,
+    Requirement,
+    Review,
+    Rule,
+    Set,
+    Severity,
+    Transfer,
+    Unit,
+    dimension_of,
+    format_quantity,
+    join_key,
+    nearest,
+)
+
+RESISTOR_SERIES = "E96"
+TRIAL_CHANGE = 0.01
+MOST_REMEDIES = 2
+
+
+class TransferLaw(Rule):
+    """The output against the law it is asked to follow, in units, over range and temperature.
+
+    Dimensions first: a law that is not in the unit of the output means nothing. Then the nominal error at every
+    condition of the requirement, the local exponent where the law is a power, and the travel of trims.
+    """
+
+    name = "transfer-law"
+    title = "Output that does not follow its law"
+    source = "limits: the requirement's own accuracy; exponent: common practice, no source"
+    default_severity = Severity.MAJOR
+    needs = ("operating_points",)
+
+    class Settings(BaseModel):
+        """Limits."""
+
+        exponent: Annotated[float, Unit("%")] = 0.005
+        above_absolute: float = 10.0
+
+    def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
+        """Judge every requirement with a law; an error in dimensions stands alone."""
+        for requirement in review.design.requirements.values():
+            if requirement.law is None:
+                continue
+            fault = _dimensions(review, requirement)
+            if fault is not None:
+                yield fault
+                continue
+            transfer = review.transfer[requirement.name]
+            if not requirement.has_accuracy or not transfer.judged.any():
+                continue
+            found = list(_nominal(review, transfer)) or list(_exponents(review, settings, transfer))
+            yield from found
+
+
+def _dimensions(review: Review, requirement: Requirement) -> Finding | None:
+    law = requirement.law
+    assert law is not None
+    try:
+        law.check(dimension_of("V"), _names(review, requirement), requirement.constants)
+    except LawError as error:
+        key = join_key(("requirements", requirement.name, "law"))
+        return Finding(
+            f"requirement {requirement.name}: {error.message}", nets=[requirement.output], subject=requirement.name,
+            consequence="the requirement cannot be met or missed: it compares unlike quantities", at=key,
+            remedies=[Remedy(error.hint or "give the scale that is missing as a constant with its unit")],
+        )  # fmt: skip
+    return None
+
+
+def _names(review: Review, requirement: Requirement) -> dict[str, Dimension]:
+    """Dimension of each name that a law may use."""
+    design = review.design
+    names = {name: dimension_of(source.unit) for name, source in design.inputs.items()}
+    names |= {n: dimension_of("V") for n, net in design.nets.items() if net.role in ("reference", "supply")}
+    names |= {r: dimension_of("1") for r, p in design.parts.items() if p.kind == "potentiometer"}
+    return names | {"ambient": dimension_of("K")} | dict(requirement.constant_dimensions)
+
+
+def _nominal(review: Review, transfer: Transfer) -> Iterable[Finding]:
+    requirement, points = transfer.requirement, review.operating_points
+    allowed = np.where(transfer.judged, transfer.allowed, np.nan)
+    with np.errstate(all="ignore"):
+        ratio = np.abs(transfer.error) / allowed
+    if not np.isfinite(ratio).any():
+        return
+    worst = points.worst(ratio)
+    if worst.value <= 1:
+        return
+    at = worst.index
+    error, limit, law = transfer.error[at], allowed[at], transfer.law[at]
+    part = f" ({abs(error / law) * 100:.2g} % of reading)" if law else ""
+    yield Finding(
+        f"requirement {requirement.name}: {requirement.output} is off its law by {format_quantity(error, 'V', 3)}"
+        f"{part}, allowed {format_quantity(limit, 'V', 3)}",
+        nets=[requirement.output], subject=requirement.name, conditions=worst.conditions,
+        consequence=f"{requirement.output} reads {format_quantity(transfer.output[at], 'V')} instead of "
+                    f"{format_quantity(law, 'V')}",
+        evidence=[Evidence("nominal error", float(abs(error)), "V", float(limit), "<=", over=np.abs(transfer.error))],
+        remedies=list(_scalings(review, transfer)), at=join_key(("requirements", requirement.name)),
+    )  # fmt: skip
+
+
+def _exponents(review: Review, settings: TransferLaw.Settings, transfer: Transfer) -> Iterable[Finding]:
+    requirement, points = transfer.requirement, review.operating_points
+    large = transfer.judged & (np.abs(transfer.law) > settings.above_absolute * requirement.absolute)
+    for name, exponent in transfer.exponent.items():
+        asked = np.where(large, transfer.law_exponent[name], np.nan)
+        if not np.isfinite(asked).any() or np.nanmax(asked) - np.nanmin(asked) > 1e-6:
+            continue  # the law is no power of this input
+        power = float(np.nanmedian(asked))
+        if abs(power) < 1e-6:
+            continue
+        off = np.abs(np.where(large, exponent, np.nan) / power - 1)
+        if not np.isfinite(off).any() or np.nanmax(off) <= settings.exponent:
+            continue
+        worst = points.worst(off)
+        yield Finding(
+            f"requirement {requirement.name}: local exponent in {name} is {exponent[worst.index]:.4f}, "
+            f"the law asks {power:.4g} (off by {worst.value * 100:.2g} %, limit {settings.exponent * 100:.2g} %)",
+            nets=[requirement.output], subject=f"{requirement.name} exponent {name}", severity=Severity.MINOR,
+            conditions=worst.conditions, consequence=f"{requirement.output} bends away from its law with {name}",
+            evidence=[Evidence("exponent error", worst.value, "1", settings.exponent, "<=", over=off)],
+            remedies=list(_scalings(review, transfer)), at=join_key(("requirements", requirement.name)),
+        )  # fmt: skip
+
+
+def _scalings(review: Review, transfer: Transfer) -> Iterable[Remedy]:
+    """Resistors whose change, by trial, takes most of the error away, with the nearest preferred value."""
+    weight = np.where(transfer.judged & (transfer.allowed > 0), 1 / transfer.allowed, 0.0)
+    error = np.where(weight > 0, transfer.error, 0.0) * weight
+    options = []
+    for ref, part in review.design.parts.items():
+        if part.kind != "resistor" or part.value.typ <= 0:
+            continue
+        moved = review.re_solve(values={(ref, "value"): part.value.typ * (1 + TRIAL_CHANGE)})
+        effect = (moved.voltage(transfer.requirement.output) - transfer.output) / TRIAL_CHANGE
+        effect = np.where(weight > 0, np.nan_to_num(effect), 0.0) * weight
+        size = float(effect @ effect)
+        change = -float(effect @ error) / size if size > 0 else 0.0
+        if abs(change) < 1e-4:
+            continue
+        left = float(np.abs(error + effect * change).max())
+        factor = 1 + change if change > 0 else 1 / (1 - change)
+        options.append((left, ref, nearest(part.value.typ * factor, RESISTOR_SERIES)))
+    before = float(np.abs(error).max())
+    helpful = sorted(o for o in options if o[0] < 0.9 * before)[:MOST_REMEDIES]
+    for _, ref, value in helpful:
+        words = format_quantity(value, "ohm")
+        yield Remedy(f"change {ref} to {words}", [Set(join_key(("parts", ref, "value")), words)])
+    if not helpful:
+        yield Remedy("no single resistor takes the error away: look at currents, temperatures and loops first")
