@@ -33,9 +33,9 @@ from rulecheck.units import Unit as _Unit
 
 if TYPE_CHECKING:
     from rulecheck.analysis.conditions import Conditions
+    from rulecheck.analysis.loops import IslandLoops, Loops
     from rulecheck.analysis.operating_points import OperatingPoints, Worst
-    from rulecheck.analysis.review import Review
-    from rulecheck.analysis.stability import Loops
+    from rulecheck.analysis.review import Cost, Review
     from rulecheck.analysis.transfer import Transfer
     from rulecheck.circuit.islands import Island, equal_islands, islands
     from rulecheck.circuit.structure import (
@@ -57,8 +57,8 @@ _LAZY = {
     for module, names in {
         "rulecheck.analysis.conditions": ("Conditions",),
         "rulecheck.analysis.operating_points": ("OperatingPoints", "Worst"),
-        "rulecheck.analysis.review": ("Review",),
-        "rulecheck.analysis.stability": ("Loops",),
+        "rulecheck.analysis.loops": ("IslandLoops", "Loops"),
+        "rulecheck.analysis.review": ("Cost", "Review"),
         "rulecheck.analysis.transfer": ("Transfer",),
         "rulecheck.circuit.islands": ("Island", "equal_islands", "islands"),
         "rulecheck.circuit.structure": (
@@ -83,6 +83,7 @@ __all__ = [
     "BaseModel",
     "Concession",
     "Conditions",
+    "Cost",
     "Design",
     "Dimension",
     "Edit",
@@ -92,6 +93,7 @@ __all__ = [
     "Finding",
     "Input",
     "Island",
+    "IslandLoops",
     "Junction",
     "JunctionLoop",
     "Law",

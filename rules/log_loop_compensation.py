@@ -39,15 +39,19 @@ class LogLoopCompensation(Rule):
     def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
         """Judge every amplifier with a junction in its feedback and no capacitor across it."""
         loops = review.loops
-        if np.any(loops.least_damping[loops.judged] < settings.damping):
-            return  # the loop rings as it is: that is the finding of loop-stability
-        spread = {factor: review.loops_with(_scaled(review, factor)) for factor in (0.5, 2.0)} if _bare(review) else {}
-        for amplifier in _bare(review):
+        bare = [a for a in _bare(review) if not self._rings(review, settings, a)]
+        spread = {factor: review.loops_with(_scaled(review, factor)) for factor in (0.5, 2.0)} if bare else {}
+        for amplifier in bare:
             margin = loops.phase_margin(amplifier)
-            if np.isfinite(margin).any() and np.nanmin(margin) < settings.phase_margin:
-                continue
-            moved = {f: s.phase_margin(amplifier) for f, s in spread.items()}
-            yield from self._judge(review, settings, amplifier, margin, moved)
+            if not (np.isfinite(margin).any() and np.nanmin(margin) < settings.phase_margin):
+                moved = {f: s.phase_margin(amplifier) for f, s in spread.items()}
+                yield from self._judge(review, settings, amplifier, margin, moved)
+
+    @staticmethod
+    def _rings(review: Review, settings: Settings, amplifier: str) -> bool:
+        """Whether its island rings as it is, which is the finding of loop-stability."""
+        island = review.loops.island_of(amplifier)
+        return bool(np.any(island.least_damping[island.judged] < settings.damping))
 
     def _judge(
         self,

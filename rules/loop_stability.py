@@ -11,7 +11,7 @@ from typing import Annotated
 
 import numpy as np
 
-from rulecheck.api import BaseModel, Evidence, Finding, Review, Rule, Severity, Unit, format_quantity
+from rulecheck.api import BaseModel, Evidence, Finding, IslandLoops, Review, Rule, Severity, Unit, format_quantity
 
 from ._compensation import remedies
 from ._words import figures
@@ -40,39 +40,42 @@ class LoopStability(Rule):
 
     def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
         """Judge the modes first, then the margins of amplifiers that no ringing mode explains."""
-        loops = review.loops
-        amplifiers = loops.points.network.amplifiers
-        signs = [loops.dc_return_ratio(a) for a in amplifiers]
-        negative = np.all([~(t < 0) for t in signs], axis=0) if signs else np.zeros(0, bool)
-        judged = loops.judged & negative
-        if not amplifiers or not judged.any():
-            return
-        ringing = judged & ((loops.least_damping < settings.damping) | (loops.rightmost > 0))
+        for island in review.loops.islands:
+            signs = [island.margins(a).dc_return_ratio for a in island.amplifiers]
+            # where feedback is positive at DC, that is the fault to mend first
+            judged = island.judged & np.all([~(t < 0) for t in signs], axis=0) if signs else np.zeros(0, bool)
+            if judged.any():
+                yield from self._island(review, settings, island, judged)
+
+    def _island(
+        self, review: Review, settings: Settings, island: IslandLoops, judged: np.ndarray
+    ) -> Iterable[Finding]:
+        ringing = judged & ((island.least_damping < settings.damping) | (island.rightmost > 0))
         named: set[str] = set()
-        for group in _groups(loops.participation, ringing):
-            parts = [amplifiers[i] for i in group]
+        for group in _groups(island.participation, ringing):
+            parts = [island.amplifiers[i] for i in group]
             named.update(parts)
-            taking_part = ringing & loops.participation[:, group].any(axis=1)
-            yield self._ringing(review, settings, parts, np.where(taking_part, loops.least_damping, np.nan))
-        for amplifier in amplifiers:
-            margin = np.where(judged, loops.phase_margin(amplifier), np.nan)
+            taking_part = ringing & island.participation[:, group].any(axis=1)
+            yield self._ringing(review, settings, island, parts, taking_part)
+        for amplifier in island.amplifiers:
+            margin = np.where(judged, review.loops.phase_margin(amplifier), np.nan)
             if amplifier not in named and np.isfinite(margin).any() and np.nanmin(margin) < settings.phase_margin:
                 yield self._thin(review, settings, amplifier, margin)
 
-    def _ringing(self, review: Review, settings: Settings, parts: list[str], damping: np.ndarray) -> Finding:
+    def _ringing(
+        self, review: Review, settings: Settings, island: IslandLoops, parts: list[str], ringing: np.ndarray
+    ) -> Finding:
         loops = review.loops
-        unstable = np.isfinite(damping) & (loops.rightmost > 0)
-        worst = loops.points.least(np.where(unstable, -loops.rightmost, damping) if unstable.any() else damping)
-        ratio, frequency = (
-            float(loops.least_damping[worst.index]),
-            float(loops.damping_frequency[worst.index]),
-        )
+        damping = np.where(ringing, island.least_damping, np.nan)
+        unstable = ringing & (island.rightmost > 0)
+        worst = loops.points.least(np.where(unstable, -island.rightmost, np.nan) if unstable.any() else damping)
+        ratio, frequency = float(island.least_damping[worst.index]), float(island.damping_frequency[worst.index])
         at = f" near {format_quantity(frequency, 'Hz', 3)}" if np.isfinite(frequency) else ""
         who = ", ".join(parts)
         evidence = [
-            Evidence("damping ratio", ratio, "1", settings.damping, ">=", over=loops.least_damping),
-            Evidence("rightmost natural frequency", float(loops.rightmost[worst.index]), "1/s", 0.0, "<",
-                     over=loops.rightmost),
+            Evidence("damping ratio", ratio, "1", settings.damping, ">=", over=island.least_damping),
+            Evidence("rightmost natural frequency", float(island.rightmost[worst.index]), "1/s", 0.0, "<",
+                     over=island.rightmost),
             *(Evidence(f"phase margin of {a}", float(loops.phase_margin(a)[worst.index]), "deg",
                        settings.phase_margin, ">=", over=loops.phase_margin(a)) for a in parts),
         ]  # fmt: skip

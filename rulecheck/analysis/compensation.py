@@ -19,8 +19,8 @@ from ..series import decade_values
 from .stability import analyse_loops, damping_of, judged_conditions, mode_frequencies
 
 if TYPE_CHECKING:
-    from .operating_points import OperatingPoints
     from .small_signal import SmallSignal
+    from .solution import Solution
 
 LEAST, MOST = 1e-12, 100e-9
 """Span of the search [F]."""
@@ -49,7 +49,7 @@ class Compensation:
 
 
 def required_capacitors(
-    points: OperatingPoints, system: SmallSignal, amplifiers: Sequence[str], damping: float, margin: float
+    points: Solution, system: SmallSignal, amplifiers: Sequence[str], damping: float, margin: float
 ) -> Compensation | None:
     """Least E12 capacitors, one an amplifier, that meet the limits at every condition where it is linear.
 
@@ -57,7 +57,7 @@ def required_capacitors(
 
     Parameters
     ----------
-    points : OperatingPoints
+    points : Solution
     system : SmallSignal
         Linearised at `points`.
     amplifiers : sequence of str
@@ -85,7 +85,7 @@ def required_capacitors(
 class _Search:
     def __init__(
         self,
-        points: OperatingPoints,
+        points: Solution,
         system: SmallSignal,
         amplifiers: tuple[str, ...],
         damping: float,
@@ -155,7 +155,7 @@ class _Search:
         damping = float(loops.least_damping[self.judged].min())
         if damping < self.damping or loops.rightmost[self.judged].max() >= 0:
             return None
-        margins = [loops.phase_margin(a)[self.judged] for a in self.amplifiers]
+        margins = [loops.margins(a).phase_margin[self.judged] for a in self.amplifiers]
         least = min((float(np.nanmin(m)) for m in margins if np.isfinite(m).any()), default=np.inf)
         if least < self.margin:
             return None
@@ -176,7 +176,7 @@ class _Search:
         return found
 
 
-def _stamp(points: OperatingPoints, amplifier: str, size: int) -> Array:
+def _stamp(points: Solution, amplifier: str, size: int) -> Array:
     """Matrix of one farad from an amplifier's output to its inverting input."""
     network = points.network
     pins = network.design.parts[amplifier].pins
@@ -189,7 +189,7 @@ def _stamp(points: OperatingPoints, amplifier: str, size: int) -> Array:
     return np.outer(vector, vector)
 
 
-def present_capacitor(points: OperatingPoints, amplifier: str) -> float:
+def present_capacitor(points: Solution, amplifier: str) -> float:
     """Capacitance that already lies from an amplifier's output to its inverting input [F]."""
     design = points.network.design
     ends = {design.parts[amplifier].pins["OUT"], design.parts[amplifier].pins["IN-"]}

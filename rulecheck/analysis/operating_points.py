@@ -1,29 +1,20 @@
-"""Operating points of a batch of conditions, with self-heating."""
+"""Operating points of a whole design at a batch of conditions."""
 
 from __future__ import annotations
 
-import hashlib
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from ..devices.constants import AnyArray, Array, BoolArray
 from ..errors import AnalysisError
-from .equations import Currents, Equations
-from .network import Network, build_network
-from .newton import State, solve
-from .thermal import build_thermal
-from .values import Overrides, Parameters, Values, compute_values
 
 if TYPE_CHECKING:
     from ..design.model import Design
     from .conditions import Conditions
-
-TEMPERATURE_STEP = 1e-7  # K: far inside 1 mK, so that voltages keep 1e-6 of reading
-THERMAL_ROUNDS = 60
-LEAST_TEMPERATURE, MOST_TEMPERATURE = 1.0, 2000.0  # K
+    from .islands import Placed
 
 
 @dataclass(frozen=True)
@@ -40,86 +31,83 @@ class OperatingPoints:
 
     Attributes
     ----------
+    design : Design
     conditions : Conditions
     converged : ndarray of bool, shape (conditions,)
+        Whether the whole circuit has a solution.
+    placed : tuple of Placed
+        The solved pieces.
     """
 
-    def __init__(
-        self, network: Network, equations: Equations, conditions: Conditions, values: Values, state: State,
-        temperatures: dict[str, Array], parameters: Parameters,
-    ) -> None:  # fmt: skip
-        self.network = network
-        self.equations = equations
+    def __init__(self, design: Design, conditions: Conditions, placed: tuple[Placed, ...]) -> None:
+        self.design = design
         self.conditions = conditions
-        self.values = values
-        self.state_vector = state
-        self.parameters = parameters
-        self.converged: BoolArray = state.converged
-        self._temperatures = temperatures
-        self._voltages = _blank(equations.node_voltages(state.x, values), self.converged)
-        self._tangents = equations.junction_voltages(state.x, values)
-        self._currents = _currents(equations, values, state)
+        self.placed = placed
+        reached = [p.solution.converged[p.index] for p in placed]
+        self.converged: BoolArray = np.all(reached, axis=0) if reached else np.ones(conditions.size, bool)
+        self._by_part = {part: p for p in placed for part in p.parts}
+        self._by_net = {net: p for p in placed for net in p.nets}
 
     def voltage(self, net: str) -> Array:
-        """Voltage of a net (or of an internal node ``REF.pin``) [V]."""
-        return self._voltages[:, self.network.nodes[net]]
+        """Voltage of a net [V]; of one that no part touches, what its source gives."""
+        placed = self._by_net.get(net)
+        if placed is None:
+            value = self.conditions.values.get(net)
+            return np.zeros(self.conditions.size) if value is None else np.asarray(value)
+        return placed.solution.voltage(placed.nets[net])[placed.index]
 
     def temperature(self, part: str) -> Array:
         """Temperature of a part, of its junction where it has one [K]."""
-        return _blank(self._temperatures.get(part, self.conditions.values["ambient"]), self.converged)
+        return self._of(part, "temperature")
 
     def vbe(self, part: str) -> Array:
         """Base-emitter voltage between terminals, signed [V]."""
-        pins = self.network.design.parts[part].pins
-        return self.voltage(pins["B"]) - self.voltage(pins["E"])
+        return self._of(part, "vbe")
 
     def vce(self, part: str) -> Array:
         """Collector-emitter voltage between terminals, signed [V]."""
-        pins = self.network.design.parts[part].pins
-        return self.voltage(pins["C"]) - self.voltage(pins["E"])
+        return self._of(part, "vce")
 
     def state(self, amplifier: str) -> AnyArray:
         """State of an amplifier: ``linear``, ``high``, ``low`` or ``unpowered``, array of str."""
-        i = self.network.amplifiers.index(amplifier)
-        low, high, powered = self.equations.limits(self._all_voltages, self.values)
-        u = self.state_vector.x[:, self.equations.gain_rows[i]]
-        out = np.where(u > high[:, i], "high", np.where(u < low[:, i], "low", "linear"))
-        return np.where(powered[:, i], out, "unpowered")
+        return self._of(amplifier, "state")
 
     def limits(self, amplifier: str) -> tuple[Array, Array]:
         """Low and high limit of an amplifier's internal output [V]."""
-        i = self.network.amplifiers.index(amplifier)
-        low, high, _ = self.equations.limits(self._all_voltages, self.values)
-        return _blank(low[:, i], self.converged), _blank(high[:, i], self.converged)
+        placed = self._by_part[amplifier]
+        low, high = placed.solution.limits(placed.parts[amplifier])
+        return low[placed.index], high[placed.index]
 
     def linear(self, amplifier: str) -> BoolArray:
         """Whether an amplifier is inside its limits (and the point converged)."""
-        return np.asarray(self.state(amplifier) == "linear") & self.converged
+        return self._of(amplifier, "linear")
 
     def current(self, part: str, pin: str) -> Array:
         """Current into a pin of a part [A]."""
-        kind = self.network.design.parts[part].kind
-        found = _PIN_CURRENT[kind](self, part, pin)
-        return _blank(np.broadcast_to(found, self.converged.shape).copy(), self.converged)
+        placed = self._by_part[part]
+        return placed.solution.current(placed.parts[part], pin)[placed.index]
+
+    def dissipation(self, part: str) -> Array:
+        """Power turned to heat in a transistor, amplifier, diode or resistor [W]."""
+        return self._of(part, "dissipation")
 
     def clamp_currents(self) -> dict[str, Array]:
         """Currents of the input clamps and drive limits by name (``U1.IN-.hi``: from IN- to V+) [A]."""
-        return {
-            f"{ref}.{name}": _blank(self._currents.clamp[:, i], self.converged)
-            for i, (ref, name) in enumerate(e.key for e in self.network.clamps)
-        }
+        found: dict[str, Array] = {}
+        for placed in self.placed:
+            back = {solved: here for here, solved in {**placed.nets, **placed.parts}.items()}
+            for name, current in placed.solution.clamp_currents().items():
+                owner, _, rest = name.partition(".")
+                found[f"{back.get(owner, owner)}.{rest}"] = current[placed.index]
+        return found
 
     def clamp_current(self, amplifier: str, pin: str) -> Array:
         """Largest current in the clamps of one amplifier pin [A]."""
         own = [c for n, c in self.clamp_currents().items() if n.startswith(f"{amplifier}.{pin}.")]
-        return np.max(own, axis=0) if own else _blank(np.zeros(self.converged.shape), self.converged)
-
-    def dissipation(self, part: str) -> Array:
-        """Power turned to heat in a transistor, amplifier, diode or resistor [W]."""
-        return _blank(_dissipation(self.network, self._all_voltages, self._currents, self.values, part), self.converged)
+        return np.max(own, axis=0) if own else np.where(self.converged, 0.0, np.nan)
 
     def worst(self, values: Array) -> Worst:
-        """Largest of `values` over the converged conditions, and where.
+        """Largest of `values` over the conditions that have one, and where.
 
         Raises
         ------
@@ -140,219 +128,16 @@ class OperatingPoints:
 
     def failures(self) -> list[str]:
         """One line for each condition that did not converge: the point, and the net that moved last."""
-        nodes = list(self.network.nodes)
         lines = []
         for i in np.flatnonzero(~self.converged):
+            lost = next(p for p in self.placed if not p.solution.converged[p.index[i]])
+            solved = lost.solution.moved_last()[int(lost.index[i])]
+            net = next((here for here, there in lost.nets.items() if there == solved), solved)
             place = ", ".join(f"{name} = {value:.6g}" for name, value in self.conditions.at(int(i)).items())
-            lines.append(f"no operating point at {place}; net {nodes[int(self.state_vector.moved[i])]} moved last")
+            lines.append(f"no operating point at {place}; net {net} moved last")
         return lines
 
-    @property
-    def _all_voltages(self) -> Array:
-        return self.equations.node_voltages(self.state_vector.x, self.values)
-
-
-def _blank(array: Array, converged: BoolArray) -> Array:
-    mask = converged if array.ndim == 1 else converged[:, None]
-    return np.where(mask, array, np.nan)
-
-
-def _currents(equations: Equations, values: Values, state: State) -> Currents:
-    linear = equations.linear_matrix(values)
-    tangents = equations.junction_voltages(state.x, values)
-    return equations.evaluate(state.x, tangents, values, linear)[3]
-
-
-def _two_terminal(kind: str) -> Callable[[OperatingPoints, str, str], Array]:
-    def current(points: OperatingPoints, part: str, pin: str) -> Array:
-        return _along(points.network, points._currents, points.values, part, pin)
-
-    current.__name__ = kind
-    return current
-
-
-def _along(network: Network, currents: Currents, values: Values, part: str, pin: str) -> Array:
-    """Current into `pin` of a part made of two-terminal elements."""
-    node = network.nodes[network.design.parts[part].pins[pin]]
-    total = np.zeros(1)
-    groups = (
-        (network.resistors, currents.resistor), (network.branches, currents.branch),
-        (network.diodes, currents.diode), (network.sources, values.source),
-    )  # fmt: skip
-    for elements, amounts in groups:
-        for i, e in enumerate(elements):
-            if e.key[0] == part:
-                total = total + (amounts[:, i] if e.a == node else 0) - (amounts[:, i] if e.b == node else 0)
-    return total
-
-
-def _transistor_current(points: OperatingPoints, part: str, pin: str) -> Array:
-    i = points.network.transistors.index(part)
-    c, b = points._currents.collector[:, i], points._currents.base[:, i]
-    return {"C": c, "B": b, "E": -c - b}[pin]
-
-
-def _amplifier_current(points: OperatingPoints, part: str, pin: str) -> Array:
-    i = points.network.amplifiers.index(part)
-    out = points._currents.output[:, i]
-    if pin == "OUT":
-        return -out
-    keys = {e.key: j for j, e in enumerate(points.network.sources)}
-    if pin in ("IN+", "IN-"):
-        return points.values.source[:, keys[part, pin]]
-    supply = points.values.source[:, keys[part, "supply_current"]]
-    return supply + np.maximum(out, 0) if pin == "V+" else -supply + np.minimum(out, 0)
-
-
-def _no_current(points: OperatingPoints, part: str, pin: str) -> Array:
-    return np.zeros(points.converged.shape)
-
-
-_PIN_CURRENT: dict[str, Callable[[OperatingPoints, str, str], Array]] = {
-    **{k: _two_terminal(k) for k in ("resistor", "potentiometer", "diode", "photodiode", "voltage-source",
-                                     "current-source")},
-    "npn": _transistor_current, "pnp": _transistor_current, "op-amp": _amplifier_current,
-    "capacitor": _no_current, "connector": _no_current,
-}  # fmt: skip
-
-
-def _dissipation(network: Network, v: Array, currents: Currents, values: Values, part: str) -> Array:
-    design = network.design
-    kind, pins = (
-        design.parts[part].kind,
-        {p: v[:, network.nodes[n]] for p, n in design.parts[part].pins.items()},
-    )
-    if kind in ("npn", "pnp"):
-        i = network.transistors.index(part)
-        return (pins["C"] - pins["E"]) * currents.collector[:, i] + (pins["B"] - pins["E"]) * currents.base[:, i]
-    if kind == "op-amp":
-        out = currents.output[:, network.amplifiers.index(part)]
-        quiet = values.source[:, [e.key for e in network.sources].index((part, "supply_current"))]
-        sourced = np.maximum(out, 0) * (pins["V+"] - pins["OUT"])
-        sunk = np.minimum(out, 0) * (pins["V-"] - pins["OUT"])
-        return quiet * (pins["V+"] - pins["V-"]) + sourced + sunk
-    if kind in ("resistor", "diode", "potentiometer"):
-        flows = [(p, _along(network, currents, values, part, p)) for p in design.parts[part].pins]
-        total: Array = np.sum([pins[p] * current for p, current in flows], axis=0)
-        return total
-    return np.zeros(len(v))
-
-
-def solve_operating_points(
-    design: Design, conditions: Conditions, *, with_clamps: bool = False, overrides: Overrides | None = None,
-    temperatures: Mapping[str, Array] | None = None, cache: dict[Any, Any] | None = None,
-) -> OperatingPoints:  # fmt: skip
-    """Operating points with the electrical and thermal solutions brought together.
-
-    Parameters
-    ----------
-    design : Design
-    conditions : Conditions
-    with_clamps : bool
-        Fault scenarios.
-    overrides : mapping, optional
-        Parameters in place of their nominal, see `Parameters`.
-    temperatures : dict of str to ndarray, optional
-        Part temperatures imposed in place of the computed ones [K].
-    cache : dict, optional
-        Solved states by all that they depend on; looked into and added to.
-
-    Returns
-    -------
-    OperatingPoints
-    """
-    task = _Task(design, conditions, with_clamps, Parameters(design, overrides), temperatures or {})
-    memory = {} if cache is None else cache
-    key = task.key()
-    if key not in memory:
-        memory[key] = task.run()
-    state, nodes = memory[key]
-    temps = task.temperatures(nodes)
-    return OperatingPoints(task.network, task.equations, conditions, task.values(nodes), state, temps, task.parameters)
-
-
-class _Task:
-    """One batch to solve: what it depends on, and the loop between currents and temperatures."""
-
-    def __init__(
-        self, design: Design, conditions: Conditions, with_clamps: bool, parameters: Parameters,
-        imposed: Mapping[str, Array],
-    ) -> None:  # fmt: skip
-        self.network = build_network(design, with_clamps)
-        self.equations = Equations(self.network)
-        self.thermal = build_thermal(design)
-        self.conditions, self.parameters, self.imposed = conditions, parameters, imposed
-
-    @property
-    def ambient(self) -> Array:
-        return self.conditions.values["ambient"]
-
-    def temperatures(self, nodes: Array) -> dict[str, Array]:
-        """Temperatures of the parts that are not at ambient."""
-        return {ref: nodes[:, i] for ref, i in self.thermal.node.items()} | dict(self.imposed)
-
-    def values(self, nodes: Array) -> Values:
-        temps = self.temperatures(nodes)
-        return compute_values(self.network, self.conditions, lambda ref: temps.get(ref, self.ambient), self.parameters)
-
-    def unheated(self) -> Array:
-        """Temperatures of the thermal nodes without dissipation."""
-        return self.thermal.temperatures(self.ambient, np.zeros((self.conditions.size, len(self.thermal.held))))
-
-    def key(self) -> str:
-        """Digest of all that the solution depends on: topology, conditions, parameters read, thermal paths."""
-        network, thermal, design = self.network, self.thermal, self.network.design
-        self.values(self.unheated())  # reads every parameter that matters
-        lists = (network.resistors, network.branches, network.sources, network.diodes, network.clamps)
-        nets = [(n, net.role, net.tempco, net.compliance, net.source) for n, net in design.nets.items()]
-        text = repr(
-            (
-                lists,
-                network.nodes,
-                network.transistors,
-                network.amplifiers,
-                nets,
-                thermal.node,
-                sorted(thermal.heated),
-                network.with_clamps,
-            )
-        )
-        arrays = [network.terminals, network.pins, thermal.rise, thermal.from_ambient, thermal.held]
-        arrays += [*self.conditions.values.values(), *self.conditions.absent.values(), *self.imposed.values()]
-        digest = hashlib.sha256(text.encode() + repr([*self.imposed]).encode())
-        for name, value in sorted(self.parameters.read.items()):
-            digest.update(repr(name).encode() + value.tobytes())
-        for array in arrays:
-            digest.update(np.ascontiguousarray(array).tobytes())
-        return digest.hexdigest()
-
-    def run(self) -> tuple[State, Array]:
-        """Solve, heat, and solve again until no temperature moves."""
-        nodes, state = self.unheated(), None
-        change = np.zeros(self.conditions.size)
-        for _ in range(THERMAL_ROUNDS):
-            values = self.values(nodes)
-            state = solve(self.equations, values, state)
-            moved = self.heated(values, state, nodes)
-            change = np.abs(moved - nodes).max(axis=1, initial=0.0)
-            if (change[state.converged] < TEMPERATURE_STEP).all():
-                return state, nodes
-            nodes = moved
-        assert state is not None
-        state.converged = state.converged & (change < TEMPERATURE_STEP)
-        return state, nodes
-
-    def heated(self, values: Values, state: State, nodes: Array) -> Array:
-        """Temperatures of the thermal nodes for the dissipations at a state; kept where it did not converge."""
-        if not self.thermal.rise.any():
-            return nodes
-        v = self.equations.node_voltages(state.x, values)
-        currents = _currents(self.equations, values, state)
-        power = np.zeros((self.conditions.size, len(self.thermal.held)))
-        for ref, i in self.thermal.node.items():
-            if ref in self.thermal.heated:
-                power[:, i] += _dissipation(self.network, v, currents, values, ref)
-        found = self.thermal.temperatures(self.ambient, power)
-        # a runaway leaves the physical span; such a point is reported as not converged
-        plausible = (found > LEAST_TEMPERATURE) & (found < MOST_TEMPERATURE)
-        return np.where(state.converged[:, None] & plausible, found, nodes)
+    def _of(self, part: str, name: str) -> AnyArray:
+        placed = self._by_part[part]
+        found: Mapping[str, AnyArray] | AnyArray = getattr(placed.solution, name)(placed.parts[part])
+        return np.asarray(found)[placed.index]

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import hashlib
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
@@ -13,11 +12,11 @@ import numpy as np
 from ..circuit.graph import build_graph
 from ..circuit.structure import Structure, find_structure
 from ..devices.constants import Array
-from .compensation import Compensation, required_capacitors
+from .compensation import Compensation
 from .conditions import Conditions, Row, fault_scenarios, review_grid, typical_row
-from .operating_points import OperatingPoints, Worst, solve_operating_points
-from .small_signal import SmallSignal, linearise
-from .stability import Loops, analyse_loops
+from .islands import Piece, cut, solve_pieces
+from .loops import Loops
+from .operating_points import OperatingPoints, Worst
 from .transfer import EXPONENT_STEP, Transfer, compare, trim_positions
 from .values import Overrides
 
@@ -83,25 +82,13 @@ class Review:
         return self.solve(fault_scenarios(self.design, self.typical), with_clamps=True)
 
     @cached_property
-    def _system(self) -> SmallSignal:
-        return linearise(self.operating_points)
-
-    @cached_property
-    def _loops_key(self) -> str:
-        return _digest(self._system.conductance.tobytes(), self._system.capacitance.tobytes())
-
-    @cached_property
     def loops(self) -> Loops:
         """Natural frequencies and margins at all review conditions."""
-        key = ("loops", self._loops_key)
-        if key not in self._cache:
-            self._cache[key] = analyse_loops(self.operating_points, self._system)
-        loops: Loops = self._cache[key]
-        return loops
+        return Loops(self.operating_points, self._cache)
 
     def loops_with(self, values: Overrides) -> Loops:
         """Loops at the same operating points with capacitances or poles changed; see `linearise`."""
-        return analyse_loops(self.operating_points, linearise(self.operating_points, values))
+        return Loops(self.operating_points, self._cache, values)
 
     def edited(self, edits: Sequence[Edit]) -> Review:
         """The review of this design after edits of its file, in memory.
@@ -129,11 +116,18 @@ class Review:
         self, conditions: Conditions, *, with_clamps: bool = False, overrides: Overrides | None = None,
         temperatures: Mapping[str, Array] | None = None,
     ) -> OperatingPoints:  # fmt: skip
-        """Operating points of this design at any conditions; see `solve_operating_points`."""
-        return solve_operating_points(
-            self.design, conditions, with_clamps=with_clamps, overrides=overrides,
-            temperatures=dict(temperatures or {}), cache=self._cache,
-        )  # fmt: skip
+        """Operating points of this design at any conditions; see `islands.solve_pieces`."""
+        changed, imposed = dict(overrides or {}), dict(temperatures or {})
+        apart = frozenset(imposed) | {ref for ref, _ in changed}
+        pieces = self._pieces if not apart else cut(self.design, self.circuit, apart)
+        placed = solve_pieces(
+            pieces, conditions, with_clamps=with_clamps, overrides=changed, temperatures=imposed, cache=self._cache
+        )
+        return OperatingPoints(self.design, conditions, placed)
+
+    @cached_property
+    def _pieces(self) -> tuple[Piece, ...]:
+        return cut(self.design, self.circuit)
 
     def re_solve(
         self, *, values: Overrides | None = None, temperatures: Mapping[str, Array] | None = None,
@@ -237,11 +231,7 @@ class Review:
         self, amplifiers: Sequence[str], damping: float = 0.3, margin: float = 45.0
     ) -> Compensation | None:
         """Least compensation capacitors of loops searched together; see `compensation.required_capacitors`."""
-        key = ("capacitors", tuple(amplifiers), damping, margin, self._loops_key)
-        if key not in self._cache:
-            self._cache[key] = required_capacitors(self.operating_points, self._system, amplifiers, damping, margin)
-        found: Compensation | None = self._cache[key]
-        return found
+        return self.loops.required_capacitors(amplifiers, damping, margin)
 
 
 @dataclass(frozen=True)
@@ -267,7 +257,3 @@ class Cost:
     share: Array
     ratio: Array
     worst: Worst
-
-
-def _digest(*parts: bytes) -> str:
-    return hashlib.sha256(b"".join(parts)).hexdigest()

@@ -16,7 +16,7 @@ from ..devices.constants import Array, BoolArray, IntArray
 from .values import Overrides, Parameters, columns
 
 if TYPE_CHECKING:
-    from .operating_points import OperatingPoints
+    from .solution import Solution
 
 
 @dataclass(frozen=True)
@@ -43,12 +43,12 @@ class SmallSignal:
     linear: BoolArray
 
 
-def linearise(points: OperatingPoints, overrides: Overrides | None = None) -> SmallSignal:
+def linearise(points: Solution, overrides: Overrides | None = None) -> SmallSignal:
     """Linearise at all operating points; conditions that did not converge hold meaningless numbers.
 
     Parameters
     ----------
-    points : OperatingPoints
+    points : Solution
     overrides : mapping of (part reference, parameter) to float or ndarray, optional
         Capacitances, transit times and poles in place of their nominal; they move no operating point.
 
@@ -96,7 +96,7 @@ class _Stamp:
 
 
 def _amplifier_poles(
-    points: OperatingPoints, p: Parameters, g: Array, c: Array, rows: IntArray, states: IntArray, linear: BoolArray
+    points: Solution, p: Parameters, g: Array, c: Array, rows: IntArray, states: IntArray, linear: BoolArray
 ) -> None:
     count = len(g)
     for i, ref in enumerate(points.network.amplifiers):
@@ -113,7 +113,7 @@ def _amplifier_poles(
         c[:, state, row] = np.where(on, -1 / (2 * np.pi * second), 0.0)
 
 
-def _transistor_charges(points: OperatingPoints, p: Parameters, stamp: _Stamp) -> None:
+def _transistor_charges(points: Solution, p: Parameters, stamp: _Stamp) -> None:
     network = points.network
     tangents = points.equations.junction_voltages(points.state_vector.x, points.values)
     response = transistor.respond(tangents.v_be, tangents.v_bc, points.values.transistor)
@@ -124,7 +124,7 @@ def _transistor_charges(points: OperatingPoints, p: Parameters, stamp: _Stamp) -
         stamp.add(base, collector, p.of(ref, "collector_capacitance"))
 
 
-def _diode_charges(points: OperatingPoints, p: Parameters, stamp: _Stamp) -> None:
+def _diode_charges(points: Solution, p: Parameters, stamp: _Stamp) -> None:
     voltage = points.equations.junction_voltages(points.state_vector.x, points.values).diode
     _, conductance = diode.respond(voltage, points.values.diode)
     for i, element in enumerate(points.network.diodes):
@@ -133,7 +133,7 @@ def _diode_charges(points: OperatingPoints, p: Parameters, stamp: _Stamp) -> Non
         stamp.add(element.a, element.b, p.of(ref, "capacitance") + stored)
 
 
-def _capacitors(points: OperatingPoints, p: Parameters, stamp: _Stamp) -> None:
+def _capacitors(points: Solution, p: Parameters, stamp: _Stamp) -> None:
     network = points.network
     ground = next(i for n, i in network.nodes.items() if n in p.design.nets and p.design.nets[n].role == "ground")
     for ref, part in p.design.parts.items():

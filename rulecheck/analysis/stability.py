@@ -17,7 +17,7 @@ from .margins import Margins, margins
 from .small_signal import SmallSignal, linearise
 
 if TYPE_CHECKING:
-    from .operating_points import OperatingPoints
+    from .solution import Solution
 
 FASTEST = 1e14
 """Natural frequencies above this [1/s] are of algebraic constraints and rounding, not of the circuit."""
@@ -138,8 +138,8 @@ def _dc(system: SmallSignal, disturbance: Array, amplifier: int) -> Array:
 
 
 @dataclass
-class Loops:
-    """Stability figures at every operating point; arrays over conditions, NaN where there is none.
+class CircuitLoops:
+    """Stability figures of one circuit at every operating point; arrays over conditions, NaN where there is none.
 
     Attributes
     ----------
@@ -151,7 +151,7 @@ class Loops:
         Where it is.
     """
 
-    points: OperatingPoints
+    points: Solution
     system: SmallSignal
     modes: Modes
     rightmost: Array
@@ -168,26 +168,6 @@ class Loops:
             judged = self.system.linear[:, index] & self.points.converged
             self._margins[amplifier] = margins(ratio, self.modes.frequency, judged)
         return self._margins[amplifier]
-
-    def dc_return_ratio(self, amplifier: str) -> Array:
-        """Return ratio at DC; positive is negative feedback."""
-        return self.margins(amplifier).dc_return_ratio
-
-    def phase_margin(self, amplifier: str) -> Array:
-        """Least phase margin over unity crossings [deg]."""
-        return self.margins(amplifier).phase_margin
-
-    def crossover(self, amplifier: str) -> Array:
-        """Unity crossing of least phase margin [Hz]."""
-        return self.margins(amplifier).crossover
-
-    def gain_margin(self, amplifier: str) -> Array:
-        """Gain margin at −180° [dB]."""
-        return self.margins(amplifier).gain_margin
-
-    def modulus_margin(self, amplifier: str) -> Array:
-        """Least ``|1 + T|`` over frequency."""
-        return self.margins(amplifier).modulus_margin
 
     @property
     def judged(self) -> BoolArray:
@@ -210,32 +190,26 @@ class Loops:
         taking_part: BoolArray = (own >= TAKES_PART * most) & (most > 0)
         return taking_part
 
-    def participants(self, index: int) -> tuple[str, ...]:
-        """Amplifiers that take part in the critical mode of one condition."""
-        return tuple(
-            ref for ref, part in zip(self.points.network.amplifiers, self.participation[index], strict=True) if part
-        )
 
-
-def judged_conditions(points: OperatingPoints, system: SmallSignal) -> BoolArray:
+def judged_conditions(points: Solution, system: SmallSignal) -> BoolArray:
     """Converged conditions at which no amplifier is saturated, those left out that always are."""
     ever = system.linear[points.converged].any(axis=0)
     judged: BoolArray = points.converged & (system.linear | ~ever).all(axis=1)
     return judged
 
 
-def analyse_loops(points: OperatingPoints, system: SmallSignal | None = None) -> Loops:
+def analyse_loops(points: Solution, system: SmallSignal | None = None) -> CircuitLoops:
     """Natural frequencies at every operating point, and loops to ask margins of.
 
     Parameters
     ----------
-    points : OperatingPoints
+    points : Solution
     system : SmallSignal, optional
         The linearised network, where a changed one is to be analysed.
 
     Returns
     -------
-    Loops
+    CircuitLoops
     """
     system = linearise(points) if system is None else system
     system = _stand_in(system, points.converged)
@@ -246,7 +220,7 @@ def analyse_loops(points: OperatingPoints, system: SmallSignal | None = None) ->
     )
     rightmost, damping, frequency, critical = _judge(modes, 2 * np.pi * widest * DAMPING_SPAN)
     blank = [np.where(points.converged, a, np.nan) for a in (rightmost, damping, frequency)]
-    return Loops(points, system, modes, blank[0], blank[1], blank[2], critical)
+    return CircuitLoops(points, system, modes, blank[0], blank[1], blank[2], critical)
 
 
 def _stand_in(system: SmallSignal, converged: BoolArray) -> SmallSignal:

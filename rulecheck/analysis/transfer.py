@@ -56,7 +56,7 @@ def law_values(requirement: Requirement, points: OperatingPoints) -> Array:
 
 
 def _law(requirement: Requirement, conditions: Conditions, points: OperatingPoints) -> Array:
-    law, design = requirement.law, points.network.design
+    law, design = requirement.law, points.design
     if law is None:
         return np.full(conditions.size, np.nan)
     known: dict[str, Any] = dict(requirement.constants)
@@ -89,7 +89,7 @@ def compare(requirement: Requirement, points: OperatingPoints, solver: Solver, t
     """
     output = points.voltage(requirement.output)
     law = law_values(requirement, points)
-    names = [n for n in points.network.design.inputs if requirement.law is not None and n in requirement.law.names]
+    names = [n for n in points.design.inputs if requirement.law is not None and n in requirement.law.names]
     exponents = {n: _exponents(requirement, points, solver, n) for n in names}
     return Transfer(
         requirement=requirement,
@@ -106,7 +106,7 @@ def compare(requirement: Requirement, points: OperatingPoints, solver: Solver, t
 
 def judged(requirement: Requirement, points: OperatingPoints, typical: Row) -> BoolArray:
     """Conditions at which a requirement asks its law."""
-    design, conditions = points.network.design, points.conditions
+    design, conditions = points.design, points.conditions
     inside = points.converged.copy()
     for name, source in design.inputs.items():
         x = conditions.values[name]

@@ -58,7 +58,7 @@ class SummingNode:
     Attributes
     ----------
     net : str
-        The input's net, or one joined to it by a resistor without current.
+        The input's net, or the one where the currents meet, if a resistor without current lies between.
     amplifier, input : str
     level_net : str
         Net of the other input.
@@ -82,7 +82,8 @@ def summing_nodes(wiring: Wiring, feedback: Iterable[Feedback]) -> tuple[Summing
         point = wiring.point_of[pins[held]]
         if point in wiring.known:
             continue
-        for net in sorted(wiring.nets_at[point], key=lambda net: net != pins[held]):
+        joined = [net for net in wiring.nets_at[point] if net != pins[held] and wiring.passes_current(net)]
+        for net in (pins[held], *joined):
             found.append(SummingNode(net=net, amplifier=loop.amplifier, input=held, level_net=level))
     return tuple(found)
 

@@ -29,12 +29,12 @@ def product_law(
     units : mapping of term to str
         Unit of each coefficient, ``1`` or ``ohm``.
     """
-    left = _product(junctions, 1, ideality)
-    right = _product(junctions, -1, ideality)
     if not rest:
-        return f"{left} = {right}"
+        scale = ideality[junctions[0].part]
+        return f"{_product(junctions, 1, ideality, scale)} = {_product(junctions, -1, ideality, scale)}"
+    left, right = _product(junctions, 1, ideality), _product(junctions, -1, ideality)
     drive = _sum(rest, units, lead="")
-    factor = f"exp(q/kT·({drive}))"
+    factor = f"exp(q/kT·{drive})" if len(rest) == 1 and min(rest.values()) > 0 else f"exp(q/kT·({drive}))"
     return f"{left} = {factor}" if right == "1" else f"{left} = {right}·{factor}"
 
 
@@ -58,9 +58,11 @@ def output_law(
     rest : mapping of term to float
         What else adds to the output.
     """
-    size = f"{_figure(abs(gain))}·" if _figure(abs(gain)) != "1" else ""
+    scale = ideality[junctions[0].part]
+    slope = _figure(abs(gain) * scale)
+    size = f"{slope}·" if slope != "1" else ""
     over = 1 if gain > 0 else -1
-    above, below = _product(junctions, over, ideality), _product(junctions, -over, ideality)
+    above, below = _product(junctions, over, ideality, scale), _product(junctions, -over, ideality, scale)
     sign = "−" if above == "1" else ""
     ratio = f"{above}/{_grouped(below)}" if "1" not in (above, below) else below if above == "1" else above
     return f"{output} = {sign}{size}kT/q·ln({ratio}){_sum(rest, units, lead=' ')}"
@@ -70,13 +72,13 @@ def _grouped(product: str) -> str:
     return f"({product})" if "·" in product or "/" in product else product
 
 
-def _product(junctions: Sequence[Junction], turn: int, ideality: Mapping[str, float]) -> str:
+def _product(junctions: Sequence[Junction], turn: int, ideality: Mapping[str, float], scale: float = 1.0) -> str:
     """Product of the currents of one turn; over the saturation currents where these do not cancel."""
     cancels = is_balanced(junctions)
     factors = []
     for junction in junctions:
         if junction.turn == turn:
-            ref, exponent = junction.part, _figure(junction.weight * ideality[junction.part])
+            ref, exponent = junction.part, _figure(junction.weight * ideality[junction.part] / scale)
             current = f"I({ref})" if cancels else f"I({ref})/I_S({ref})"
             raised = f"{current}^{exponent}" if cancels else f"({current})^{exponent}"
             factors.append(current if exponent == "1" else raised)

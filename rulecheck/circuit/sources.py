@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Collection, Iterator, Mapping
 from dataclasses import dataclass
 
-from .constraints import is_diode_like, junction_ends
+from .constraints import current_path, is_diode_like
 from .wiring import TRANSISTORS, Wiring, has_pins
 
 
@@ -29,7 +29,12 @@ class CurrentSources:
 
 
 def current_sources(
-    wiring: Wiring, levels: Mapping[str, str], start: str, own: Collection[str], amplifier: str | None
+    wiring: Wiring,
+    levels: Mapping[str, str],
+    start: str,
+    own: Collection[str],
+    amplifier: str | None,
+    working: Collection[str],
 ) -> CurrentSources:
     """Trace what sets the current into a point, back through resistors, sources, amplifiers, junctions.
 
@@ -44,6 +49,8 @@ def current_sources(
         Log transistors and diodes of the amplifier that holds it; they answer to the current.
     amplifier : str, optional
         The amplifier that holds it.
+    working : collection of str
+        Junctions that conduct.
     """
     seen = {start}
     queue = [start]
@@ -55,7 +62,7 @@ def current_sources(
             names |= {wiring.known[point]} - {""}
             continue
         names |= _brought(wiring, point)
-        for part, other, by_amplifier in _causes(wiring, point):
+        for part, other, by_amplifier in _causes(wiring, point, working):
             if part in own or part == amplifier or _is_output_of(wiring, other, amplifier):
                 continue
             parts |= {part} - {""}
@@ -88,7 +95,7 @@ def _brought(wiring: Wiring, point: str) -> set[str]:
     return drives | {r for r, _ in wiring.pins_at.get(point, ()) if wiring.design.parts[r].kind in kinds}
 
 
-def _causes(wiring: Wiring, point: str) -> Iterator[tuple[str, str, bool]]:
+def _causes(wiring: Wiring, point: str, working: Collection[str]) -> Iterator[tuple[str, str, bool]]:
     """Parts that lead a point, each with the point it is led from and whether it is an amplifier."""
     for resistance in wiring.resistances_at.get(point, ()):
         yield resistance.part, resistance.b if resistance.a == point else resistance.a, False
@@ -100,8 +107,13 @@ def _causes(wiring: Wiring, point: str) -> Iterator[tuple[str, str, bool]]:
                     yield ref, wiring.point(ref, entry), True
         elif part.kind == "voltage-source" and (points := wiring.two_points(ref)):
             yield ref, points[1] if points[0] == point else points[0], False
-        elif (ends := junction_ends(wiring, ref)) and (part.kind == "diode" or pin != "B"):
-            yield from ((ref, end, False) for end in ends if end != point)
+        elif ref in working and part.kind == "diode":
+            yield from ((ref, end, False) for end in current_path(wiring, ref) if end != point)
+        elif ref in working and pin != "B":
+            yield ref, wiring.point(ref, "B"), False
+            # A rail that an emitter stands on leads nothing: the base is referred to it.
+            if pin == "C" and (emitter := wiring.point(ref, "E")) not in wiring.known:
+                yield ref, emitter, False
 
 
 def direction(wiring: Wiring, levels: Mapping[str, float], point: str, own: Collection[str]) -> int:

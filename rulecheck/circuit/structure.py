@@ -63,6 +63,8 @@ class Structure:
     log_diodes : tuple of LogDiode
     antilog_transistors : tuple of AntilogTransistor
     junction_loops : tuple of JunctionLoop
+    conducting : tuple of str
+        Transistors and diodes at work; the others are clamps.
     levels : mapping of net to Spread
         Nets at a fixed voltage: ground, supplies, references, and what dividers, followers and virtual
         grounds make of them. The spreads are those of the sources, without the resistors'.
@@ -75,6 +77,7 @@ class Structure:
     log_diodes: tuple[LogDiode, ...]
     antilog_transistors: tuple[AntilogTransistor, ...]
     junction_loops: tuple[JunctionLoop, ...]
+    conducting: tuple[str, ...]
     levels: Mapping[str, Spread]
     _wiring: Wiring = field(repr=False, compare=False)
 
@@ -114,7 +117,7 @@ class Structure:
         own = {log.part for log in self.log_transistors if log.amplifier == amplifier}
         own |= {log.part for log in self.log_diodes if log.amplifier == amplifier}
         levels = {at: wiring.point_of[node.level_net] for at, node in held.items()}
-        return current_sources(wiring, levels, point, own, amplifier)
+        return current_sources(wiring, levels, point, own, amplifier, self.conducting)
 
 
 def find_structure(design: Design, graph: Circuit) -> Structure:
@@ -155,6 +158,7 @@ def find_structure(design: Design, graph: Circuit) -> Structure:
         log_diodes=diodes,
         antilog_transistors=antilog_transistors(wiring, found, logs, held, voltages),
         junction_loops=found,
+        conducting=work.junctions,
         levels=FrozenDict(levels),
         _wiring=wiring,
     )

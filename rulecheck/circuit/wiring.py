@@ -123,6 +123,13 @@ class Wiring:
         carriers += [ref for ref, pin in self.pins_at.get(point, ()) if _carries(self.design.parts[ref], pin)]
         return carriers + ["" for net in self.nets_at[point] if self.drives_current(net)]
 
+    def passes_current(self, net: str) -> bool:
+        """Tell whether currents meet on a net: more than one of its pins can carry some."""
+        pins = self.pins_on.get(net, ())
+        kinds = ("resistor", "potentiometer")
+        carrying = [p for r, p in pins if (q := self.design.parts[r]).kind in kinds or _carries(q, p)]
+        return len(carrying) > 1 or self.drives_current(net)
+
     def drives_current(self, net: str) -> bool:
         """Whether a net is an input that is driven by a current."""
         return net in self.design.nets and self.design.nets[net].drive == "current"

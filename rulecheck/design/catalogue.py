@@ -92,8 +92,8 @@ def _names(data: Mapping[str, Any], problems: Problems) -> list[tuple[int, str]]
 
 def _open(name: str, index: int, folder: Path, problems: Problems, catalogue: Catalogue) -> Source | None:
     """Read a catalogue; a file that is not there is an error at the key that names it."""
+    path = folder / name
     try:
-        path = folder / name
         inside = path.resolve().is_relative_to(folder.resolve())
         exists = inside and path.is_file()
     except (OSError, RuntimeError, ValueError):  # a loop of links, a name that no file can have

@@ -58,13 +58,17 @@ def _path(edit: Edit) -> KeyPath:
 
 
 def _refuse_overlaps(edits: Sequence[Edit], paths: Sequence[KeyPath]) -> None:
-    """Refuse two edits of which one is at or below the other; what was added may still be changed."""
-    for later, path in enumerate(paths):
-        for edit, other in zip(edits[:later], paths, strict=False):
+    """Refuse two edits of which one is at or below the other; what is added is new, and may be changed."""
+    made: dict[KeyPath, Edit] = {}
+    for edit, path in zip(edits, paths, strict=True):
+        if isinstance(edit, Add):
+            made = {other: former for other, former in made.items() if other[: len(path)] != path}
+            continue
+        for other, former in made.items():
             shared = min(len(path), len(other))
-            if path[:shared] != other[:shared] or isinstance(edit, Add) or isinstance(edits[later], Add):
-                continue
-            raise EditError(f"{_name(edits[later])} overlaps with {_name(edit)}", "make one edit of the two")
+            if path[:shared] == other[:shared]:
+                raise EditError(f"{_name(edit)} overlaps with {_name(former)}", "make one edit of the two")
+        made[path] = edit
 
 
 def _name(edit: Edit) -> str:

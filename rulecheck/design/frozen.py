@@ -14,8 +14,8 @@ class FrozenDict(dict[K, V]):
     def _refuse(self, *_args: Any, **_named: Any) -> NoReturn:  # noqa: ANN401
         raise TypeError("a loaded design cannot be changed")
 
-    __setitem__ = __delitem__ = __ior__ = _refuse  # type: ignore[assignment]
-    update = pop = popitem = clear = setdefault = _refuse  # type: ignore[assignment]
+    __setitem__ = __delitem__ = __ior__ = _refuse
+    update = pop = popitem = clear = setdefault = _refuse
 
     def __reduce__(self) -> tuple[Any, ...]:
         return type(self), (dict(self),)

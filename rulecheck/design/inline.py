@@ -53,10 +53,11 @@ def remove_item(document: Document, holder: KeyPath, index: int) -> str:
     line_start, line_end = document.line_start(item.start), document.line_end(after)
     if not text[line_start : item.start].strip() and _nothing_but_comment(text[after:line_end]):
         cut = (line_start, document.next_line(after))
-    elif text[after:line_end].strip() or index == 0:
-        cut = (item.start, after + len(text[after:line_end]) - len(text[after:line_end].lstrip()))
-    else:
+    elif not text[after:line_end].strip():
         cut = (len(text[: item.start].rstrip(" \t")), after)
+    else:
+        blanks = len(text[after:line_end]) - len(text[after:line_end].lstrip()) if after > item.end else 0
+        cut = (item.start, after + blanks)
     text = text[: cut[0]] + text[cut[1] :]
     if after == item.end and index:  # the last one, without a comma: the comma before it goes
         before = skip_trivia(text, items[index - 1].end)

@@ -59,6 +59,8 @@ class InputTable(NetTable):
     """What every input net has."""
 
     role: Literal["input"] = required("what the net is")
+    drive: str
+    range: tuple[float, float]
     source_capacitance: Capacitance = key("capacitance of the source to ground")
     spacing: Literal["log", "linear"] | None = key(
         "how its range is divided (log where both ends have one sign and differ by a factor of 10 or more)"

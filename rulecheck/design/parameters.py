@@ -32,7 +32,14 @@ Kelvin = Annotated[Spread | None, Unit("K"), POSITIVE]
 ThermalResistance = Annotated[Spread | None, Unit("K/W"), POSITIVE]
 
 
-class TransistorParameters(Table):
+class Parameters(Table):
+    """Parameters that a model states and a part may override."""
+
+    needed: ClassVar[tuple[str, ...]] = ()
+    """Those that must be known of every part."""
+
+
+class TransistorParameters(Parameters):
     """Parameters of a bipolar transistor."""
 
     needed: ClassVar[tuple[str, ...]] = ("saturation_current", "forward_beta")
@@ -81,7 +88,7 @@ class TransistorParameters(Table):
     junction: Annotated[Spread | None, Unit("degC")] = key("greatest junction temperature")
 
 
-class DiodeParameters(Table):
+class DiodeParameters(Parameters):
     """Parameters of a diode."""
 
     needed: ClassVar[tuple[str, ...]] = ("saturation_current",)
@@ -121,7 +128,7 @@ def _from_nothing(value: Any) -> Any:  # noqa: ANN401
     return {"min": "0 V", **value}
 
 
-class AmplifierParameters(Table):
+class AmplifierParameters(Parameters):
     """Parameters of an operational amplifier."""
 
     needed: ClassVar[tuple[str, ...]] = ("open_loop_gain", "gain_bandwidth", "input_headroom", "output_headroom")
@@ -170,15 +177,14 @@ class AmplifierParameters(Table):
     theta_ja: ThermalResistance = key("thermal resistance from junction to ambient")
 
 
-class ModelTable(Table):
+class ModelTable(Parameters):
     """What every model of a catalogue has."""
 
     kind: str
-
     note: Text = key("what the model stands for, and where its figures come from", "")
 
 
-class TransistorModel(ModelTable, TransistorParameters):
+class TransistorModel(TransistorParameters, ModelTable):
     """A transistor model of a catalogue."""
 
     called: ClassVar[str] = "a transistor model"
@@ -186,7 +192,7 @@ class TransistorModel(ModelTable, TransistorParameters):
     kind: Literal["npn", "pnp"] = required("polarity")
 
 
-class DiodeModel(ModelTable, DiodeParameters):
+class DiodeModel(DiodeParameters, ModelTable):
     """A diode model of a catalogue."""
 
     called: ClassVar[str] = "a diode model"
@@ -194,7 +200,7 @@ class DiodeModel(ModelTable, DiodeParameters):
     kind: Literal["diode"] = required("kind of part")
 
 
-class AmplifierModel(ModelTable, AmplifierParameters):
+class AmplifierModel(AmplifierParameters, ModelTable):
     """An amplifier model of a catalogue."""
 
     called: ClassVar[str] = "an op-amp model"

@@ -18,7 +18,13 @@ from rulecheck.design.fields import (
     key,
     required,
 )
-from rulecheck.design.parameters import ZERO, AmplifierParameters, DiodeParameters, TransistorParameters
+from rulecheck.design.parameters import (
+    ZERO,
+    AmplifierParameters,
+    DiodeParameters,
+    Parameters,
+    TransistorParameters,
+)
 from rulecheck.units import Spread, Unit
 
 Nets = Mapping[str, str]
@@ -30,14 +36,13 @@ class PartTable(Table):
     """What every part has."""
 
     kind: str
-
     pins: Nets
     package: Text | None = key("the package it is in (one of its own)")
     mounted: Flag = key("false leaves the part out (true)", True)
     spare: Flag = key("true exempts it from connectivity (false)", False)
 
 
-class Modelled(PartTable):
+class Modelled(PartTable, Parameters):
     """A part that may take its parameters from a model."""
 
     model: Text | None = key("the model of a catalogue that its parameters come from")
@@ -89,7 +94,7 @@ class Capacitor(PartTable):
     voltage: Annotated[Spread | None, Unit("V"), POSITIVE] = key("voltage rating")
 
 
-class Diode(Modelled, DiodeParameters):
+class Diode(DiodeParameters, Modelled):
     """A diode."""
 
     called: ClassVar[str] = "a diode"
@@ -98,7 +103,7 @@ class Diode(Modelled, DiodeParameters):
     pins: Annotated[Nets, Pins("A", "K")] = required("nets of anode A and cathode K")
 
 
-class Transistor(Modelled, TransistorParameters):
+class Transistor(TransistorParameters, Modelled):
     """A bipolar transistor."""
 
     called: ClassVar[str] = "a transistor"
@@ -108,7 +113,7 @@ class Transistor(Modelled, TransistorParameters):
     vbe_offset: Annotated[Spread | None, Unit("V")] = key("the known base-emitter error of this one unit, signed")
 
 
-class Amplifier(Modelled, AmplifierParameters):
+class Amplifier(AmplifierParameters, Modelled):
     """An operational amplifier."""
 
     called: ClassVar[str] = "an op-amp"

@@ -7,6 +7,7 @@ from collections.abc import Iterator, Mapping
 from rulecheck.errors import Problem
 from rulecheck.findings import DesignReport, Evidence, Failure, Finding, NotRun, Remedy, Report, Severity
 from rulecheck.report.layout import LABEL_WIDTH, Layout, conditions_in_words, quantity
+from rulecheck.report.remedies_text import mark
 from rulecheck.review.completion import severity_of
 from rulecheck.review.outcome import ReviewedDesign
 
@@ -107,10 +108,8 @@ def _evidence(evidence: Evidence) -> str:
 
 
 def _remedy(remedy: Remedy, layout: Layout) -> Iterator[str]:
-    mark = "proven" if remedy.proven else "tried, not proven" if remedy.edits else "by hand"
-    *lines, last = layout.labelled(f"  mend {remedy.id}", f"{remedy.title} [{mark}]")
-    yield from lines
-    yield last.replace("[proven]", layout.styled("[proven]", "green")) if remedy.proven else last
+    style = "green" if remedy.proven else "dim"
+    yield from layout.labelled(f"  mend {remedy.id}", f"{remedy.title} [{mark(remedy)}]", style)
 
 
 def _conceded(finding: Finding, units: Mapping[str, str], layout: Layout) -> Iterator[str]:

@@ -30,8 +30,9 @@ class Step:
 
 @dataclass(frozen=True, slots=True)
 class Fixed:
-    """What came of applying remedies: the steps, and the review of the design after them."""
+    """What came of applying remedies: findings before, the steps, and the review of the design after them."""
 
+    before: tuple[Finding, ...]
     steps: tuple[Step, ...]
     review: DesignReview
 
@@ -91,7 +92,7 @@ def apply(review: DesignReview, step: Step, registry: Registry, options: Options
     RulecheckError
         The edits do not fit, or what they make is no design.
     """
-    return Fixed((step,), _reviewed_again(review, step, registry, options, {}))
+    return Fixed(review.findings, (step,), _reviewed_again(review, step, registry, options, {}))
 
 
 def apply_all_proven(design: Design, registry: Registry, options: Options) -> Fixed:
@@ -105,6 +106,7 @@ def apply_all_proven(design: Design, registry: Registry, options: Options) -> Fi
     """
     cache: dict[Any, Any] = {}
     review = DesignReview(design, registry, options, cache)
+    before = review.findings
     steps: list[Step] = []
     seen = {design.text}
     while len(steps) < MOST_ROUNDS:
@@ -114,7 +116,7 @@ def apply_all_proven(design: Design, registry: Registry, options: Options) -> Fi
         review = _reviewed_again(review, step, registry, options, cache)
         seen.add(review.design.text)
         steps.append(step)
-    return Fixed(tuple(steps), review)
+    return Fixed(before, tuple(steps), review)
 
 
 def _proven(review: DesignReview, seen: set[str]) -> Iterator[Step]:

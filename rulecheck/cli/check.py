@@ -1,0 +1,61 @@
+"""``rulecheck check``: review design files and print findings."""
+
+from __future__ import annotations
+
+import datetime as dt
+from pathlib import Path
+
+import click
+
+from rulecheck.cli.options import FILE, form_option, on_option
+from rulecheck.cli.status import Status, status_of
+from rulecheck.cli.streams import ProgressBar, emit, width_and_color
+from rulecheck.findings import Report, Severity
+
+SEVERITIES = [severity.label for severity in sorted(Severity, reverse=True)]
+
+
+@click.command("check")
+@click.argument("paths", metavar="PATH...", nargs=-1, required=True, type=FILE)
+@form_option("text", "json")
+@click.option("--write", "file", type=FILE, metavar="FILE", help="Write the result to FILE, all of it or nothing.")
+@click.option("--only", multiple=True, metavar="RULE", help="Run this rule only; may be given again.")
+@click.option("--without", multiple=True, metavar="RULE", help="Leave out this rule; may be given again.")
+@click.option(
+    "--fail-on", type=click.Choice(SEVERITIES), default="minor", show_default=True,
+    help="Least severity that makes the exit status 1.",
+)  # fmt: skip
+@on_option
+def command(
+    paths: tuple[Path, ...], form: str, file: Path | None, only: tuple[str, ...], without: tuple[str, ...],
+    fail_on: str, on: dt.date,
+) -> Status:  # fmt: skip
+    """Review design files and print findings with evidence and tried remedies.
+
+    PATH is a design file, or a folder that is searched for them.
+    """
+    from rulecheck.cli.paths import design_files
+    from rulecheck.review.registry import installed_registry
+    from rulecheck.review.runner import Options, review_design
+
+    registry = installed_registry()
+    registry.check_names((*only, *without))
+    designs = []
+    for path in design_files(paths):
+        with ProgressBar(str(path)) as progress:
+            options = Options(on=on, only=only, without=without, progress=progress)
+            designs.append(review_design(path, registry, options))
+    report = Report(tuple(designs), on)
+    emit(_rendered(report, form, file), file)
+    return status_of(report, Severity.parse(fail_on))
+
+
+def _rendered(report: Report, form: str, file: Path | None) -> str:
+    if form == "json":
+        from rulecheck.report import json
+
+        return json.render(report)
+    from rulecheck.report import text
+
+    width, color = width_and_color(to_file=file is not None)
+    return text.render(report, width, color)

@@ -1,0 +1,109 @@
+"""The numbers of a design as text: the span of each figure over the conditions, and where the worst are."""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Iterator, Mapping
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from rulecheck.report.figures_json import arrays
+from rulecheck.report.layout import Layout, conditions_in_words, quantity, table
+from rulecheck.review.outcome import condition_units
+
+if TYPE_CHECKING:
+    from rulecheck.analysis.review import Review
+
+UNITS = {
+    "ic": "A", "ib": "A", "vbe": "V", "vce": "V", "current": "A", "wiper_current": "A", "voltage": "V",
+    "output": "V", "temperature": "degC", "phase_margin": "deg", "crossover": "Hz", "law": "V", "error": "V",
+}  # fmt: skip
+#: Units that carry no prefix and are shown as they stand.
+PLAIN_UNITS = {"gain_margin": "dB", "rightmost": "1/s"}
+
+
+def render(review: Review, width: int = 80, color: bool = False) -> str:
+    """Text of the numbers.
+
+    Parameters
+    ----------
+    review : Review
+    width : int
+        Of the lines, in characters.
+    color : bool
+        Whether to use colour.
+    """
+    layout = Layout(width, color)
+    figures, units = arrays(review), condition_units(review.design)
+    lines = layout.wrapped(" · ".join(words for words in (figures["file"], figures["title"]) if words))
+    lines += layout.wrapped(_convergence(review))
+    for line in review.operating_points.failures()[:3]:
+        lines += layout.wrapped(line, 2)
+    lines += _section("conditions", figures["points"], layout, units)
+    lines += _section("nets", figures["nets"], layout, dict.fromkeys(figures["nets"], "V"))
+    for title in ("parts", "loops", "requirements"):
+        lines += _section(title, _flat(figures[title]), layout)
+    lines += _section("natural frequencies", figures["natural_frequencies"], layout)
+    lines += _worst(review, layout, units)
+    return "\n".join(lines) + "\n"
+
+
+def _convergence(review: Review) -> str:
+    converged = review.operating_points.converged
+    count = f"{converged.size} condition{'s' if converged.size != 1 else ''}"
+    return f"{count}, all solved" if converged.all() else f"{count}, {int((~converged).sum())} without a solution"
+
+
+def _flat(figures: Mapping[str, Any], above: str = "") -> dict[str, Any]:
+    """Figures of a nested table, named by words in a row."""
+    flat: dict[str, Any] = {}
+    for name, value in figures.items():
+        words = f"{above} {name}".strip()
+        flat |= _flat(value, words) if isinstance(value, Mapping) else {words: value}
+    return flat
+
+
+def _section(
+    title: str, figures: Mapping[str, Any], layout: Layout, units: Mapping[str, str] | None = None
+) -> Iterator[str]:
+    """A table of figures, their least and greatest values side by side."""
+    if figures:
+        rows = [_row(name, array, (units or {}).get(name)) for name, array in figures.items()]
+        single = all(row[2] == "" for row in rows)
+        head = (title, "value" if single else "least", "" if single else "greatest")
+        first, *rest = table([head, *rows], indent=0)
+        yield from ["", layout.styled(first, "bold"), *rest]
+
+
+def _row(name: str, array: Any, unit: str | None) -> tuple[str, str, str]:  # noqa: ANN401 - an array of any kind
+    if np.asarray(array).dtype.kind not in "fiu":
+        counts = Counter(str(state) for state in array if state is not None)
+        return name, ", ".join(f"{state} {count}" for state, count in counts.items()), ""
+    known = array[np.isfinite(array)]
+    if not known.size:
+        return name, "no figure", ""
+    least, greatest = (_shown(name, float(value), unit) for value in (known.min(), known.max()))
+    return name, least, "" if least == greatest else greatest
+
+
+def _shown(name: str, value: float, unit: str | None) -> str:
+    kind = name.rpartition(" ")[2]
+    if kind in PLAIN_UNITS:
+        return f"{value:.4g} {PLAIN_UNITS[kind]}"
+    return quantity(value, unit or UNITS.get(kind, "1"))
+
+
+def _worst(review: Review, layout: Layout, units: Mapping[str, str]) -> Iterator[str]:
+    """Where errors are largest against what is allowed, and where the circuit is least damped."""
+    rows = [
+        (f"{name}: error", np.where(transfer.judged, np.abs(transfer.error), np.nan), "V", np.nanargmax)
+        for name, transfer in review.transfer.items()
+    ]
+    rows.append(("damping ratio", review.loops.least_damping, "1", np.nanargmin))
+    for words, array, unit, pick in rows:
+        if np.isfinite(array).any():
+            index = int(pick(array))
+            where = conditions_in_words(review.operating_points.conditions.at(index), units)
+            yield ""
+            yield from layout.wrapped(f"worst {words} {quantity(float(array[index]), unit)} at {where}")
