@@ -47,19 +47,16 @@ class LoopStability(Rule):
             if judged.any():
                 yield from self._island(review, settings, island, judged)
 
-    def _island(
-        self, review: Review, settings: Settings, island: IslandLoops, judged: np.ndarray
-    ) -> Iterable[Finding]:
+    def _island(self, review: Review, settings: Settings, island: IslandLoops, judged: np.ndarray) -> Iterable[Finding]:
         ringing = judged & ((island.least_damping < settings.damping) | (island.rightmost > 0))
-        named: set[str] = set()
         for group in _groups(island.participation, ringing):
-            parts = [island.amplifiers[i] for i in group]
-            named.update(parts)
             taking_part = ringing & island.participation[:, group].any(axis=1)
-            yield self._ringing(review, settings, island, parts, taking_part)
+            yield self._ringing(review, settings, island, [island.amplifiers[i] for i in group], taking_part)
+        if ringing.any():
+            return  # thin margins beside a ringing mode have its cause
         for amplifier in island.amplifiers:
             margin = np.where(judged, review.loops.phase_margin(amplifier), np.nan)
-            if amplifier not in named and np.isfinite(margin).any() and np.nanmin(margin) < settings.phase_margin:
+            if np.isfinite(margin).any() and np.nanmin(margin) < settings.phase_margin:
                 yield self._thin(review, settings, amplifier, margin)
 
     def _ringing(

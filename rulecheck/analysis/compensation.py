@@ -14,9 +14,9 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from ..devices.constants import Array, ComplexArray, Index
+from ..devices.constants import Array, Index
 from ..series import decade_values
-from .stability import analyse_loops, damping_of, judged_conditions, mode_frequencies
+from .stability import DAMPING_SPAN, analyse_loops, damping_of, mode_frequencies
 
 if TYPE_CHECKING:
     from .small_signal import SmallSignal
@@ -24,7 +24,7 @@ if TYPE_CHECKING:
 
 LEAST, MOST = 1e-12, 100e-9
 """Span of the search [F]."""
-HARD_CONDITIONS = 48
+HARD_CONDITIONS = 20
 CONFIRMED_AT_MOST = 24
 BATCH = 4096
 
@@ -72,13 +72,14 @@ def required_capacitors(
     Compensation or None
         None where no values in the span do.
     """
-    if not judged_conditions(points, system).any():
+    if not system.judged.any():
         return None
-    search = _Search(points, system, tuple(amplifiers), damping, margin)
-    for candidate in search.candidates():
-        found = search.confirm(candidate)
-        if found is not None:
-            return search.reduce(found)
+    for others in (True, False):  # first with every loop of the circuit calm, then at least those asked for
+        search = _Search(points, system, tuple(amplifiers), damping, margin, others=others)
+        for candidate in search.candidates():
+            found = search.confirm(candidate)
+            if found is not None:
+                return search.reduce(found)
     return None
 
 
@@ -90,75 +91,79 @@ class _Search:
         amplifiers: tuple[str, ...],
         damping: float,
         margin: float,
+        *,
+        others: bool,
     ) -> None:
-        self.points, self.amplifiers = points, amplifiers
-        self.damping, self.margin = damping, margin
+        self.amplifiers, self.damping, self.margin = amplifiers, damping, margin
+        self.watched = system.amplifiers if others else amplifiers
         self.stamps = [_stamp(points, a, system.capacitance.shape[-1]) for a in amplifiers]
         present = np.array([present_capacitor(points, a) for a in amplifiers])
-        self.system = replace(system, capacitance=system.capacitance - np.tensordot(present, self.stamps, axes=1))
+        capacitance = system.capacitance - np.tensordot(present, self.stamps, axes=1)
+        self.system = replace(system, capacitance=capacitance).take(np.flatnonzero(system.judged))
         self.values = decade_values("E12", LEAST, MOST)
-        widest = max(float(points.parameters.of(r, "gain_bandwidth").max()) for r in points.network.amplifiers)
-        self.fastest = 200 * np.pi * widest
+        self.fastest = 2 * np.pi * DAMPING_SPAN * system.widest
         self._prepare(present)
 
     def _prepare(self, present: Array) -> None:
-        """Reduce the network on the hardest conditions to ``N = N_0 + Σ c_k·N_k``."""
-        self.judged = judged_conditions(self.points, self.system)
-        here = np.flatnonzero(self.judged)
-        tensor = np.abs(np.tensordot(np.ones(len(self.stamps)), np.abs(self.stamps), axes=1))
-        touched = np.any(self.system.capacitance != 0, axis=(0, 1)) | np.any(tensor != 0, axis=0)
-        columns = np.flatnonzero(touched)
-        inverse = np.linalg.inv(self.system.conductance[here])[:, columns, :]
-        self.fixed = inverse @ self.system.capacitance[here][:, :, columns]
+        """Reduce the network to ``N = N_0 + Σ c_k·N_k``, and choose the hardest conditions."""
+        stamped = np.any(np.any(self.stamps, axis=0), axis=0)
+        columns = np.flatnonzero(np.any(self.system.capacitance != 0, axis=(0, 1)) | stamped)
+        inverse = np.linalg.inv(self.system.conductance)[:, columns, :]
+        self.fixed = inverse @ self.system.capacitance[:, :, columns]
         self.per_farad = [inverse @ stamp[:, columns] for stamp in self.stamps]
-        worst = np.zeros(len(here))
-        for value in (present, np.full(len(present), 1e-11), np.full(len(present), 1e-9)):
-            ratio = damping_of(mode_frequencies(self._mu(value[None], slice(None))[0]), self.fastest)
-            worst = np.maximum(worst, -ratio)
-        pick = np.sort(np.argsort(worst)[-HARD_CONDITIONS:])
-        spread = np.linspace(0, len(here) - 1, min(len(here), HARD_CONDITIONS)).astype(int)
-        self.hard = np.unique(np.concatenate([pick, spread]))
+        count = len(self.fixed)
+        trials = np.stack([present, np.full(len(present), 1e-11), np.full(len(present), 1e-9)])
+        hardness = self._damping(trials, slice(None)).min(axis=0)
+        hardest = np.argsort(hardness)[:HARD_CONDITIONS]
+        spread = np.linspace(0, count - 1, min(count, HARD_CONDITIONS)).astype(int)
+        self.hard = np.unique(np.concatenate([hardest, spread]))
+        self.hard_system = self.system.take(self.hard)
 
-    def _mu(self, candidates: Array, conditions: Index) -> ComplexArray:
-        """Eigenvalues for each candidate and condition, shape (candidates, conditions, modes)."""
+    def _damping(self, candidates: Array, conditions: Index) -> Array:
+        """Least damping for each candidate and condition, shape (candidates, conditions)."""
         n = self.fixed[conditions][None] + sum(
             candidates[:, k, None, None, None] * m[conditions][None] for k, m in enumerate(self.per_farad)
         )
-        return np.asarray(np.linalg.eigvals(n))
+        return damping_of(mode_frequencies(np.linalg.eigvals(n).astype(complex)), self.fastest)
 
     def _passing(self, candidates: Array) -> Array:
         """Candidates whose natural frequencies are damped enough on the hard conditions."""
         step = max(1, BATCH // len(self.hard))
-        passed = []
-        for first in range(0, len(candidates), step):  # chunks bound the memory; each is one batch
-            some = candidates[first : first + step]
-            frequency = mode_frequencies(self._mu(some, self.hard))
-            ratio = damping_of(frequency.reshape(-1, frequency.shape[-1]), self.fastest).reshape(len(some), -1)
-            passed.append(some[ratio.min(axis=1) >= self.damping])
-        return np.concatenate(passed) if passed else candidates[:0]
+        passed = [
+            some[self._damping(some, self.hard).min(axis=1) >= self.damping]
+            for some in (candidates[i : i + step] for i in range(0, len(candidates), step))
+        ]
+        return np.concatenate(passed)
 
     def candidates(self) -> Array:
         """Passing candidates, the least total capacitance (in the logarithm) first."""
         count = len(self.amplifiers)
         if count == 2:
             coarse = decade_values("E3", LEAST, MOST)
-            pairs = np.array(list(itertools.product(coarse, coarse)))
+            trials = np.array(list(itertools.product(coarse, coarse)))
         else:
-            pairs = np.repeat(np.asarray(self.values)[:, None], count, axis=1)
-        passed = self._passing(pairs)
+            trials = np.repeat(np.asarray(self.values)[:, None], count, axis=1)
+        passed = self._passing(trials)
         return passed[np.argsort(np.log(passed).sum(axis=1), kind="stable")][:CONFIRMED_AT_MOST]
 
     def confirm(self, candidate: Array) -> Compensation | None:
-        """The candidate with its figures, where it meets both limits at every condition."""
-        c = self.system.capacitance + np.tensordot(candidate, self.stamps, axes=1)
-        loops = analyse_loops(self.points, replace(self.system, capacitance=c))
-        damping = float(loops.least_damping[self.judged].min())
-        if damping < self.damping or loops.rightmost[self.judged].max() >= 0:
+        """The candidate with its figures, where it meets both limits on the hard and then on all conditions."""
+        if self._figures(self.hard_system, candidate) is None:
             return None
-        margins = [loops.margins(a).phase_margin[self.judged] for a in self.amplifiers]
-        least = min((float(np.nanmin(m)) for m in margins if np.isfinite(m).any()), default=np.inf)
-        if least < self.margin:
+        return self._figures(self.system, candidate)
+
+    def _figures(self, system: SmallSignal, candidate: Array) -> Compensation | None:
+        c = system.capacitance + np.tensordot(candidate, self.stamps, axes=1)
+        loops = analyse_loops(replace(system, capacitance=c))
+        damping = float(loops.least_damping.min())
+        if damping < self.damping or loops.rightmost.max() >= 0:
             return None
+        least = np.inf
+        for amplifier in self.watched:
+            margins = loops.margins(amplifier).phase_margin
+            least = min(least, float(np.min(margins, initial=np.inf, where=np.isfinite(margins))))
+            if least < self.margin:
+                return None
         return Compensation(dict(zip(self.amplifiers, map(float, candidate), strict=True)), damping, least)
 
     def reduce(self, found: Compensation) -> Compensation:

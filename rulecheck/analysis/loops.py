@@ -55,7 +55,7 @@ class IslandLoops:
     @property
     def judged(self) -> BoolArray:
         """Conditions at which stability is judged: no amplifier is saturated that is ever linear."""
-        return self.circuit.judged[self.placed.index]
+        return self.system.judged[self.placed.index]
 
     @property
     def participation(self) -> BoolArray:
@@ -89,9 +89,9 @@ class Loops:
         system = linearise(placed.solution, own)
         key = ("loops", digest(system))
         if key not in self._cache:
-            self._cache[key] = analyse_loops(placed.solution, system)
+            self._cache[key] = analyse_loops(system)
         back = {solved: here for here, solved in placed.parts.items()}
-        amplifiers = tuple(back[a] for a in placed.solution.network.amplifiers)
+        amplifiers = tuple(back[a] for a in system.amplifiers)
         return IslandLoops(placed, system, self._cache[key], amplifiers)
 
     @property

@@ -6,13 +6,13 @@ pole: ``(V(IN+) − V(IN−)) = y·(1 + s/ω_1)/A0`` and ``y = u·(1 + s/ω_2)``
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from ..devices import diode, transistor
-from ..devices.constants import Array, BoolArray, IntArray
+from ..devices.constants import Array, BoolArray, Index, IntArray
 from .values import Overrides, Parameters, columns
 
 if TYPE_CHECKING:
@@ -33,6 +33,10 @@ class SmallSignal:
     state_columns : ndarray of int, shape (amplifiers,)
         Column of the output y of the first pole.
     linear : ndarray of bool, shape (conditions, amplifiers)
+    converged : ndarray of bool, shape (conditions,)
+    amplifiers : tuple of str
+    widest : float
+        Largest gain-bandwidth [Hz]; infinite without amplifiers.
     """
 
     conductance: Array
@@ -41,6 +45,26 @@ class SmallSignal:
     internal_columns: IntArray
     state_columns: IntArray
     linear: BoolArray
+    converged: BoolArray
+    amplifiers: tuple[str, ...]
+    widest: float
+
+    def take(self, index: Index) -> SmallSignal:
+        """The chosen conditions."""
+        return replace(
+            self,
+            conductance=self.conductance[index],
+            capacitance=self.capacitance[index],
+            linear=self.linear[index],
+            converged=self.converged[index],
+        )
+
+    @property
+    def judged(self) -> BoolArray:
+        """Conditions at which stability is judged: no amplifier is saturated that is ever linear."""
+        ever = self.linear[self.converged].any(axis=0)
+        judged: BoolArray = self.converged & (self.linear | ~ever).all(axis=1)
+        return judged
 
 
 def linearise(points: Solution, overrides: Overrides | None = None) -> SmallSignal:
@@ -75,8 +99,17 @@ def linearise(points: Solution, overrides: Overrides | None = None) -> SmallSign
     _transistor_charges(points, p, stamp)
     _diode_charges(points, p, stamp)
     _capacitors(points, p, stamp)
+    widest = max((float(p.of(r, "gain_bandwidth").max()) for r in network.amplifiers), default=np.inf)
     return SmallSignal(
-        g[:, :size, :size], c[:, :size, :size], equations.output_rows, equations.gain_rows, states, linear
+        conductance=g[:, :size, :size],
+        capacitance=c[:, :size, :size],
+        output_rows=equations.output_rows,
+        internal_columns=equations.gain_rows,
+        state_columns=states,
+        linear=linear,
+        converged=points.converged,
+        amplifiers=tuple(network.amplifiers),
+        widest=widest,
     )
 
 

@@ -6,18 +6,14 @@ are ``s = −1/μ`` for the eigenvalues μ of N there, and every transfer functi
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
-from typing import TYPE_CHECKING
 
 import numpy as np
 
 from ..devices.constants import AnyArray, Array, BoolArray, ComplexArray, IntArray
 from .margins import Margins, margins
-from .small_signal import SmallSignal, linearise
-
-if TYPE_CHECKING:
-    from .solution import Solution
+from .small_signal import SmallSignal
 
 FASTEST = 1e14
 """Natural frequencies above this [1/s] are of algebraic constraints and rounding, not of the circuit."""
@@ -151,7 +147,6 @@ class CircuitLoops:
         Where it is.
     """
 
-    points: Solution
     system: SmallSignal
     modes: Modes
     rightmost: Array
@@ -163,16 +158,11 @@ class CircuitLoops:
     def margins(self, amplifier: str) -> Margins:
         """All margins of one amplifier, computed when first asked."""
         if amplifier not in self._margins:
-            index = self.points.network.amplifiers.index(amplifier)
+            index = self.system.amplifiers.index(amplifier)
             ratio = return_ratio(self.system, self.modes, index)
-            judged = self.system.linear[:, index] & self.points.converged
+            judged = self.system.linear[:, index] & self.system.converged
             self._margins[amplifier] = margins(ratio, self.modes.frequency, judged)
         return self._margins[amplifier]
-
-    @property
-    def judged(self) -> BoolArray:
-        """Conditions at which stability is judged: every amplifier that is ever linear is so, shape (conditions,)."""
-        return judged_conditions(self.points, self.system)
 
     @cached_property
     def participation(self) -> BoolArray:
@@ -181,7 +171,7 @@ class CircuitLoops:
         right = self.modes.right[rows, :, self._critical]
         share = np.abs(right * self.modes.left[rows, self._critical, :])
         place = {int(c): i for i, c in enumerate(self.modes.columns)}
-        own = np.zeros((len(rows), len(self.points.network.amplifiers)))
+        own = np.zeros((len(rows), len(self.system.amplifiers)))
         for i in range(own.shape[1]):
             for column in (self.system.state_columns[i], self.system.internal_columns[i]):
                 if int(column) in place:
@@ -191,46 +181,35 @@ class CircuitLoops:
         return taking_part
 
 
-def judged_conditions(points: Solution, system: SmallSignal) -> BoolArray:
-    """Converged conditions at which no amplifier is saturated, those left out that always are."""
-    ever = system.linear[points.converged].any(axis=0)
-    judged: BoolArray = points.converged & (system.linear | ~ever).all(axis=1)
-    return judged
-
-
-def analyse_loops(points: Solution, system: SmallSignal | None = None) -> CircuitLoops:
+def analyse_loops(system: SmallSignal) -> CircuitLoops:
     """Natural frequencies at every operating point, and loops to ask margins of.
 
     Parameters
     ----------
-    points : Solution
-    system : SmallSignal, optional
-        The linearised network, where a changed one is to be analysed.
+    system : SmallSignal
 
     Returns
     -------
     CircuitLoops
     """
-    system = linearise(points) if system is None else system
-    system = _stand_in(system, points.converged)
+    system = _stand_in(system)
     modes = find_modes(system)
-    widest = max(
-        (float(points.parameters.of(r, "gain_bandwidth").max()) for r in points.network.amplifiers),
-        default=np.inf,
-    )
-    rightmost, damping, frequency, critical = _judge(modes, 2 * np.pi * widest * DAMPING_SPAN)
-    blank = [np.where(points.converged, a, np.nan) for a in (rightmost, damping, frequency)]
-    return CircuitLoops(points, system, modes, blank[0], blank[1], blank[2], critical)
+    rightmost, damping, frequency, critical = _judge(modes, 2 * np.pi * system.widest * DAMPING_SPAN)
+    blank = [np.where(system.converged, a, np.nan) for a in (rightmost, damping, frequency)]
+    return CircuitLoops(system, modes, blank[0], blank[1], blank[2], critical)
 
 
-def _stand_in(system: SmallSignal, converged: BoolArray) -> SmallSignal:
+def _stand_in(system: SmallSignal) -> SmallSignal:
     """Give points that did not converge a harmless matrix, so that they do not stop the batch."""
-    if converged.all():
+    if system.converged.all():
         return system
+    solved = system.converged[:, None, None]
     harmless = np.eye(system.conductance.shape[-1])
-    g = np.where(converged[:, None, None], system.conductance, harmless)
-    c = np.where(converged[:, None, None], system.capacitance, harmless)
-    return SmallSignal(g, c, system.output_rows, system.internal_columns, system.state_columns, system.linear)
+    return replace(
+        system,
+        conductance=np.where(solved, system.conductance, harmless),
+        capacitance=np.where(solved, system.capacitance, harmless),
+    )
 
 
 def damping_of(frequency: ComplexArray, fastest: float) -> Array:

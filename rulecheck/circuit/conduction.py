@@ -11,6 +11,8 @@ from .feedback import FeedbackLoop, Step
 from .sources import direction
 from .wiring import TRANSISTORS, Wiring
 
+LEAST_FORWARD = 0.3  # V: what a junction needs to be taken as conducting
+
 
 @dataclass(frozen=True, slots=True)
 class Route:
@@ -72,7 +74,8 @@ def conduction(
     Notes
     -----
     In an amplifier's feedback a transistor takes precedence over diodes and resistors over diodes alone: the
-    diodes are clamps then. Of opposite directions that of the current counts, where it is unknown the first.
+    diodes are clamps then. Of opposite directions that of the current counts; where it is unknown the first,
+    but none where resistors make a rectifier of them.
     Elsewhere a diode is at work if it leads a signal into a summing node, makes the reference of a mirror, or
     is the only way on for the current of its net.
     """
@@ -128,6 +131,8 @@ def _at_work(wiring: Wiring, routes: list[Route], levels: Mapping[str, float], k
         return by_direction[1] + by_direction[-1]
     own = {step.part for route in routes for step in route.steps}
     wanted = direction(wiring, levels, wiring.point_of[through[0].net], own)
+    if not wanted and any(len(route.steps) > len(_junctions(wiring, route)) for route in through):
+        return []  # a rectifier: either branch conducts in its turn
     return by_direction[wanted or _direction(wiring, through[0])]
 
 
@@ -170,12 +175,36 @@ def _add_needed(
 def _is_needed(
     wiring: Wiring, ref: str, at_work: set[str], held: Mapping[str, str], levels: Mapping[str, float]
 ) -> bool:
-    a, b = current_path(wiring, ref)
-    if a in levels and b in levels:
+    ends = _series_ends(wiring, ref)
+    if ends is None:
         return False
-    if any(here in held and not wiring.is_driven(here) for here in (a, b)):
+    if ends[0] in levels and ends[1] in levels:
+        return levels[ends[0]] - levels[ends[1]] > LEAST_FORWARD
+    if any(here in held and not wiring.is_driven(here) for here in ends):
         return True  # it leads a signal into a summing node
-    return _is_mirror(wiring, ref) or any(_goes_on(wiring, ref, point, at_work) for point in (a, b))
+    return _is_mirror(wiring, ref) or any(_goes_on(wiring, ref, point, at_work) for point in current_path(wiring, ref))
+
+
+def _series_ends(wiring: Wiring, ref: str) -> tuple[str, str] | None:
+    """Ends of the string of diodes in series that one belongs to; None where they oppose each other."""
+    found = []
+    for side, point in enumerate(current_path(wiring, ref)):
+        seen = {ref}
+        while (others := [r for r in wiring.carriers_at(point) if r not in seen]) and len(others) == 1:
+            ends = current_path(wiring, others[0]) if _is_diode(wiring, others[0]) else None
+            if ends is None or wiring.is_driven(point):
+                break
+            if ends[1 - side] != point:
+                return None
+            seen.add(others[0])
+            point = ends[side]
+        found.append(point)
+    return found[0], found[1]
+
+
+def _is_diode(wiring: Wiring, ref: str) -> bool:
+    part = wiring.design.parts.get(ref)
+    return part is not None and part.kind in ("diode", *TRANSISTORS) and is_diode_like(wiring, ref)
 
 
 def _is_mirror(wiring: Wiring, ref: str) -> bool:
@@ -194,6 +223,4 @@ def _goes_on(wiring: Wiring, ref: str, point: str, at_work: set[str]) -> bool:
     others = [other for other in wiring.carriers_at(point) if other != ref]
     if len(others) != 1:
         return False
-    other = wiring.design.parts.get(others[0])
-    waits = other is not None and other.kind in ("diode", *TRANSISTORS) and is_diode_like(wiring, others[0])
-    return not waits or others[0] in at_work
+    return not _is_diode(wiring, others[0]) or others[0] in at_work

@@ -133,17 +133,16 @@ class _Search:
                 arrived = nets[-1] == self.pins[pin] and self.wiring.point_of[nets[-1]] not in self.wiring.known
                 if arrived and counts[pin] < MOST_PATHS:
                     counts[pin] += 1
-                    yield FeedbackLoop(self.amplifier, pin, tuple(s.part for s in steps), nets, steps)
+                    yield FeedbackLoop(self.amplifier, pin, tuple(dict.fromkeys(s.part for s in steps)), nets, steps)
             if len(steps) < LONGEST_PATH and (len(nets) == 1 or self._passes(nets[-1], steps)):
                 queue.extend(self._longer(nets, steps))
 
     def _passes(self, net: str, steps: tuple[Step, ...]) -> bool:
         """Whether a signal goes on from a net that it has reached."""
         point = self.wiring.point_of[net]
-        if point in self.wiring.known or self.held.get(point) == self.amplifier:
+        if point in self.wiring.known:
             return False
-        arrived_at_output = steps[-1].exit == "OUT"
-        return arrived_at_output or not self.wiring.is_driven(point)
+        return steps[-1].exit == "OUT" or not self.wiring.is_driven(point) or self._is_along(steps[-1])
 
     def _longer(
         self, nets: tuple[str, ...], steps: tuple[Step, ...]
@@ -151,18 +150,15 @@ class _Search:
         holder = self.held.get(self.wiring.point_of[nets[-1]]) if len(nets) > 1 else None
         through = bool(steps) and steps[-1].exit == "OUT"
         for step in self._steps_from(nets[-1]):
-            if holder is not None and not through and not self._stays(step, nets[-1], holder):
+            if holder is not None and not through and step.part != holder and not self._is_along(step):
                 continue
             net = self.wiring.design.parts[step.part].pins[step.exit]
-            if net not in nets and all(step.part != other.part for other in steps):
+            if net not in nets and all(_way(step) != _way(other) for other in steps):
                 yield (*nets, net), (*steps, step)
 
-    def _stays(self, step: Step, net: str, holder: str) -> bool:
-        """Whether a step from a held net goes into its amplifier, or along the held point."""
-        if step.part == holder:
-            return True
-        beyond = self.wiring.design.parts[step.part].pins[step.exit]
-        return self.wiring.point_of[beyond] == self.wiring.point_of[net]
+    def _is_along(self, step: Step) -> bool:
+        """Whether a step stays on its point, through a link or a resistor without current."""
+        return self.wiring.point(step.part, step.entry) == self.wiring.point(step.part, step.exit)
 
     def _steps_from(self, net: str) -> Iterator[Step]:
         for ref, pin in self.wiring.pins_on.get(net, ()):
@@ -170,6 +166,12 @@ class _Search:
                 continue
             for exit_pin in exits(self.wiring, ref, pin):
                 yield Step(ref, pin, exit_pin)
+
+
+def _way(step: Step) -> tuple[str, ...]:
+    """What a path takes once: a part, of a potentiometer the half."""
+    is_half = "WIPER" in (step.entry, step.exit)
+    return (step.part, *sorted((step.entry, step.exit))) if is_half else (step.part,)
 
 
 def exits(wiring: Wiring, ref: str, pin: str) -> tuple[str, ...]:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
@@ -90,7 +90,7 @@ def junction_loops(
     reader = _Reader(wiring, rows)
     found: list[JunctionLoop] = []
     for relation in junction_relations(rows, outputs, junctions, Distances(wiring, graph)):
-        loop = reader.read(relation, junctions)
+        loop = reader.read(relation)
         if loop is not None:
             _add(found, loop)
     place = {ref: i for i, ref in enumerate(junctions)}
@@ -117,6 +117,7 @@ class _Reader:
 
     def __init__(self, wiring: Wiring, rows: list[Row]) -> None:
         self.wiring = wiring
+        self.place = {name: i for i, name in enumerate(dict.fromkeys([*wiring.design.nets, *wiring.design.parts]))}
         self.carrying = {
             name.removeprefix("sum ")
             for row in rows
@@ -125,10 +126,11 @@ class _Reader:
             if kind == "eq"
         }
 
-    def read(self, relation: Relation, order: Iterable[str]) -> JunctionLoop | None:
+    def read(self, relation: Relation) -> JunctionLoop | None:
         """Read a relation as a loop; None where it only says how a junction is biased."""
         row = relation.row
-        weights = {ref: float(row["v", ref]) for ref in order if ("v", ref) in row}
+        refs = sorted((name for kind, name in row if kind == "v"), key=self.place.__getitem__)
+        weights = {ref: float(row["v", ref]) for ref in refs}
         least = NEGLIGIBLE * max(map(abs, weights.values()))
         weights = {ref: weight for ref, weight in weights.items() if abs(weight) > least}
         first = next(iter(weights.values()))
@@ -165,9 +167,8 @@ class _Reader:
 
     def _named(self, row: Row, *, inputs: bool) -> tuple[str, ...]:
         design = self.wiring.design
-        names = {name for kind, name in row if kind in "KS"}
-        ordered = dict.fromkeys(name for name in [*design.nets, *design.parts] if name in names)
-        return tuple(name for name in ordered if (name in design.inputs) == inputs)
+        names = {name for kind, name in row if kind in "KS" and (name in design.inputs) == inputs}
+        return tuple(sorted(names, key=self.place.__getitem__))
 
     def _outputs(self, relation: Relation) -> tuple[str, ...]:
         if relation.output is None:
@@ -176,22 +177,25 @@ class _Reader:
         return tuple(net for net in nets if self.wiring.design.nets[net].role == "output")
 
     def _amplifiers(self, row: Row) -> tuple[str, ...]:
-        return tuple(amp for amp in self.wiring.amplifiers() if ("eq", f"held {amp}") in row)
+        held = (name.removeprefix("held ") for kind, name in row if kind == "eq" and name.startswith("held "))
+        return tuple(sorted(held, key=self.place.__getitem__))
 
     def _resistors(self, row: Row) -> tuple[tuple[str, ...], tuple[str, ...]]:
         """Resistors that the relation rests on: those that weigh, and those in a junction's current.
 
         A resistor matters where the current sums of its two ends count differently in the relation.
         """
-        shares = {name.removeprefix("sum "): v for (kind, name), v in row.items() if name.startswith("sum ")}
-        shifts: dict[str, None] = {}
-        drops: dict[str, None] = {}
-        for resistance in self.wiring.resistances:
-            ends = [point for point in (resistance.a, resistance.b) if point in shares]
-            if resistance.part and shares.get(resistance.a, 0) != shares.get(resistance.b, 0):
-                carries = any(point in self.carrying for point in ends)
-                (drops if carries else shifts)[resistance.part] = None
-        return tuple(shifts), tuple(drops)
+        shares = {
+            name.removeprefix("sum "): v for (kind, name), v in row.items() if kind == "eq" and name.startswith("sum ")
+        }
+        shifts: set[str] = set()
+        drops: set[str] = set()
+        for point in shares:
+            for resistance in self.wiring.resistances_at.get(point, ()):
+                if resistance.part and shares.get(resistance.a, 0) != shares.get(resistance.b, 0):
+                    carries = any(end in shares and end in self.carrying for end in (resistance.a, resistance.b))
+                    (drops if carries else shifts).add(resistance.part)
+        return tuple(sorted(shifts, key=self.place.__getitem__)), tuple(sorted(drops, key=self.place.__getitem__))
 
     def _term(self, kind: str, name: str) -> str:
         return f"I({name})" if kind == "I" else name

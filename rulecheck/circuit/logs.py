@@ -8,6 +8,7 @@ from typing import Literal
 
 from .conduction import Route
 from .constraints import is_diode_like, junction_ends
+from .feedback import Step
 from .junctions import JunctionLoop
 from .wiring import TRANSISTORS, Wiring
 
@@ -70,7 +71,7 @@ def log_elements(wiring: Wiring, routes: Iterable[Route]) -> tuple[tuple[LogTran
     transistors: dict[str, LogTransistor] = {}
     diodes: dict[str, LogDiode] = {}
     for route in routes:
-        for step in route.steps:
+        for step in _from_summing_node(wiring, route):
             part = wiring.design.parts[step.part]
             if part.kind == "diode":
                 diodes.setdefault(step.part, LogDiode(step.part, route.amplifier, route.net))
@@ -80,6 +81,15 @@ def log_elements(wiring: Wiring, routes: Iterable[Route]) -> tuple[tuple[LogTran
         tuple(transistors[ref] for ref in wiring.design.parts if ref in transistors),
         tuple(diodes[ref] for ref in wiring.design.parts if ref in diodes),
     )
+
+
+def _from_summing_node(wiring: Wiring, route: Route) -> Iterator[Step]:
+    """Steps from the summing node back as far as no resistor with a drop comes between."""
+    for step in reversed(route.steps):
+        if wiring.point(step.part, step.entry) != wiring.point(step.part, step.exit):
+            if wiring.design.parts[step.part].kind not in ("diode", *TRANSISTORS):
+                return
+            yield step
 
 
 def _log_transistor(wiring: Wiring, route: Route, ref: str, entry: str) -> LogTransistor | None:

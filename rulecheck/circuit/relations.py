@@ -24,8 +24,9 @@ class Relation:
 def fixed_voltages(rows: Iterable[Row], is_fixed: Callable[[Column], bool]) -> dict[str, Row]:
     """Voltages of points that only fixed quantities set, as coefficients of their columns, by point."""
     found: dict[str, Row] = {}
-    bare = ({c: v for c, v in row.items() if c[0] != "eq"} for row in rows)
-    for block in blocks(bare, lambda column: column[0] in "VJIv"):
+    linear = (row for row in rows if not _junctions(row))
+    bare = ({c: v for c, v in row.items() if c[0] != "eq"} for row in linear)
+    for block in blocks(bare, lambda column: column[0] in "VJI"):
         columns = [c for kind in "VJI" for c in _columns(block, kind)]
         for column, row in reduced(block, columns, _cost).items():
             others = {c: -value for c, value in row.items() if c != column}
@@ -89,7 +90,7 @@ def _count(row: Row, kinds: str) -> int:
 
 def _cost(row: Row) -> tuple[int, int]:
     """Cost of defining a voltage by a row: relations between voltages alone come first."""
-    return _count(row, "IKS"), _count(row, "VJIvKS")
+    return _count(row, "I"), _count(row, "VJIvKS")
 
 
 def _length(row: Row, place: dict[str, int]) -> tuple[Any, ...]:

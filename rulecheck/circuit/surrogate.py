@@ -7,8 +7,8 @@ figures of a real operating point are not needed for that.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
-from dataclasses import dataclass
+from collections.abc import Iterable, Iterator, Mapping
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
@@ -63,17 +63,47 @@ def dc_feedback(wiring: Wiring, junctions: Iterable[str]) -> tuple[Feedback, ...
     -----
     With all amplifiers at work, a unit offset at one amplifier moves its output and, by way of the circuit,
     its inputs; the moves of its inputs per move of its output are those with the amplifier held and its
-    output stepped, because no other row of the equations changes.
+    output stepped, because no other row of the equations changes. Which input is led is read off with the
+    other amplifiers at rest where its own feedback reaches it so: a follower inside another loop is one.
     """
-    junctions = list(junctions)
-    found: dict[str, Feedback] = {}
-    for group in _separate(wiring, junctions):
-        found |= {feedback.amplifier: feedback for feedback in _solve(wiring, junctions, group)}
-    return tuple(found[amp] for amp in wiring.amplifiers())
+    stamps = list(_stamps(wiring, junctions))
+    follows = {amp: tuple(wiring.point(amp, pin) for pin in ("OUT", "IN+", "IN-")) for amp in wiring.amplifiers()}
+    group_of = _groups(wiring, stamps, follows)
+    groups: dict[str, _Group] = {}
+    for point, group in group_of.items():
+        groups.setdefault(group, _Group()).points.append(point)
+    for stamp in stamps:
+        for group in dict.fromkeys(group_of[p] for p in (*stamp.path, *stamp.lead) if p in group_of):
+            groups[group].stamps.append(stamp)
+    for amp, points in follows.items():
+        for group in dict.fromkeys(group_of[p] for p in points if p in group_of):
+            groups[group].amplifiers[amp] = points
+    found = {amp: Feedback(amp, 0, "IN-") for amp in follows}
+    for members in groups.values():
+        found |= {feedback.amplifier: feedback for feedback in _solve(members)}
+    return tuple(found.values())
 
 
-def _separate(wiring: Wiring, junctions: list[str]) -> list[list[str]]:
-    """Points sorted into groups that no part joins; only groups with an amplifier."""
+@dataclass(frozen=True, slots=True)
+class _Stamp:
+    """A conductance: current along a path of two points, led by the voltage between two points."""
+
+    path: tuple[str, str]
+    lead: tuple[str, str]
+    conductance: float
+
+
+@dataclass(frozen=True, slots=True)
+class _Group:
+    """Points that parts join, with their conductances and the amplifiers by output and inputs."""
+
+    points: list[str] = field(default_factory=list)
+    stamps: list[_Stamp] = field(default_factory=list)
+    amplifiers: dict[str, tuple[str, ...]] = field(default_factory=dict)
+
+
+def _groups(wiring: Wiring, stamps: list[_Stamp], follows: Mapping[str, tuple[str, ...]]) -> dict[str, str]:
+    """Points that no source holds, each with the first of those that parts join it to."""
     parent = {point: point for point in wiring.nets_at if point not in wiring.known}
 
     def find(point: str) -> str:
@@ -81,88 +111,76 @@ def _separate(wiring: Wiring, junctions: list[str]) -> list[list[str]]:
             parent[point] = point = parent[parent[point]]
         return point
 
-    for points in _joined(wiring, junctions):
+    for points in [*((*stamp.path, *stamp.lead) for stamp in stamps), *follows.values()]:
         free = [find(point) for point in points if point in parent]
         for point in free[1:]:
             parent[find(point)] = find(free[0])
-    groups: dict[str, list[str]] = {}
-    for point in parent:
-        groups.setdefault(find(point), []).append(point)
-    return list(groups.values())
+    return {point: find(point) for point in parent}
 
 
-def _joined(wiring: Wiring, junctions: list[str]) -> Iterable[tuple[str, ...]]:
-    for resistance in wiring.resistances:
-        yield resistance.a, resistance.b
-    for ref in [*junctions, *wiring.parts("voltage-source")]:
-        yield tuple(wiring.point_of[net] for net in wiring.design.parts[ref].pins.values())
-    for amp in wiring.amplifiers():
-        yield tuple(wiring.point(amp, pin) for pin in ("IN+", "IN-", "OUT"))
-
-
-def _solve(wiring: Wiring, junctions: list[str], group: list[str]) -> Iterable[Feedback]:
-    place = {point: i for i, point in enumerate(group)}
-    amplifiers = [a for a in wiring.amplifiers() if any(wiring.point(a, p) in place for p in ("IN+", "IN-", "OUT"))]
-    if not amplifiers:
+def _solve(group: _Group) -> Iterable[Feedback]:
+    if not group.amplifiers:
         return []
-    matrix = _conductances(wiring, junctions, place)
+    place = {point: i for i, point in enumerate(group.points)}
+    matrix = _conductances(group, place)
     matrix /= np.abs(matrix).max(axis=1, keepdims=True)
-    steps = np.zeros((matrix.shape[0], len(amplifiers)))
     outputs: dict[str, int] = {}
-    for column, amp in enumerate(amplifiers):
-        row = place.get(wiring.point(amp, "OUT"))
-        if row is None or row in outputs.values():
-            continue  # an output tied to a source or to another output follows nothing
-        outputs[amp] = row
-        matrix[row] = 0.0
-        matrix[row, row] = 1.0 / GAIN
-        for pin, sign in (("IN+", -1.0), ("IN-", 1.0)):
-            if (other := place.get(wiring.point(amp, pin))) is not None:
-                matrix[row, other] += sign
-        steps[row, column] = 1.0
-    moves = np.linalg.solve(matrix, steps)
-    return [_read(wiring, amp, moves[:, column], place, outputs) for column, amp in enumerate(amplifiers)]
+    for amp, (output, _, _) in group.amplifiers.items():
+        if output in place and place[output] not in outputs.values():
+            outputs[amp] = place[output]  # an output tied to a source or to another output follows nothing
+    steps = np.zeros((len(place), len(outputs)))
+    steps[list(outputs.values()), range(len(outputs))] = 1.0
+    at_rest, at_work = matrix, matrix.copy()
+    for amp, row in outputs.items():
+        at_rest[row], at_work[row] = 0.0, 0.0
+        at_rest[row, row], at_work[row, row] = 1.0, 1.0 / GAIN
+        for point, sign in zip(group.amplifiers[amp][1:], (-1.0, 1.0), strict=True):
+            if point in place:
+                at_work[row, place[point]] += sign
+    alone, together = np.linalg.solve(at_rest, steps), np.linalg.solve(at_work, steps)
+    found = []
+    for i, (amp, row) in enumerate(outputs.items()):
+        inputs = [place.get(point) for point in group.amplifiers[amp][1:]]
+        found.append(_read(amp, _led(alone[:, i], row, inputs), _led(together[:, i], row, inputs)))
+    return found
 
 
-def _read(wiring: Wiring, amp: str, moves: Floats, place: dict[str, int], outputs: dict[str, int]) -> Feedback:
-    if amp not in outputs or moves[outputs[amp]] == 0.0:
-        return Feedback(amp, 0, "IN-")
-    led = {
-        pin: sign * float(moves[place[point]] / moves[outputs[amp]])
-        if (point := wiring.point(amp, pin)) in place
-        else 0.0
-        for pin, sign in (("IN-", 1.0), ("IN+", -1.0))
-    }
-    total = led["IN-"] + led["IN+"]
+def _led(moves: Floats, output: int, inputs: list[int | None]) -> dict[str, float]:
+    """What each input adds to the return of the output, per move of the output; negative feedback is positive."""
+    if moves[output] == 0.0:
+        return {"IN-": 0.0, "IN+": 0.0}
+    plus, minus = (float(moves[row] / moves[output]) if row is not None else 0.0 for row in inputs)
+    return {"IN-": minus, "IN+": -plus}
+
+
+def _read(amp: str, alone: dict[str, float], together: dict[str, float]) -> Feedback:
+    total = sum(together.values())
     sign = 0 if abs(total) < LEAST_RESPONSE else 1 if total > 0 else -1
-    return Feedback(amp, sign, "IN-" if sign * led["IN-"] >= sign * led["IN+"] else "IN+")
+    judged = alone if max(sign * led for led in alone.values()) > LEAST_RESPONSE else together
+    return Feedback(amp, sign, max(judged, key=lambda pin: sign * judged[pin]))
 
 
-def _conductances(wiring: Wiring, junctions: list[str], place: dict[str, int]) -> Floats:
+def _conductances(group: _Group, place: dict[str, int]) -> Floats:
     """Nodal conductances of the points in `place`; points held by sources are at rest."""
     matrix = np.eye(len(place)) * LEAST_CONDUCTANCE
-    for (source, sink), (positive, negative), conductance in _stamps(wiring, junctions):
-        for row, sign in ((source, 1.0), (sink, -1.0)):
-            for column, direction in ((positive, 1.0), (negative, -1.0)):
+    for stamp in group.stamps:
+        for row, sign in zip(stamp.path, (1.0, -1.0), strict=True):
+            for column, direction in zip(stamp.lead, (1.0, -1.0), strict=True):
                 if row in place and column in place:
-                    matrix[place[row], place[column]] += sign * direction * conductance
+                    matrix[place[row], place[column]] += sign * direction * stamp.conductance
     return matrix
 
 
-Stamp = tuple[tuple[str, str], tuple[str, str], float]
-
-
-def _stamps(wiring: Wiring, junctions: list[str]) -> Iterator[Stamp]:
-    """Points that a current flows between, points whose voltage leads it, and the conductance."""
+def _stamps(wiring: Wiring, junctions: Iterable[str]) -> Iterator[_Stamp]:
     for resistance in wiring.resistances:
         ends = resistance.a, resistance.b
-        yield ends, ends, float(1 / resistance.ohm)
+        yield _Stamp(ends, ends, float(1 / resistance.ohm))
     for ref in wiring.parts("voltage-source"):
         if points := wiring.two_points(ref):
-            yield points, points, STIFF
+            yield _Stamp(points, points, STIFF)
     conductance = CURRENT / THERMAL_VOLTAGE
     for ref in junctions:
         if junction := junction_ends(wiring, ref):
-            yield current_path(wiring, ref), junction, conductance
+            yield _Stamp(current_path(wiring, ref), junction, conductance)
             if not is_diode_like(wiring, ref):
-                yield junction, junction, conductance / FORWARD_BETA
+                yield _Stamp(junction, junction, conductance / FORWARD_BETA)

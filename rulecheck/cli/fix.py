@@ -83,7 +83,7 @@ def _apply(path: Path, old: str, fixed: Fixed, preview: bool, on: dt.date) -> St
     from rulecheck.design.edit import write_atomically
     from rulecheck.report.remedies_text import render_fixed, unified_diff
 
-    after = fixed.review.report(with_trials=False)
+    after = fixed.review.report(try_remedies=False)
     if preview:
         emit(unified_diff(old, fixed.text, str(path)))
         return _failures(after)

@@ -14,7 +14,7 @@ Command = TypeVar("Command", bound=Callable[..., Any])
 ON = "--on"
 
 
-class Day(click.ParamType):
+class Day(click.ParamType[dt.date]):
     """A date as TOML writes it."""
 
     name = "date"

@@ -141,5 +141,3 @@ def _check_concessions(tables: Tables, problems: Problems) -> None:
         if not concession.rule and not concession.finding:
             message = "'rule' is missing; a concession names a rule, or the id of a finding"
             problems.add([*path, "rule"], message)
-
-

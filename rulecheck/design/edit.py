@@ -148,9 +148,7 @@ def _add(document: Document, path: KeyPath, table: Toml) -> tuple[str, list[Toml
         value = [table] if path in _ARRAYS else table
         return insert(document, path, value), [_with(document.data, path, value)]
     old = value_at(document.data, path)
-    tables = isinstance(old, list) and (
-        path in _ARRAYS or (old and all(isinstance(one, dict) for one in old))
-    )
+    tables = isinstance(old, list) and (path in _ARRAYS or (old and all(isinstance(one, dict) for one in old)))
     if not isinstance(old, list) or not tables or any(_same(table, one) for one in old):
         raise EditError(f"Add {join_key(path)}: it is there already (line {_line(document, path)})")
     path = (*path, str(len(old)))
@@ -226,9 +224,7 @@ def write_atomically(path: Path | str, text: str, expected: str) -> None:
         target = Path(path).resolve(strict=True)
         old = target.read_bytes()
         if old.removeprefix(codecs.BOM_UTF8) != expected.removeprefix(BYTE_ORDER_MARK).encode():
-            raise EditError(
-                f"{path} was changed by someone else in the meantime; nothing was written", "read it again"
-            )
+            raise EditError(f"{path} was changed by someone else in the meantime; nothing was written", "read it again")
         mark = codecs.BOM_UTF8 if old.startswith(codecs.BOM_UTF8) else b""
         _replace(target, mark + text.removeprefix(BYTE_ORDER_MARK).encode())
     except (OSError, UnicodeError) as error:

@@ -9,7 +9,6 @@ from collections.abc import Callable, Iterable, Mapping
 from typing import Annotated, Any, ClassVar
 
 from pydantic import (
-    AfterValidator,
     BaseModel,
     BeforeValidator,
     ConfigDict,
@@ -103,23 +102,31 @@ def did_you_mean(word: object, allowed: Iterable[str]) -> str:
     return f"did you mean {near[0]!r}?" if near else ""
 
 
-def _ends(value: Spread | float) -> tuple[float, float]:
-    return (value.min, value.max) if isinstance(value, Spread) else (value, value)
+class _Bound:
+    """Annotation of a quantity, after its unit: what all of its spread must satisfy."""
 
+    def __init__(self, fits: Callable[[float, float], bool], allowed: str) -> None:
+        self.fits = fits
+        self.allowed = allowed
 
-def _check_ends(fits: Callable[[float, float], bool], allowed: str) -> AfterValidator:
-    def check(value: Any) -> Any:  # noqa: ANN401
-        if value is not None and not fits(*_ends(value)):
-            raise PydanticCustomError(OUT_OF_BOUNDS, "{message}", {"message": allowed})
+    def check(self, value: Any) -> Any:  # noqa: ANN401
+        """The value, where it fits."""
+        ends = (value.min, value.max) if isinstance(value, Spread) else (value, value)
+        if value is not None and not self.fits(*ends):
+            raise PydanticCustomError(OUT_OF_BOUNDS, "{message}", {"message": self.allowed})
         return value
 
-    return AfterValidator(check)
+    def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:  # noqa: ANN401
+        inner = handler(source)
+        # The unit describes itself by what stands outermost, and must find there what it left within.
+        metadata = {"spread": inner.get("metadata", {}).get("spread", False)}
+        return core_schema.no_info_after_validator_function(self.check, inner, metadata=metadata)
 
 
-POSITIVE = _check_ends(lambda low, _: low > 0.0, "it must be greater than zero")
-NON_NEGATIVE = _check_ends(lambda low, _: low >= 0.0, "it must not be negative")
-FRACTION = _check_ends(lambda low, high: low >= 0.0 and high <= 1.0, "it lies from 0 to 1")
-TOLERANCE = _check_ends(lambda low, high: low >= 0.0 and high < 1.0, "a tolerance lies from 0 to below 100 %")
+POSITIVE = _Bound(lambda low, _: low > 0.0, "it must be greater than zero")
+NON_NEGATIVE = _Bound(lambda low, _: low >= 0.0, "it must not be negative")
+FRACTION = _Bound(lambda low, high: low >= 0.0 and high <= 1.0, "it lies from 0 to 1")
+TOLERANCE = _Bound(lambda low, high: low >= 0.0 and high < 1.0, "a tolerance lies from 0 to below 100 %")
 
 
 def _read_date(value: object) -> dt.date:

@@ -111,10 +111,7 @@ def _insert_after(document: Document, sibling: Entry, parent: KeyPath, pairs: Ma
     shared = len(parent) - sibling.context
     prefix = text[sibling.start : sibling.keys[shared - 1][1]] + "." if shared else ""
     indent = text[document.line_start(sibling.start) : sibling.start]
-    lines = [
-        indent + _assignment(document, prefix + name, sibling) + to_toml(value)
-        for name, value in pairs.items()
-    ]
+    lines = [indent + _assignment(document, prefix + name, sibling) + to_toml(value) for name, value in pairs.items()]
     return _insert_lines(document, document.line_end(sibling.end), lines)
 
 

@@ -40,9 +40,7 @@ def load_text(text: str, path: Path | str) -> Design:
     tables, names = read_tables(source.data, problems), find_names(source.data)
     catalogue = read_catalogues(source, path.parent)
     check_tables(tables, names, catalogue, problems)
-    requirements = {
-        name: read_requirement(name, table, names, problems) for name, table in tables.requirements.items()
-    }
+    requirements = {name: read_requirement(name, table, names, problems) for name, table in tables.requirements.items()}
     found = problems.found + catalogue.problems
     if found:
         raise DesignError(_in_order(found, source.file))

@@ -24,7 +24,7 @@ _BLANKS = re.compile(r"[ \t]*")
 _TRIVIA = re.compile(r"(?:[ \t\r\n]+|#[^\n]*)*")
 _KEY = re.compile(r'[A-Za-z0-9_-]+|"(?:[^"\\\n]|\\.)*"|\'[^\'\n]*\'')
 _SCALAR = re.compile(
-    r'"""(?:[^\\]|\\.)*?"""(?:"{0,2})'  # up to two quotation marks may stand before the closing three
+    r'"""(?:[^"\\]++|\\.|"{1,2}(?!"))*+""""{0,2}'  # up to two quotation marks may stand before the closing three
     r"|'''.*?'''(?:'{0,2})"
     r'|"(?:[^"\\\n]|\\.)*"'
     r"|'[^'\n]*'"
@@ -99,9 +99,7 @@ class Spans(Mapping[KeyPath, Span]):
         Per array or inline table, its elements or pairs.
     """
 
-    def __init__(
-        self, text: str, entries: Sequence[Entry], children: Mapping[KeyPath, tuple[Entry, ...]]
-    ) -> None:
+    def __init__(self, text: str, entries: Sequence[Entry], children: Mapping[KeyPath, tuple[Entry, ...]]) -> None:
         self.entries = tuple(entries)
         self.children = children
         self._line_starts = [0, *(match.end() for match in re.finditer("\n", text))]

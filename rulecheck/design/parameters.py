@@ -3,11 +3,10 @@
 from __future__ import annotations
 
 import math
-from typing import Annotated, Any, ClassVar, Literal
+from typing import Annotated, ClassVar, Literal
 
-from pydantic import BeforeValidator
-
-from rulecheck.design.fields import NON_NEGATIVE, POSITIVE, Flag, Range, Table, Text, fault, key, required
+from rulecheck.design.fields import NON_NEGATIVE, POSITIVE, Flag, Range, Table, Text, key, required
+from rulecheck.errors import QuantityError
 from rulecheck.units import Spread, Unit
 
 ZERO = Spread.exactly(0.0)
@@ -54,13 +53,9 @@ class TransistorParameters(Parameters):
         "exponent of the current gains in absolute temperature (1.5)", _exactly(1.5)
     )
     early_voltage: Annotated[Spread, Unit("V"), POSITIVE] = key("Early voltage (infinite)", INFINITE)
-    knee_current: Annotated[Spread, Unit("A"), POSITIVE] = key(
-        "knee current of high injection (infinite)", INFINITE
-    )
+    knee_current: Annotated[Spread, Unit("A"), POSITIVE] = key("knee current of high injection (infinite)", INFINITE)
     leakage_saturation_current: Leakage = key("saturation current of the base leakage junction (0)", ZERO)
-    leakage_emission_coefficient: Plain = key(
-        "emission coefficient of the base leakage junction (2)", _exactly(2.0)
-    )
+    leakage_emission_coefficient: Plain = key("emission coefficient of the base leakage junction (2)", _exactly(2.0))
     bulk_emitter_resistance: Ohms = key("resistance in the emitter, which bends the log law (0)", ZERO)
     base_resistance: Ohms = key("resistance in the base (0)", ZERO)
     collector_resistance: Ohms = key("resistance in the collector (0)", ZERO)
@@ -119,13 +114,16 @@ class Headroom(Table):
     high: Annotated[Spread, Unit("V")] = required("least distance from V+")
 
 
-def _from_nothing(value: Any) -> Any:  # noqa: ANN401
-    """A total supply stated by its greatest value alone begins at zero; its least alone is no range."""
-    if not isinstance(value, dict):
-        return value
-    if "max" not in value:
-        raise fault("the greatest total supply, max, is missing; { min, max } is expected")
-    return {"min": "0 V", **value}
+class _TotalSupply(Unit):
+    """A total supply: stated by its greatest value alone it begins at zero, its least alone is no range."""
+
+    def read_spread(self, value: object) -> Spread:
+        """Spread of the table."""
+        if isinstance(value, dict):
+            if "max" not in value:
+                raise QuantityError("the greatest total supply, max, is missing; { min, max } is expected")
+            value = {"min": "0 V", **value}
+        return super().read_spread(value)
 
 
 class AmplifierParameters(Parameters):
@@ -137,18 +135,14 @@ class AmplifierParameters(Parameters):
         'open-loop gain at DC, 8e5 or "118 dB"; must be known of every amplifier'
     )
     gain_bandwidth: Hertz = key("gain-bandwidth product; must be known of every amplifier")
-    second_pole: Annotated[Spread, Unit("Hz"), POSITIVE] = key(
-        "second pole of the open-loop gain (infinite)", INFINITE
-    )
+    second_pole: Annotated[Spread, Unit("Hz"), POSITIVE] = key("second pole of the open-loop gain (infinite)", INFINITE)
     output_resistance: Ohms = key("open-loop output resistance (0)", ZERO)
     input_capacitance: Farads = key("capacitance between the inputs (0)", ZERO)
     common_mode_capacitance: Farads = key("capacitance of each input to ground (0)", ZERO)
     offset_voltage: VoltageLimit = key("± offset voltage")
     offset_drift: DriftLimit = key("± drift of the offset voltage")
     bias_current: Annotated[Spread | None, Unit("A")] = key("bias current, typ and max, positive into the pin")
-    offset_current: Annotated[Spread | None, Unit("A", plus_minus=True)] = key(
-        "± difference of the bias currents"
-    )
+    offset_current: Annotated[Spread | None, Unit("A", plus_minus=True)] = key("± difference of the bias currents")
     bias_current_doubling: Kelvin = key("temperature rise that doubles the bias current (none)")
     common_mode_rejection: Annotated[Spread | None, Unit("dB")] = key('common-mode rejection, "100 dB"')
     supply_rejection: Annotated[Spread | None, Unit("dB")] = key('supply rejection, "100 dB"')
@@ -160,9 +154,7 @@ class AmplifierParameters(Parameters):
     )
     output_load: Annotated[Spread | None, Unit("ohm"), POSITIVE] = key("load at which output_headroom holds")
     output_current: Current = key("greatest output current")
-    supply: Annotated[Spread | None, Unit("V"), NON_NEGATIVE, BeforeValidator(_from_nothing)] = key(
-        "total supply voltage, { min, max }"
-    )
+    supply: Annotated[Spread | None, _TotalSupply("V"), NON_NEGATIVE] = key("total supply voltage, { min, max }")
     input_clamps: Literal["rails", "differential", "both", "none"] = key(
         "where input clamp diodes lead (rails)", "rails"
     )

@@ -68,9 +68,7 @@ def _law(table: RequirementTable, names: Names, path: Path, problems: Problems) 
         return None
 
 
-def _ranges(
-    table: RequirementTable, names: Names, path: Path, problems: Problems
-) -> dict[str, tuple[float, float]]:
+def _ranges(table: RequirementTable, names: Names, path: Path, problems: Problems) -> dict[str, tuple[float, float]]:
     ranges: dict[str, tuple[float, float]] = {}
     for name, value in table.range.items():
         here = (*path, "range", name)

@@ -54,9 +54,7 @@ class PackageTable(Table):
         "whether its parts share a die (separate where it holds two or more transistors or diodes whose models "
         "are not monolithic)"
     )
-    theta_between: Annotated[float | None, Unit("K/W"), POSITIVE] = key(
-        "thermal resistance between separate dice"
-    )
+    theta_between: Annotated[float | None, Unit("K/W"), POSITIVE] = key("thermal resistance between separate dice")
     ratio_tolerance: Limit = key("± limit of the ratios of a resistor network")
     ratio_tempco: Annotated[float | None, Unit("ppm/K"), NON_NEGATIVE] = key(
         "± limit of the temperature coefficient of its ratios"
@@ -122,9 +120,7 @@ class RequirementTable(Table):
 
     output: Text = required("the net judged")
     law: Text | None = key('law of the output, "full_scale * (VIN / full_scale) ** n"')
-    constants: dict[str, Annotated[tuple[float, Dimension], AnyQuantity()]] = key(
-        "quantities that the law names", {}
-    )
+    constants: dict[str, Annotated[tuple[float, Dimension], AnyQuantity()]] = key("quantities that the law names", {})
     accuracy: Accuracy | None = key("allowed error of the output about the law")
     range: dict[str, Any] = key("ranges [low, high] by input (the inputs' own)", {})
     bandwidth: BandwidthTable | None = key("least bandwidth")

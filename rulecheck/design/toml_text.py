@@ -72,9 +72,7 @@ def _text(value: Toml, like: str = "") -> str:
     return str(value.isoformat())
 
 
-def block(
-    written: KeyPath, table: Mapping[str, Toml], *, array: bool = False, equals: str = " = "
-) -> list[str]:
+def block(written: KeyPath, table: Mapping[str, Toml], *, array: bool = False, equals: str = " = ") -> list[str]:
     """Lines of `table` under the header `written`: keys on lines of their own, inner tables inline.
 
     A table of named blocks becomes one block for each of them.

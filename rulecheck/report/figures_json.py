@@ -5,14 +5,12 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 from typing import TYPE_CHECKING, Any
 
-import numpy as np
-
 from rulecheck.report.json import FORMAT, dump, plain, tool
 
 if TYPE_CHECKING:
     from rulecheck.analysis.operating_points import OperatingPoints
     from rulecheck.analysis.review import Review
-    from rulecheck.analysis.stability import Loops
+    from rulecheck.analysis.loops import Loops
     from rulecheck.analysis.transfer import Transfer
     from rulecheck.design.model import Part
 
@@ -107,7 +105,7 @@ def _amplifier(points: OperatingPoints, part: Part) -> Figures:
     return {
         "output": points.voltage(part.pins["OUT"]),
         "current": -points.current(part.ref, "OUT"),
-        "state": np.where(points.converged, state.astype(object), None),
+        "state": [word if known else None for word, known in zip(state, points.converged, strict=True)],
     }
 
 

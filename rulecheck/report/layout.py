@@ -11,6 +11,7 @@ from rulecheck.units import format_quantity
 
 LABEL_WIDTH = 12
 LEAST_WIDTH = 40
+_KEEP = "\u00a0"  # a space at which no line is broken
 #: Control sequences of ECMA-48.
 _STYLES = {"bold": "1", "dim": "2", "red": "1;31", "yellow": "33", "cyan": "36", "green": "32"}
 
@@ -64,7 +65,7 @@ class Layout:
                 paragraph, max(self.width, LEAST_WIDTH), initial_indent=margin, subsequent_indent=margin,
                 break_long_words=False, break_on_hyphens=False,
             ) or [margin]  # fmt: skip
-        return lines
+        return [line.replace(_KEEP, " ") for line in lines]
 
     def between(self, left: str, right: str) -> str:
         """Two texts at the ends of a line, or one behind the other where they do not fit.
@@ -111,6 +112,16 @@ def quantity(value: float, unit: str) -> str:
         return f"{value:.4g} {unit}"
 
 
+def kept_together(text: str) -> str:
+    """Text that `Layout.wrapped` does not break, such as a quantity.
+
+    Parameters
+    ----------
+    text : str
+    """
+    return text.replace(" ", _KEEP)
+
+
 def conditions_in_words(conditions: Mapping[str, float], units: Mapping[str, str]) -> str:
     """Conditions with their units: ``ambient 55 degC, VIN 0.1 V``.
 
@@ -121,4 +132,6 @@ def conditions_in_words(conditions: Mapping[str, float], units: Mapping[str, str
     units : mapping of str to str
         By name.
     """
-    return ", ".join(f"{name} {quantity(value, units.get(name, '1'))}" for name, value in conditions.items())
+    return ", ".join(
+        kept_together(f"{name} {quantity(value, units.get(name, '1'))}") for name, value in conditions.items()
+    )

@@ -6,7 +6,7 @@ from collections.abc import Iterator, Mapping
 
 from rulecheck.errors import Problem
 from rulecheck.findings import DesignReport, Evidence, Failure, Finding, NotRun, Remedy, Report, Severity
-from rulecheck.report.layout import LABEL_WIDTH, Layout, conditions_in_words, quantity
+from rulecheck.report.layout import LABEL_WIDTH, Layout, conditions_in_words, kept_together, quantity
 from rulecheck.report.remedies_text import mark
 from rulecheck.review.completion import severity_of
 from rulecheck.review.outcome import ReviewedDesign
@@ -102,9 +102,10 @@ def _details(finding: Finding, units: Mapping[str, str]) -> Iterator[tuple[str, 
 def _evidence(evidence: Evidence) -> str:
     limit = ""
     if evidence.limit is not None:
-        limit = f"; sound is {RELATIONS[evidence.relation]} {quantity(evidence.limit, evidence.unit)}"
+        bound = kept_together(f"{RELATIONS[evidence.relation]} {quantity(evidence.limit, evidence.unit)}")
+        limit = f"; sound is {bound}"
     basis = "from typical data" if evidence.basis == "typ" else "from limits of data"
-    return f"{evidence.quantity} {quantity(evidence.value, evidence.unit)}{limit} ({basis})"
+    return f"{evidence.quantity} {kept_together(quantity(evidence.value, evidence.unit))}{limit} ({basis})"
 
 
 def _remedy(remedy: Remedy, layout: Layout) -> Iterator[str]:

@@ -44,7 +44,7 @@ def findings_from(found: object) -> list[Finding]:
 
 def _faults(finding: Finding) -> Iterable[str]:
     """What is wrong with the shape of a finding."""
-    if not isinstance(finding.message, str) or not finding.message:
+    if not _all((finding.message,), str) or not finding.message:
         yield "its message is empty or no text"
     for name in ("parts", "nets"):
         members = getattr(finding, name)

@@ -36,8 +36,6 @@ class Options:
         Rules to run; none: all. Rules that can find the circuit broken run too, and are heard if they do.
     without : collection of str
         Rules to leave out.
-    try_remedies : bool
-        Whether each remedy is tried.
     progress : callable, optional
         Told of progress.
     """
@@ -45,7 +43,6 @@ class Options:
     on: dt.date
     only: Collection[str] = ()
     without: Collection[str] = ()
-    try_remedies: bool = True
     progress: Progress | None = None
 
 
@@ -86,10 +83,16 @@ class DesignReview:
         known = self._registry.entries
         return in_order([*found, *findings_about(self.design, found, self._options.on, judged, known)])
 
-    def report(self) -> ReviewedDesign:
-        """The outcome, every remedy tried where the options ask for it."""
+    def report(self, *, try_remedies: bool = True) -> ReviewedDesign:
+        """The outcome.
+
+        Parameters
+        ----------
+        try_remedies : bool
+            Whether each remedy is tried; an untried one counts as not proven.
+        """
         findings: Iterable[Finding] = self.findings
-        if self._options.try_remedies:
+        if try_remedies:
             findings = self.trials.tried(findings, self._options.progress)
         return ReviewedDesign(
             file=str(self.design.path),

@@ -71,7 +71,7 @@ def test_the_capacitor_of_the_log_stage_rule_puts_the_pole_at_half_the_crossing(
     """With the 90.402 pF of the rule the pair has ``f0 = sqrt(2)·fp``, which holds for that capacitor alone.
 
     S. Franco, Example 13.1 (companion): ``pi·Rb·ft·Cf^2 - Cf - (Cn+Cmu) = 0`` gives 90.402 pF;
-    the stage is taken as the transimpedance loop of the same quadratic (TI THS4631 data sheet SLOS451B eq. 1).
+    the stage is the transimpedance loop of the same quadratic (TI THS4631 data sheet SLOS451B eq. 1).
     """
     pair = transimpedance_pair(rf=4.3e3, cs=20e-12, cf=90.402e-12, bandwidth=1e6)
     assert pair["natural"] == pytest.approx(math.sqrt(2) / (4.3e3 * 90.402e-12), rel=1e-4)

@@ -65,7 +65,7 @@ def test_line_ends_of_two_characters_change_no_line_or_column(text):
     check_spans(text.replace("\n", "\r\n"))
 
 
-@settings(max_examples=2500, deadline=None)
+@settings(max_examples=150, deadline=None)
 @given(documents())
 def test_every_path_of_any_document_is_found(text):
     """The spans of every path hold what tomli reads, whatever the document."""

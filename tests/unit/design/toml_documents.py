@@ -11,14 +11,14 @@ TRICKY = {
     "no text": "",
     "comment alone": "# nothing else",
     "byte-order mark": "\ufeffa = 1\n",
-    "bare, quoted and dotted keys": "a.\"b.c\" . 'd e' = 1\n1.2 = 3\n\"\" = 'empty'\n\"\\u00e9\" = \"é\"\n- = 0\n",
+    "bare, quoted and dotted keys": 'a."b.c" . \'d e\' = 1\n1.2 = 3\n"" = \'empty\'\n"\\u00e9" = "é"\n- = 0\n',
     "keys like values": 'true = false\ninf = nan\n1979-05-27 = 1979-05-27\nvalue = "value"\n',
     "four kinds of string": (
-        "a = \"x \\\" ' # ] } , = \\\\\"\n"
+        'a = "x \\" \' # ] } , = \\\\"\n'
         "b = 'C:\\x \" # ]'\n"
         'c = """\n[not.a.header]\nk = 1 # not a comment\n\\""" ""\\" """""\n'
         "d = '''\n[[x]]\n'' \\'''''\n"
-        'e = """"""\nf = \'\'\'\'\'\'\n'
+        "e = \"\"\"\"\"\"\nf = ''''''\n"
         'g = """a \\\n   b"""\n'
     ),
     "dates and numbers": (
