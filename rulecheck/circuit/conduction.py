@@ -8,10 +8,10 @@ from itertools import groupby
 
 from .constraints import current_path, is_diode_like, junction_ends
 from .feedback import FeedbackLoop, Step
-from .sources import direction
+from .sources import direction, forward_voltage
 from .wiring import TRANSISTORS, Wiring
 
-LEAST_FORWARD = 0.3  # V: what a junction needs to be taken as conducting
+LEAST_FORWARD = 0.5  # V: what a junction needs to be taken as conducting
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,10 +42,13 @@ class Conduction:
         Transistors and diodes that conduct, in the order of the file.
     log_routes : tuple of Route
         Feedback through junctions that carry the current of a summing node.
+    idle : frozenset of str
+        Amplifiers whose only feedback is through diodes that do not conduct: limiters in waiting.
     """
 
     junctions: tuple[str, ...]
     log_routes: tuple[Route, ...]
+    idle: frozenset[str]
 
 
 def candidates(wiring: Wiring) -> tuple[str, ...]:
@@ -82,15 +85,20 @@ def conduction(
     known = candidates(wiring)
     chosen: list[Route] = []
     in_feedback: set[str] = set()
-    for _, group in groupby(loops, key=lambda loop: loop.amplifier):
+    idle: set[str] = set()
+    for amp, group in groupby(loops, key=lambda loop: loop.amplifier):
         routes = _routes(wiring, list(group))
         in_feedback |= {step.part for route in routes for step in route.steps}
-        chosen += _at_work(wiring, routes, levels, known)
+        found = _at_work(wiring, routes, levels, known)
+        chosen += found
+        directions = {_direction(wiring, route) for route in routes}
+        if not found and directions in ({1}, {-1}):
+            idle.add(amp)
     working = {step.part for route in chosen for step in route.steps}
     at_work = {ref for ref in known if ref in working or (ref not in in_feedback and not is_diode_like(wiring, ref))}
     free = [ref for ref in known if ref not in in_feedback and is_diode_like(wiring, ref)]
     _add_needed(wiring, free, at_work, held, levels)
-    return Conduction(tuple(ref for ref in known if ref in at_work), tuple(chosen))
+    return Conduction(tuple(ref for ref in known if ref in at_work), tuple(chosen), frozenset(idle))
 
 
 def _routes(wiring: Wiring, loops: list[FeedbackLoop]) -> list[Route]:
@@ -127,13 +135,15 @@ def _at_work(wiring: Wiring, routes: list[Route], levels: Mapping[str, float], k
     elif any(not _junctions(wiring, route) for route in routes):
         return []
     by_direction = {sign: [r for r in through if _direction(wiring, r) == sign] for sign in (1, -1)}
-    if not (by_direction[1] and by_direction[-1]):
-        return by_direction[1] + by_direction[-1]
     own = {step.part for route in routes for step in route.steps}
-    wanted = direction(wiring, levels, wiring.point_of[through[0].net], own)
-    if not wanted and any(len(route.steps) > len(_junctions(wiring, route)) for route in through):
+    wanted = direction(wiring, levels, wiring.point_of[routes[0].net], own) if through else 0
+    if with_transistor and not (by_direction[1] and by_direction[-1]):
+        return by_direction[1] + by_direction[-1]  # of the wrong polarity it is a fault, but the log element
+    if wanted or not (by_direction[1] and by_direction[-1]):
+        return by_direction[wanted] if wanted else by_direction[1] + by_direction[-1]
+    if not with_transistor and any(len(route.steps) > len(_junctions(wiring, route)) for route in through):
         return []  # a rectifier: either branch conducts in its turn
-    return by_direction[wanted or _direction(wiring, through[0])]
+    return by_direction[_direction(wiring, through[0])]
 
 
 def _junctions(wiring: Wiring, route: Route) -> list[str]:
@@ -178,8 +188,10 @@ def _is_needed(
     ends = _series_ends(wiring, ref)
     if ends is None:
         return False
+    if forward_voltage(wiring, ends, levels) > LEAST_FORWARD:
+        return True
     if ends[0] in levels and ends[1] in levels:
-        return levels[ends[0]] - levels[ends[1]] > LEAST_FORWARD
+        return False
     if any(here in held and not wiring.is_driven(here) for here in ends):
         return True  # it leads a signal into a summing node
     return _is_mirror(wiring, ref) or any(_goes_on(wiring, ref, point, at_work) for point in current_path(wiring, ref))

@@ -86,7 +86,7 @@ def junction_loops(
     junctions : sequence of str
         Junctions at work, in the order of the file.
     """
-    outputs = list(dict.fromkeys(wiring.point_of[n] for n, net in wiring.design.nets.items() if net.role == "output"))
+    outputs = list(dict.fromkeys(wiring.point_of[net] for net in _output_nets(wiring)))
     reader = _Reader(wiring, rows)
     found: list[JunctionLoop] = []
     for relation in junction_relations(rows, outputs, junctions, Distances(wiring, graph)):
@@ -95,6 +95,12 @@ def junction_loops(
             _add(found, loop)
     place = {ref: i for i, ref in enumerate(junctions)}
     return tuple(sorted(found, key=lambda loop: [place[ref] for ref in loop.parts]))
+
+
+def _output_nets(wiring: Wiring) -> list[str]:
+    """Nets that are outputs by their role, or that a requirement speaks of."""
+    asked = {requirement.output for requirement in wiring.design.requirements.values()}
+    return [name for name, net in wiring.design.nets.items() if net.role == "output" or name in asked]
 
 
 def _add(found: list[JunctionLoop], loop: JunctionLoop) -> None:
@@ -117,7 +123,8 @@ class _Reader:
 
     def __init__(self, wiring: Wiring, rows: list[Row]) -> None:
         self.wiring = wiring
-        self.place = {name: i for i, name in enumerate(dict.fromkeys([*wiring.design.nets, *wiring.design.parts]))}
+        self.place = {ref: i for i, ref in enumerate(wiring.design.parts)}
+        self.output_nets = _output_nets(wiring)
         self.carrying = {
             name.removeprefix("sum ")
             for row in rows
@@ -168,13 +175,14 @@ class _Reader:
     def _named(self, row: Row, *, inputs: bool) -> tuple[str, ...]:
         design = self.wiring.design
         names = {name for kind, name in row if kind in "KS" and (name in design.inputs) == inputs}
-        return tuple(sorted(names, key=self.place.__getitem__))
+        nets = tuple(name for name in design.nets if name in names) if names else ()
+        return nets + tuple(sorted(names - set(nets), key=self.place.__getitem__))
 
     def _outputs(self, relation: Relation) -> tuple[str, ...]:
         if relation.output is None:
             return ()
         nets = self.wiring.nets_at[relation.output]
-        return tuple(net for net in nets if self.wiring.design.nets[net].role == "output")
+        return tuple(net for net in nets if net in self.output_nets)
 
     def _amplifiers(self, row: Row) -> tuple[str, ...]:
         held = (name.removeprefix("held ") for kind, name in row if kind == "eq" and name.startswith("held "))

@@ -8,6 +8,8 @@ from dataclasses import dataclass
 from .constraints import current_path, is_diode_like
 from .wiring import TRANSISTORS, Wiring, has_pins
 
+STIFF_SOURCE = 10.0  # V: what a current source is good for where nothing takes its current
+
 
 @dataclass(frozen=True, slots=True)
 class CurrentSources:
@@ -180,3 +182,50 @@ def _side(span: tuple[float, float] | None, level: float) -> int:
     if above > 10.0 * below:
         return 1
     return -1 if below > 10.0 * above else 0
+
+
+def forward_voltage(wiring: Wiring, ends: tuple[str, str], levels: Mapping[str, float]) -> float:
+    """Estimate the voltage that resistors and sources would put across two points if nothing joined them.
+
+    Points that move with a signal count as at the other end's level: log voltages are small against supplies.
+
+    Parameters
+    ----------
+    wiring : Wiring
+    ends : (point, point)
+        Of a diode, its anode first.
+    levels : mapping of point to float
+        Fixed voltages of points.
+
+    Returns
+    -------
+    float
+        In volts; 0 where neither end has a fixed level to go by.
+    """
+    if ends[0] in levels and ends[1] in levels:
+        return levels[ends[0]] - levels[ends[1]]
+    for sign, (here, there) in ((1.0, ends), (-1.0, ends[::-1])):
+        if there in levels and not wiring.is_driven(here):
+            return sign * (_unloaded(wiring, here, levels, levels[there]) - levels[there])
+    return 0.0
+
+
+def _unloaded(wiring: Wiring, point: str, levels: Mapping[str, float], rest: float) -> float:
+    """Voltage of a point from its resistors and sources alone; the ends that move stand at `rest`."""
+    conductance = current = 0.0
+    for resistance in wiring.resistances_at.get(point, ()):
+        other = resistance.b if resistance.a == point else resistance.a
+        voltage = levels.get(other, _greatest(wiring, wiring.known.get(other), rest))
+        conductance += float(1 / resistance.ohm)
+        current += voltage / float(resistance.ohm)
+    for ref, pin in wiring.pins_at.get(point, ()):
+        if wiring.design.parts[ref].kind in ("current-source", "photodiode"):
+            into = 1.0 if pin in ("P", "A", "0") else -1.0
+            return rest + into * STIFF_SOURCE
+    return current / conductance if conductance else rest
+
+
+def _greatest(wiring: Wiring, name: str | None, rest: float) -> float:
+    """The end of an input's range that is further from zero; `rest` for what is no input."""
+    span = wiring.design.nets[name].range if name in wiring.design.nets else None
+    return max(span, key=abs) if span is not None else rest

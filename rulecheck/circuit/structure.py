@@ -5,7 +5,7 @@ All of it is found from the circuit's topology and nominal values; names play no
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
 from typing import TYPE_CHECKING, Literal
@@ -57,7 +57,7 @@ class Structure:
     feedback_loops : tuple of FeedbackLoop
         Every way from an amplifier's output to its inputs, capacitors included.
     dc_feedback : mapping of amplifier to str
-        ``negative``, ``positive`` or ``absent``, from the sign of a nominal DC return ratio.
+        ``negative``, ``positive`` or ``absent``, from the sign of a DC return ratio with every diode conducting.
     summing_nodes : tuple of SummingNode
     log_transistors : tuple of LogTransistor
     log_diodes : tuple of LogDiode
@@ -136,14 +136,10 @@ def find_structure(design: Design, graph: Circuit) -> Structure:
     wiring = build_wiring(design)
     feedback = dc_feedback(wiring, candidates(wiring))
     nodes = summing_nodes(wiring, feedback)
-    held = {wiring.point_of[node.net]: node.amplifier for node in nodes}
-    equal = {
-        f.amplifier: (wiring.point(f.amplifier, "IN+"), wiring.point(f.amplifier, "IN-"))
-        for f in feedback
-        if f.sign > 0
-    }
-    loops = feedback_loops(wiring, held)
-    work = _conduction(wiring, loops, nodes, held, equal)
+    loops = feedback_loops(wiring, _holders(wiring, nodes))
+    work = _conduction(wiring, loops, nodes)
+    nodes = tuple(node for node in nodes if node.amplifier not in work.idle)
+    held, equal = _holders(wiring, nodes), _equal_inputs(wiring, nodes)
     rows = constraints(wiring, work.junctions, equal)
     levels = _levels(wiring, rows)
     voltages = {wiring.point_of[net]: spread.typ for net, spread in levels.items()}
@@ -164,19 +160,24 @@ def find_structure(design: Design, graph: Circuit) -> Structure:
     )
 
 
-def _conduction(
-    wiring: Wiring,
-    loops: tuple[FeedbackLoop, ...],
-    nodes: tuple[SummingNode, ...],
-    held: Mapping[str, str],
-    equal: Mapping[str, tuple[str, str]],
-) -> Conduction:
+def _holders(wiring: Wiring, nodes: Iterable[SummingNode]) -> dict[str, str]:
+    """Held points with the amplifiers that hold them."""
+    return {wiring.point_of[node.net]: node.amplifier for node in nodes}
+
+
+def _equal_inputs(wiring: Wiring, nodes: Iterable[SummingNode]) -> dict[str, tuple[str, str]]:
+    """Points of the inputs that feedback makes equal, by amplifier."""
+    return {n.amplifier: (wiring.point(n.amplifier, "IN+"), wiring.point(n.amplifier, "IN-")) for n in nodes}
+
+
+def _conduction(wiring: Wiring, loops: Iterable[FeedbackLoop], nodes: Sequence[SummingNode]) -> Conduction:
     """Junctions at work, judged by the levels that hold whatever the diodes do."""
     certain = [ref for ref in candidates(wiring) if not is_diode_like(wiring, ref)]
-    levels = _levels(wiring, constraints(wiring, certain, equal))
+    levels = _levels(wiring, constraints(wiring, certain, _equal_inputs(wiring, nodes)))
     voltages = {wiring.point_of[net]: spread.typ for net, spread in levels.items()}
     inputs = {(node.amplifier, node.input) for node in nodes}
-    return conduction(wiring, [loop for loop in loops if (loop.amplifier, loop.input) in inputs], held, voltages)
+    led = [loop for loop in loops if (loop.amplifier, loop.input) in inputs]
+    return conduction(wiring, led, _holders(wiring, nodes), voltages)
 
 
 def _levels(wiring: Wiring, rows: list[Row]) -> dict[str, Spread]:

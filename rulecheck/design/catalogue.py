@@ -27,14 +27,14 @@ class Catalogue:
     Attributes
     ----------
     models : dict of str to Model
-        The sound ones.
-    named : set of str
-        All names, those of models with errors too.
+        Of one with errors, the keys that have them are None.
+    is_complete : bool
+        Whether every catalogue could be read.
     problems : list of Problem
     """
 
     models: dict[str, Model] = field(default_factory=dict)
-    named: set[str] = field(default_factory=set)
+    is_complete: bool = True
     problems: list[Problem] = field(default_factory=list)
 
 
@@ -60,12 +60,13 @@ def read_catalogues(design: Source, folder: Path) -> Catalogue:
         Where the design stands; catalogues stand there or below.
     """
     shipped = shipped_models()
-    catalogue = Catalogue(dict(shipped), set(shipped))
+    catalogue = Catalogue(dict(shipped))
     problems = Problems(design)
     own: set[str] = set()
     for index, name in _names(design.data, problems):
         source = _open(name, index, folder, problems, catalogue)
         if source is None:
+            catalogue.is_complete = False
             continue
         models = source.data.get("models")
         for model in models if isinstance(models, Mapping) else ():
@@ -119,10 +120,7 @@ def _add_models(catalogue: Catalogue, source: Source) -> None:
         if key not in ("format", "models"):
             problems.add([key], *unknown_key(key, ["format", "models"], "a catalogue"), of_key=True)
     tables = by_name(source.data, "models", _model_table, problems)
-    if isinstance(source.data.get("models"), Mapping):
-        catalogue.named |= set(source.data["models"])
-        for name in source.data["models"]:
-            catalogue.models.pop(name, None)
+    catalogue.is_complete &= len(tables) == len(source.data.get("models", ()))
     for name, table in tables.items():
         given = table.given - NOT_PARAMETERS
         catalogue.models[name] = Model(name, table.kind, table.note, table, given, source.file)

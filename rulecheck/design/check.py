@@ -49,7 +49,7 @@ def _check_nets(tables: Tables, names: Names, problems: Problems) -> None:
 
 
 def _check_spacing(name: str, net: InputTable, problems: Problems) -> None:
-    low, high = net.range
+    low, high = net.sound("range") or (1.0, 1.0)
     if net.spacing == "log" and low * high <= 0:
         message = "'log' needs a range whose ends have one sign and are not zero"
         problems.add(["nets", name, "spacing"], message, "'linear' fits any range")
@@ -86,21 +86,21 @@ def _check_models(tables: Tables, catalogue: Catalogue, problems: Problems) -> N
             _check_needed(ref, part, None, problems)
             continue
         model, path = catalogue.models.get(part.model), ("parts", ref, "model")
-        if part.model not in catalogue.named:
+        if model is None and catalogue.is_complete:
             fitting = [name for name, known in catalogue.models.items() if known.kind == part.kind]
             problems.add(path, *unknown(part.model, fitting, f"model of kind {part.kind}"))
         elif model is not None and model.kind != part.kind:
             message = f"the model {model.name!r} is of kind {model.kind}; one of kind {part.kind} is expected"
             problems.add(path, message)
-        elif model is not None:  # None: it has errors of its own, and what it states is not known
+        elif model is not None:
             _check_needed(ref, part, model, problems)
 
 
 def _check_needed(ref: str, part: Modelled, model: Model | None, problems: Problems) -> None:
-    parameters, _ = merged(part, model)
-    where = f"neither the part nor its model {model.name!r} states it" if model else "and the part has no model"
+    parameters, given = merged(part, model)
+    where = f"neither the part nor its model {model.name!r} states it" if model else "the part has no model either"
     for name in part.needed:
-        if parameters[name] is None:
+        if parameters[name] is None and name not in given:  # a stated one may be None where it has an error
             problems.add(["parts", ref, name], f"{name!r} is missing; {where}")
 
 
@@ -115,11 +115,14 @@ def _check_parts(tables: Tables, names: Names, problems: Problems) -> None:
 def _check_matching(tables: Tables, names: Names, problems: Problems) -> None:
     transistors = [ref for ref, kind in names.parts.items() if kind in TRANSISTORS]
     for name, group in tables.matching.items():
-        if len(group.parts) < 2:
+        members = group.sound("parts")
+        if members is not None and len(members) < 2:
             problems.add(["matching", name, "parts"], "a matched group has two transistors or more")
-        for index, ref in enumerate(group.parts):
+        for index, ref in enumerate(members or ()):
             path = ("matching", name, "parts", index)
-            if ref not in names.parts:
+            if ref in members[:index]:
+                problems.add(path, f"{ref!r} stands twice in the group")
+            elif ref not in names.parts:
                 problems.add(path, *unknown(ref, transistors, "part"))
             elif ref not in transistors:
                 kind = names.parts[ref]
@@ -128,16 +131,20 @@ def _check_matching(tables: Tables, names: Names, problems: Problems) -> None:
 
 def _check_links(tables: Tables, names: Names, problems: Problems) -> None:
     for index, link in tables.thermal_links.items():
-        for end, package in enumerate(link.between):
-            if package not in names.packages:
+        ends = link.sound("between") or ()
+        for end, package in enumerate(ends):
+            if package in ends[:end]:
+                problems.add(["thermal_links", index, "between", end], "a link joins two packages, not one to itself")
+            elif package not in names.packages:
                 problems.add(["thermal_links", index, "between", end], *unknown(package, names.packages, "package"))
 
 
 def _check_concessions(tables: Tables, problems: Problems) -> None:
     for index, concession in tables.concessions.items():
         path = ("concessions", index)
-        if not concession.reason.strip():
+        reason = concession.sound("reason")
+        if reason is not None and not reason.strip():
             problems.add([*path, "reason"], "the reason is empty; a concession says why it is granted")
-        if not concession.rule and not concession.finding:
+        if not concession.given & {"rule", "finding"}:
             message = "'rule' is missing; a concession names a rule, or the id of a finding"
             problems.add([*path, "rule"], message)

@@ -68,6 +68,10 @@ class Table(BaseModel):
         """Attributes that the file states."""
         return frozenset(self.model_fields_set)
 
+    def sound(self, name: str) -> Any:  # noqa: ANN401
+        """The value of an attribute, None where the file states it with an error or must and does not."""
+        return getattr(self, name)
+
 
 def key(description: str, default: Any = None, **options: Any) -> Any:  # noqa: ANN401
     """Declare a key that may be left out; the description goes into the JSON Schema and into messages."""
@@ -202,18 +206,14 @@ class Names(_Field):
 
     def read(self, value: object) -> tuple[str, ...]:
         """The names in their order."""
-        wanted = f"a list of {self.count or ''} names".replace("  ", " ")
+        wanted = f"a list of {self.count} names" if self.count else "a list of names"
         if not isinstance(value, list | tuple):
             raise fault(f"{shown(value)} is given; {wanted} is expected")
         if self.count and len(value) != self.count:
-            raise fault(f"{len(value)} are given; {wanted} is expected")
+            raise fault(f"a list of {len(value)} is given; {wanted} is expected")
         faults: list[tuple[str | int, object, str]] = [
             (index, name, f"{shown(name)} is no name; a text in quotes is expected")
             for index, name in enumerate(value) if not isinstance(name, str)
-        ]  # fmt: skip
-        faults += [
-            (index, name, f"{name!r} stands twice in the list")
-            for index, name in enumerate(value) if isinstance(name, str) and name in value[:index]
         ]  # fmt: skip
         if faults:
             raise faults_by_key(faults)

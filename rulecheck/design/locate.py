@@ -20,15 +20,18 @@ Range = tuple[int, int]
 
 BYTE_ORDER_MARK = "\ufeff"
 
+_BASIC = r'"(?:[^"\\\n]++|\\.)*+"'
+_LITERAL = r"'[^'\n]*'"
 _BLANKS = re.compile(r"[ \t]*")
-_TRIVIA = re.compile(r"(?:[ \t\r\n]+|#[^\n]*)*")
-_KEY = re.compile(r'[A-Za-z0-9_-]+|"(?:[^"\\\n]|\\.)*"|\'[^\'\n]*\'')
+_TRIVIA = re.compile(r"(?:[ \t\r\n]++|#[^\n]*+)*+")
+_KEY = re.compile(rf"[A-Za-z0-9_-]+|{_BASIC}|{_LITERAL}")
 _SCALAR = re.compile(
-    r'"""(?:[^"\\]++|\\.|"{1,2}(?!"))*+""""{0,2}'  # up to two quotation marks may stand before the closing three
-    r"|'''.*?'''(?:'{0,2})"
-    r'|"(?:[^"\\\n]|\\.)*"'
-    r"|'[^'\n]*'"
-    r"|(?:\d{4}-\d{2}-\d{2} (?=\d))?[^\s,\]}#\"']+",  # a blank may part date and time
+    # up to two quotation marks may stand before the closing three
+    r'"""(?:[^"\\]++|\\.|"{1,2}(?!"))*+"""(?:"{0,2})'
+    r"|'''(?:[^']++|'{1,2}(?!'))*+'''(?:'{0,2})"
+    rf"|{_BASIC}|{_LITERAL}"
+    # a blank may part date and time
+    r"|(?:\d{4}-\d{2}-\d{2} (?=\d))?[^\s,\]}#\"']+",
     re.DOTALL,
 )
 

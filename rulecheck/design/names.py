@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 
@@ -24,7 +25,8 @@ class Names:
     parts : mapping of str to kind
         Unmounted ones too.
     packages : frozenset of str
-    requirements : frozenset of str
+    constants : mapping of str to tuple of str
+        Names of constants by requirement.
     """
 
     pins: Mapping[str, tuple[str, ...]]
@@ -33,18 +35,23 @@ class Names:
     potentiometers: frozenset[str]
     parts: Mapping[str, object]
     packages: frozenset[str]
-    requirements: frozenset[str]
+    constants: Mapping[str, tuple[str, ...]]
 
-    @property
-    def nets(self) -> list[str]:
-        """All nets: those with a table first."""
-        return list(dict.fromkeys([*self.roles, *self.pins]))
+    @cached_property
+    def nets(self) -> Mapping[str, None]:
+        """All nets, those with a table first; a mapping only to find them fast."""
+        return dict.fromkeys([*self.roles, *self.pins])
 
     def with_role(self, role: str) -> list[str]:
         """Nets of a role."""
         return [net for net, found in self.roles.items() if found == role]
 
     @property
+    def requirements(self) -> Mapping[str, tuple[str, ...]]:
+        """All requirements."""
+        return self.constants
+
+    @cached_property
     def in_laws(self) -> list[str]:
         """Names that a law may use besides its constants."""
         return [*self.inputs, *self.with_role("reference"), *self.potentiometers, "ambient"]
@@ -64,15 +71,18 @@ def find_names(data: Mapping[str, Any]) -> Names:
         potentiometers=frozenset(ref for ref, part in mounted.items() if part.get("kind") == "potentiometer"),
         parts={ref: part.get("kind") for ref, part in parts.items()},
         packages=frozenset([*entries(data, "packages"), *(p for p in packages if isinstance(p, str))]),
-        requirements=frozenset(entries(data, "requirements")),
+        constants={name: tuple(_table(table, "constants")) for name, table in entries(data, "requirements").items()},
     )
 
 
 def entries(data: Mapping[str, Any], key: str) -> dict[str, Mapping[str, Any]]:
     """Those entries of a table that are tables."""
+    return {name: entry for name, entry in _table(data, key).items() if isinstance(entry, Mapping)}
+
+
+def _table(data: Mapping[str, Any], key: str) -> Mapping[str, Any]:
     table = data.get(key)
-    pairs = table.items() if isinstance(table, Mapping) else ()
-    return {name: entry for name, entry in pairs if isinstance(entry, Mapping)}
+    return table if isinstance(table, Mapping) else {}
 
 
 def _first_pins(parts: Mapping[str, Mapping[str, Any]]) -> dict[str, tuple[str, ...]]:

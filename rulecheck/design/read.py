@@ -1,12 +1,16 @@
-"""From parsed tables to validated ones, one at a time; a table with errors is left out and its errors collected."""
+"""From parsed tables to validated ones, one at a time.
+
+Of a table with errors the sound keys are kept, so that what they name can be checked all the same; its
+errors are collected, and no design is built.
+"""
 
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
-from typing import Any, TypeVar
+from typing import Annotated, Any, TypeVar
 
-from pydantic import ValidationError
+from pydantic import TypeAdapter, ValidationError
 
 from rulecheck.design.fields import Table, did_you_mean, shown
 from rulecheck.design.nets import INPUT_TABLES, NET_TABLES, ROLES, NetTable
@@ -34,7 +38,7 @@ Choice = Callable[[Mapping[str, Any], Path, Problems], type[T] | None]
 
 @dataclass(frozen=True)
 class Tables:
-    """The sound tables of a design file, by name or in their order."""
+    """The tables of a design file, by name or in their order; keys with errors are None."""
 
     head: Head = field(default_factory=Head)
     environment: Environment = field(default_factory=Environment)
@@ -88,12 +92,32 @@ def _check_top_level(data: Mapping[str, Any], problems: Problems) -> None:
 
 
 def read_table(value: object, table: type[T], path: Path, problems: Problems) -> T | None:
-    """A table that stands at `path`, or None where it has errors."""
+    """A table that stands at `path`, None where there is no table; keys with errors are None, and given."""
     try:
         return table.model_validate(value)
     except ValidationError as error:
         report(error, table, path, problems)
-        return None
+        faulty = {item["loc"][0] for item in error.errors(include_url=False) if item["loc"]}
+        return _sound_keys(value, table, faulty) if isinstance(value, Mapping) else None
+
+
+def _sound_keys(value: Mapping[str, Any], table: type[T], faulty: set[str | int]) -> T:
+    fields: dict[str, Any] = {}
+    for name, field_ in table.model_fields.items():
+        key = field_.alias or name
+        if key in faulty:
+            fields[name] = None
+        elif key in value:
+            kind: Any = field_.annotation
+            for annotation in field_.metadata:
+                kind = Annotated[kind, annotation]
+            fields[name] = TypeAdapter[Any](kind).validate_python(value[key])
+    given = {name for name in fields if (table.model_fields[name].alias or name) in value}
+    return table.model_construct(given, **{**dict.fromkeys(table.model_fields), **_defaults(table), **fields})
+
+
+def _defaults(table: type[Table]) -> dict[str, Any]:
+    return {name: field_.default for name, field_ in table.model_fields.items() if not field_.is_required()}
 
 
 def _one(data: Mapping[str, Any], name: str, table: type[T], problems: Problems) -> T:
@@ -101,16 +125,16 @@ def _one(data: Mapping[str, Any], name: str, table: type[T], problems: Problems)
 
 
 def by_name(data: Mapping[str, Any], key: str, choose: Choice[T], problems: Problems) -> dict[str, T]:
-    """Sound tables of ``[key.NAME]``."""
-    sound: dict[str, T] = {}
+    """Tables of ``[key.NAME]``."""
+    tables: dict[str, T] = {}
     for name, entry in _table(data, key, problems).items():
         if not isinstance(entry, Mapping):
             problems.add([key, name], f"{shown(entry)} is given; a table is expected, [{key}.NAME] with its keys")
         elif table := choose(entry, (key, name), problems):
             read = read_table(entry, table, (key, name), problems)
             if read is not None:
-                sound[name] = read
-    return sound
+                tables[name] = read
+    return tables
 
 
 def _table(data: Mapping[str, Any], key: str, problems: Problems) -> Mapping[str, Any]:
@@ -122,7 +146,7 @@ def _table(data: Mapping[str, Any], key: str, problems: Problems) -> Mapping[str
 
 
 def _listed(data: Mapping[str, Any], key: str, table: type[T], problems: Problems) -> dict[str, T]:
-    """Sound tables of ``[[key]]`` by their index."""
+    """Tables of ``[[key]]`` by their index."""
     value = data.get(key, [])
     if not isinstance(value, list):
         problems.add([key], f"{shown(value)} is given; a list of tables is expected, each under [[{key}]]")

@@ -25,16 +25,17 @@ Path = tuple[str, ...]
 def read_requirement(name: str, table: RequirementTable, names: Names, problems: Problems) -> Requirement:
     """A requirement from its table; what is wrong with it is added to `problems`."""
     path = ("requirements", name)
-    if table.output not in names.nets:
-        problems.add([*path, "output"], *unknown(table.output, names.nets, "net"))
+    output = table.sound("output")
+    if output is not None and output not in names.nets:
+        problems.add([*path, "output"], *unknown(output, names.nets, "net"))
     _check_asks(table, path, problems)
-    accuracy = table.accuracy or Accuracy()
+    accuracy, constants = table.accuracy or Accuracy(), table.constants or {}
     return Requirement(
         name=name,
         output=table.output,
         law=_law(table, names, path, problems),
-        constants=FrozenDict({key: value for key, (value, _) in table.constants.items()}),
-        constant_dimensions=FrozenDict({key: dimension for key, (_, dimension) in table.constants.items()}),
+        constants=FrozenDict({key: value for key, (value, _) in constants.items()}),
+        constant_dimensions=FrozenDict({key: dimension for key, (_, dimension) in constants.items()}),
         reading=accuracy.reading,
         absolute=accuracy.absolute,
         has_accuracy=table.accuracy is not None,
@@ -48,21 +49,22 @@ def read_requirement(name: str, table: RequirementTable, names: Names, problems:
 def _check_asks(table: RequirementTable, path: Path, problems: Problems) -> None:
     if not table.given & {"law", "bandwidth", "phase_margin", "noise"}:
         problems.add(path, "it asks for nothing; a requirement has a law, bandwidth, phase_margin or noise")
-    if table.law is None:
+    if "law" not in table.given:
         for key in ("constants", "accuracy", "range"):
             if key in table.given:
                 problems.add([*path, key], f"{key!r} belongs to a law, and there is none", of_key=True)
 
 
 def _law(table: RequirementTable, names: Names, path: Path, problems: Problems) -> Law | None:
-    for constant in table.constants:
+    constants = names.constants[path[-1]]
+    for constant in constants:
         if constant in names.in_laws:
             message = f"{constant!r} is the name of an input, a reference, a potentiometer or the ambient temperature"
             problems.add([*path, "constants", constant], message, "the constant needs another name", of_key=True)
     if table.law is None:
         return None
     try:
-        return Law.parse(table.law, [*names.in_laws, *table.constants])
+        return Law.parse(table.law, [*names.in_laws, *constants])
     except LawError as error:
         problems.add([*path, "law"], str(error))
         return None
@@ -70,7 +72,7 @@ def _law(table: RequirementTable, names: Names, path: Path, problems: Problems) 
 
 def _ranges(table: RequirementTable, names: Names, path: Path, problems: Problems) -> dict[str, tuple[float, float]]:
     ranges: dict[str, tuple[float, float]] = {}
-    for name, value in table.range.items():
+    for name, value in (table.range or {}).items():
         here = (*path, "range", name)
         if name not in names.inputs:
             problems.add(here, *unknown(name, names.inputs, "input"), of_key=True)
@@ -88,7 +90,7 @@ def _ranges(table: RequirementTable, names: Names, path: Path, problems: Problem
 def _bandwidth(table: BandwidthTable | None, names: Names, path: Path, problems: Problems) -> Bandwidth | None:
     if table is None:
         return None
-    at = _point(table.at, names, (*path, "at"), problems)
+    at = _point(table.at or {}, names, (*path, "at"), problems)
     inputs = list(names.inputs)
     name = table.input or (inputs[0] if len(inputs) == 1 else None)
     if name is None:

@@ -93,8 +93,8 @@ def parse(text: str, file: str) -> Source:
         raise DesignError([_syntax_problem(file, text, error)]) from None
     except RecursionError:
         raise _whole_file(file, f"it is nested deeper than {DEEPEST} levels") from None
-    except ValueError as error:  # such as an integer of thousands of digits
-        raise _whole_file(file, f"it has a value that cannot be read: {error}") from None
+    except ValueError:  # an integer too long to be one; the parser has no words of its own for it
+        raise DesignError([_long_number(file, text)]) from None
     source = Source(file, text, data)
     _check_depth(source)
     return source
@@ -123,6 +123,14 @@ def _check_depth(source: Source) -> None:
         waiting += [(inner, (*path, str(key))) for key, inner in pairs]
 
 
+def _long_number(file: str, text: str) -> Problem:
+    found = max(re.finditer(r"[0-9_]+", text), key=lambda match: len(match.group()))
+    line = text.count("\n", 0, found.start()) + 1
+    column = found.start() - text.rfind("\n", 0, found.start())
+    message = f"a number of {len(found.group())} digits is too long"
+    return Problem(file, _key_at(text, line), message, line, column)
+
+
 # What the parser says, and what it means to someone who writes a design file.
 _SYNTAX = (
     (r"Cannot declare (.*) twice", "this table stands twice in the file"),
@@ -143,13 +151,16 @@ _SYNTAX = (
 
 
 def _syntax_problem(file: str, text: str, error: Any) -> Problem:  # noqa: ANN401
-    message = f"this is not TOML: {error.msg}"
+    message, column = f"this is not TOML: {error.msg}", error.colno
     for pattern, meaning in _SYNTAX:
         match = re.fullmatch(pattern, error.msg)
         if match:
             message = meaning.format(*match.groups())
             break
-    return Problem(file, _key_at(text, error.lineno), message, error.lineno, error.colno)
+    if message.endswith(("in the file", "in its table")):  # what is written twice begins with its line
+        line = text.split("\n")[error.lineno - 1]
+        column = len(line) - len(line.lstrip()) + 1
+    return Problem(file, _key_at(text, error.lineno), message, error.lineno, column)
 
 
 def _key_at(text: str, line: int) -> str:

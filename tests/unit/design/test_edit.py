@@ -248,8 +248,8 @@ LINK = {"between": ["M1", "M3"], "theta": "20 K/W"}
         ("", '[[thermal_links]]\nbetween = ["M1", "M3"]\ntheta = "20 K/W"\n'),
         ("x = 1\n\n[a]\n", 'x = 1\n\n[a]\n\n[[thermal_links]]\nbetween = ["M1", "M3"]\ntheta = "20 K/W"\n'),
         (
-            '[[thermal_links]]\ntheta = "1 K/W"\n\n[a]\n',
-            '[[thermal_links]]\ntheta = "1 K/W"\n\n[[thermal_links]]\nbetween = ["M1", "M3"]\ntheta = "20 K/W"\n\n[a]\n',
+            "[[thermal_links]]\nx = 1\n\n[b]\n",
+            '[[thermal_links]]\nx = 1\n\n[[thermal_links]]\nbetween = ["M1", "M3"]\ntheta = "20 K/W"\n\n[b]\n',
         ),
         ("thermal_links = []\n", 'thermal_links = [{ between = ["M1", "M3"], theta = "20 K/W" }]\n'),
         (
@@ -511,7 +511,7 @@ def _sorted_repr(data):
     )
 )
 def test_a_value_is_written_as_toml_reads_it(value):
-    """tomli reads what was written as the value and of its type."""
+    """What was written, tomli reads as the value and of its type."""
     written = to_toml(value)
     assert repr_of(tomli.loads(f"key = {written}")) == repr_of({"key": value})
     assert "\n" not in written

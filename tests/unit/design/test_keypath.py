@@ -18,7 +18,7 @@ def test_joining_and_splitting_give_the_path_back(path):
 
 @given(st.lists(segments, min_size=1, max_size=5))
 def test_a_joined_key_is_a_key_of_toml(path):
-    """tomli reads the text of a path as that path."""
+    """The text of a path is read by tomli as that path."""
     data = tomli.loads(f"{join_key(path)} = 1")
     assert value_at(data, tuple(path)) == 1
 
@@ -66,7 +66,7 @@ def test_only_what_needs_it_is_quoted():
 
 @given(segments)
 def test_a_basic_string_stands_for_its_text(text):
-    """tomli reads the string that was written, on one line, and `unquote` does."""
+    """The string is on one line, and tomli and `unquote` both read it as the text."""
     written = basic_string(text)
     assert "\n" not in written
     assert tomli.loads(f"key = {written}")["key"] == text == unquote(written)

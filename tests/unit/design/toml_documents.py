@@ -38,7 +38,7 @@ TRICKY = {
         "[[a]]\nx = 1\n[a.b]\ny = 1\n[[a.c]]\n[[a.c]]\nz = 1\n[a.c.d]\nw = 1\n[[a]]\n[[a.c]]\nz = 2\n[[e.f]]\ng.h = 1\n"
     ),
     "no line end at the end": "[a]\nb = [1]",
-    "line ends of two characters": '[a]\r\nb = """\r\nx\r\n"""\r\n# c\r\nd = [\r\n  1,\r\n]\r\n[[e]]\r\nf = { g = 1 }\r\n',
+    "line ends of two characters": '[a]\r\nb = """\r\nx\r\n"""\r\n# c\r\nd = [\r\n1,\r\n]\r\n[[e]]\r\nf = {g = 1}\r\n',
     "indented": "[a]\n\tb = 1\n  [a.c]\n    d = 2  # two\n",
     "characters beyond the first plane": "a = { '\U0001f600' = \"\U0001f600\", b = 1 }\n",
 }

@@ -1,0 +1,1 @@
+"""Checks of rules at work, with rules and designs made for the purpose."""
