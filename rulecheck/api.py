@@ -35,6 +35,23 @@ if TYPE_CHECKING:
     from rulecheck.analysis.conditions import Conditions
     from rulecheck.analysis.loops import IslandLoops, Loops
     from rulecheck.analysis.operating_points import OperatingPoints, Worst
+    from rulecheck.analysis.queries import (
+        Carrier,
+        Disturbance,
+        at_typical,
+        bias_limit,
+        carriers,
+        conformity_cost,
+        disturbance,
+        forward_current,
+        forward_voltage,
+        in_use,
+        junction_offset,
+        partner_of,
+        points_in_use,
+        potentiometers,
+        worst_cost,
+    )
     from rulecheck.analysis.review import Cost, Review
     from rulecheck.analysis.transfer import Transfer
     from rulecheck.circuit.islands import Island, equal_islands, islands
@@ -58,6 +75,11 @@ _LAZY = {
         "rulecheck.analysis.conditions": ("Conditions",),
         "rulecheck.analysis.operating_points": ("OperatingPoints", "Worst"),
         "rulecheck.analysis.loops": ("IslandLoops", "Loops"),
+        "rulecheck.analysis.queries": (
+            "Carrier", "Disturbance", "at_typical", "bias_limit", "carriers", "conformity_cost",
+            "disturbance", "forward_current", "forward_voltage", "in_use", "junction_offset", "partner_of",
+            "points_in_use", "potentiometers", "worst_cost",
+        ),
         "rulecheck.analysis.review": ("Cost", "Review"),
         "rulecheck.analysis.transfer": ("Transfer",),
         "rulecheck.circuit.islands": ("Island", "equal_islands", "islands"),
@@ -81,11 +103,13 @@ __all__ = [
     "AnalysisError",
     "AntilogTransistor",
     "BaseModel",
+    "Carrier",
     "Concession",
     "Conditions",
     "Cost",
     "Design",
     "Dimension",
+    "Disturbance",
     "Edit",
     "Evidence",
     "FeedbackLoop",
@@ -121,19 +145,32 @@ __all__ = [
     "Transfer",
     "Unit",
     "Worst",
+    "at_typical",
+    "bias_limit",
+    "carriers",
+    "conformity_cost",
     "decade_values",
     "dimension_of",
+    "disturbance",
     "equal_islands",
     "format_quantity",
+    "forward_current",
+    "forward_voltage",
     "in_series",
+    "in_use",
     "islands",
     "join_key",
+    "junction_offset",
     "nearest",
     "parse_quantity",
+    "partner_of",
+    "points_in_use",
+    "potentiometers",
     "series_for_tolerance",
     "series_values",
     "split_key",
     "thermal_voltage",
+    "worst_cost",
 ]
 
 

@@ -7,13 +7,14 @@ import shutil
 import tempfile
 import weakref
 from collections.abc import Collection, Mapping, Sequence
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from rulecheck.findings import Finding, Remedy
 
 if TYPE_CHECKING:
-    from rulecheck.api import Design, Rule
+    from rulecheck.api import Conditions, Design, Rule
     from rulecheck.review.registry import Registry
     from rulecheck.review.runner import DesignReview
 
@@ -109,9 +110,7 @@ def _registry(rule: type[Rule] | str | None) -> tuple[Registry, tuple[str, ...]]
     return registry_of([rule]), (rule.name,)
 
 
-def assert_finds(
-    rule: type[Rule] | str, design: Design | str, parts: Collection[str] | None = None
-) -> Finding:
+def assert_finds(rule: type[Rule] | str, design: Design | str, parts: Collection[str] | None = None) -> Finding:
     """Assert that a rule finds something, and give the first of it.
 
     Parameters
@@ -177,17 +176,56 @@ def figures_of(text: str, points: Sequence[Mapping[str, float]], catalogue_text:
     catalogue_text : str, optional
         Text of the catalogue that the design names.
     """
-    import numpy as np
-
-    from rulecheck.analysis.conditions import from_points, typical_row
     from rulecheck.analysis.review import Review
     from rulecheck.report.figures_json import design_figures
 
     design = design_from(text, catalogue_text)
+    return design_figures(Review(design, conditions=_conditions(design, points)))
+
+
+def fault_figures_of(
+    text: str, points: Sequence[Mapping[str, float]], catalogue_text: str | None = None
+) -> dict[str, Any]:
+    """Operating points as in fault scenarios: input clamps and drive limits in place.
+
+    Parameters
+    ----------
+    text : str
+        As in a design file.
+    points : sequence of mapping of str to float
+        Conditions, in SI; a supply or reference at 0 is absent, and what hangs on it is off.
+    catalogue_text : str, optional
+        Text of the catalogue that the design names.
+
+    Returns
+    -------
+    dict
+        ``nets``, ``parts`` and ``converged`` as in `figures_of`, and ``clamps``: currents by name [A],
+        ``U1.IN-.hi`` being that of the diode from IN- to V+.
+    """
+    from rulecheck.analysis.review import Review
+    from rulecheck.report.figures_json import point_figures
+    from rulecheck.report.json import plain
+
+    design = design_from(text, catalogue_text)
+    conditions = _conditions(design, points)
+    powers = [n for n, net in design.nets.items() if net.role in ("supply", "reference")]
+    off = {n: conditions.values[n] == 0 for n in powers}
+    absent = {n: off[n] | off.get(design.nets[n].source or "", False) for n in powers}
+    solved = Review(design).solve(replace(conditions, absent=absent), with_clamps=True)
+    figures: dict[str, Any] = plain({**point_figures(solved), "clamps": solved.clamp_currents()})
+    return figures
+
+
+def _conditions(design: Design, points: Sequence[Mapping[str, float]]) -> Conditions:
+    import numpy as np
+
+    from rulecheck.analysis.conditions import from_points, typical_row
+
     typical = typical_row(design)
     names = dict.fromkeys(name for point in points for name in point)
     columns = {name: np.array([point.get(name, typical.get(name, np.nan)) for point in points]) for name in names}
-    return design_figures(Review(design, conditions=from_points(design, columns)))
+    return from_points(design, columns)
 
 
 def _words(findings: Sequence[Finding]) -> str:

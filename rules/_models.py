@@ -3,27 +3,27 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from typing import Any
 
 from rulecheck.api import Part, Remedy, Review, Set, format_quantity, join_key
 
 from ._edits import quantity, set_parameter
+from ._rails import SUPPLY_PINS, Rails, SupplyPin
 
 MOST_MODELS = 2
 USUAL_SUPPLIES = (2.5, 3.0, 3.3, 5.0, 6.0, 9.0, 10.0, 12.0, 15.0, 18.0, 20.0, 24.0, 28.0, 30.0, 36.0, 48.0)
 
 
 def other_models(
-    review: Review, ref: str, fits: Callable[[Any], bool], parameters: tuple[str, ...], why: str
+    review: Review, amplifiers: Sequence[str], fits: Callable[[Any], bool], parameters: tuple[str, ...], why: str
 ) -> list[Remedy]:
-    """Remedies that give an amplifier, and those in its package, another model; those nearest in character first.
+    """Remedies that give amplifiers, and those in their packages, another model; nearest in character first.
 
     Parameters
     ----------
     review : Review
-    ref : str
-        Amplifier.
+    amplifiers : sequence of str
     fits : callable
         Whether the parameters of a model cure the fault.
     parameters : tuple of str
@@ -32,20 +32,28 @@ def other_models(
         What the model has that the present one has not.
     """
     parts = review.design.parts
-    together = [r for r, p in parts.items() if p.package == parts[ref].package and p.kind == "op-amp"]
+    present = parts[amplifiers[0]]
+    together = in_packages_of(review, amplifiers)
     written = review.design.data["parts"]
     if any(name in written[r] for r in together for name in parameters):
         return []
     found = [
-        (_strangeness(model.parameters, parts[ref]), name)
+        (_strangeness(model.parameters, present), name)
         for name, model in review.design.models.items()
-        if model.kind == "op-amp" and name != parts[ref].model and fits(model.parameters)
+        if model.kind == "op-amp" and name != present.model and fits(model.parameters)
         and all(_takes_supply(review, r, model.parameters) for r in together)
     ]  # fmt: skip
     return [
         Remedy(f"take {name} for {', '.join(together)}: {why}", [set_parameter(r, "model", name) for r in together])
         for _, name in sorted(found)[:MOST_MODELS]
     ]
+
+
+def in_packages_of(review: Review, amplifiers: Sequence[str]) -> list[str]:
+    """Amplifiers that share a package with any of these, themselves included; one model serves a package."""
+    parts = review.design.parts
+    packages = {parts[a].package for a in amplifiers}
+    return [ref for ref, part in parts.items() if part.kind == "op-amp" and part.package in packages]
 
 
 def _takes_supply(review: Review, ref: str, model: Any) -> bool:  # noqa: ANN401  # an amplifier's parameters
@@ -75,53 +83,40 @@ def _size(spread: Any) -> float:  # noqa: ANN401  # a spread or nothing
     return 0.0 if spread is None else max(abs(spread.min), abs(spread.max))
 
 
-def supply_behind(review: Review, net: str) -> str | None:
-    """The supply net that feeds a net, itself or through one resistor; None for ground."""
-    nets = review.design.nets
-    if nets[net].role == "supply":
-        return net
-    beyond = [
-        other
-        for part in review.design.parts.values()
-        if part.kind == "resistor" and net in part.pins.values()
-        for other in part.pins.values()
-    ]
-    return next((other for other in beyond if nets[other].role == "supply"), None)
-
-
-def higher_supply(review: Review, pin_net: str, missing: float) -> list[Remedy]:
+def higher_supply(review: Review, ref: str, pin: SupplyPin, missing: float) -> list[Remedy]:
     """Remedy that makes a supply greater by at least `missing` volts, where all amplifiers on it stand that.
 
     Parameters
     ----------
     review : Review
-    pin_net : str
-        Net of the supply pin concerned.
+    ref, pin : str
+        Amplifier and supply pin concerned.
     missing : float
         Volts missing at the worst condition.
     """
-    name = supply_behind(review, pin_net)
-    if name is None:
+    rails = Rails(review.design)
+    feed = rails.feed(review.design.parts[ref], pin)
+    net = review.design.nets.get(feed.source) if feed else None
+    if net is None or net.role != "supply" or net.voltage is None or not net.voltage.typ:
         return []
-    voltage = review.design.nets[name].voltage
-    assert voltage is not None
-    typ, weakest = abs(voltage.typ), min(abs(voltage.min), abs(voltage.max))
-    fitting = (u for u in USUAL_SUPPLIES if u > typ and (u - typ) * weakest / typ >= missing) if typ else ()
-    usual = next(iter(fitting), None)
-    if usual is None or not all(_stands(review, ref, name, usual / typ) for ref in review.design.parts):
+    typ, weakest = abs(net.voltage.typ), min(abs(net.voltage.min), abs(net.voltage.max))
+    usual = next((u for u in USUAL_SUPPLIES if u > typ and (u - typ) * weakest / typ >= missing), None)
+    if usual is None:
         return []
-    key, written = join_key(("nets", name, "voltage")), review.design.data["nets"][name]["voltage"]
     scale = usual / typ
-    ends = {end: quantity(scale * getattr(voltage, end), "V") for end in written} if isinstance(written, dict) else None
-    to = quantity(math.copysign(usual, voltage.typ), "V") if ends is None else ends
-    return [Remedy(f"make {name} {format_quantity(math.copysign(usual, voltage.typ), 'V')}", [Set(key, to)])]
+    more = (scale - 1) * max(abs(net.voltage.min), abs(net.voltage.max))
+    parts = review.design.parts.items()
+    on_it = [(r, p) for r, p in parts if p.kind == "op-amp" and net.name in _sources(rails, p)]
+    if any(p.supply is not None and total_supply(review, r)[1] + more > p.supply.max for r, p in on_it):
+        return []
+    written = review.design.data["nets"][net.name]["voltage"]
+    to: object = quantity(scale * net.voltage.typ, "V")
+    if isinstance(written, dict):
+        to = {end: quantity(scale * getattr(net.voltage, end), "V") for end in written}
+    title = f"make {net.name} {format_quantity(scale * net.voltage.typ, 'V')}"
+    return [Remedy(title, [Set(join_key(("nets", net.name, "voltage")), to)])]
 
 
-def _stands(review: Review, ref: str, supply: str, scale: float) -> bool:
-    """Whether an amplifier stands a supply made greater by a factor."""
-    part, points = review.design.parts[ref], review.operating_points
-    if part.kind != "op-amp" or supply not in [supply_behind(review, part.pins[p]) for p in ("V+", "V-")]:
-        return True
-    _, total = total_supply(review, ref)
-    more = (scale - 1) * float(points.worst(abs(points.voltage(supply))).value)
-    return bool(part.supply is None or total + more <= part.supply.max)
+def _sources(rails: Rails, part: Part) -> list[str]:
+    feeds = (rails.feed(part, pin) for pin in SUPPLY_PINS)
+    return [feed.source for feed in feeds if feed is not None]

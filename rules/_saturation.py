@@ -11,6 +11,7 @@ import numpy as np
 from rulecheck.api import OperatingPoints, Part, Review
 
 Mask = np.ndarray[Any, np.dtype[np.bool_]]
+Floats = np.ndarray[Any, np.dtype[np.float64]]
 Node = tuple[str, str]
 TWO_TERMINAL = ("resistor", "diode", "voltage-source", "potentiometer")
 OFF = 0.1

@@ -6,8 +6,9 @@ virtual ground at the level of one rail, or a follower whose signal comes near o
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Annotated, Any
 
 import numpy as np
@@ -28,9 +29,12 @@ from rulecheck.api import (
 )
 
 from ._edits import quantity
-from ._models import higher_supply, other_models
+from ._models import higher_supply, in_packages_of, other_models
+from ._rails import SupplyPin
 from ._saturation import SignalFlow
 
+LEVEL_STEP = 0.1
+"""Volts to which a reference level is rounded."""
 SLACK = 1e-3
 """Volts by which offset, bias current and finite gain move an input about its level."""
 
@@ -56,31 +60,31 @@ class InputHeadroom(Rule):
     def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
         """One finding for the amplifiers whose inputs stand at one fixed level, else one an amplifier."""
         flow = SignalFlow(review)
-        groups: dict[str, list[_Room]] = {}
-        for amplifier in flow.amplifiers:
-            rooms = [room for room in _rooms(review, flow, amplifier) if room.is_short(settings.margin)]
-            if rooms:
-                worst = min(rooms, key=lambda room: room.worst.value - room.wanted(settings.margin))
-                groups.setdefault(_level(review, amplifier), []).append(worst)
-        for level, rooms in groups.items():
-            yield self._finding(review, settings, level, rooms)
+        rooms = {amplifier: list(_rooms(review, flow, amplifier)) for amplifier in flow.amplifiers}
+        groups: dict[str, list[str]] = {}
+        for amplifier, own in rooms.items():
+            if any(room.missing(settings.margin) > SLACK for room in own):
+                groups.setdefault(_level(review, amplifier), []).append(amplifier)
+        for level, amplifiers in groups.items():
+            yield self._finding(review, settings, level, amplifiers, rooms)
 
-    def _finding(self, review: Review, settings: Settings, level: str, rooms: list[_Room]) -> Finding:
-        room = min(rooms, key=lambda room: room.worst.value)
-        amplifiers = list(dict.fromkeys(r.amplifier for r in rooms))
+    def _finding(
+        self, review: Review, settings: Settings, level: str, amplifiers: list[str], rooms: dict[str, list[_Room]]
+    ) -> Finding:
+        room = max((r for a in amplifiers for r in rooms[a]), key=lambda room: room.missing(settings.margin))
         outside = room.worst.value < -SLACK
-        pin, rail = f"{room.amplifier} {room.pin}", "V-" if room.side == "low" else "V+"
-        distance = format_quantity(room.worst.value + room.headroom, "V", 3)
-        missing = "outside" if outside else "within " + format_quantity(settings.margin, "V") + " of the end of"
+        rail = "V-" if room.side == "low" else "V+"
+        where = "outside" if outside else f"less than {format_quantity(settings.margin, 'V')} inside"
         return Finding(
-            f"{', '.join(amplifiers)}: {pin} is {distance} from {rail}, {missing} its range, which ends "
-            f"{format_quantity(room.headroom, 'V', 3)} from it",
+            f"{', '.join(amplifiers)}: {room.pin} of {room.amplifier} is {_distance(room.distance, rail)}, {where} "
+            f"its range, which ends {_distance(room.headroom, rail)}",
             parts=amplifiers, nets=[level] if level in review.design.nets else [],
             severity=Severity.MAJOR if outside else Severity.MINOR, conditions=room.worst.conditions,
             consequence=_consequence(review, amplifiers),
             evidence=[Evidence("distance of the input from the end of its range", room.worst.value, "V",
                                room.wanted(settings.margin), ">=", over=room.over, basis="limit")],
-            remedies=_remedies(review, settings, rooms), at=join_key(("parts", room.amplifier)),
+            remedies=_remedies(review, settings, amplifiers, rooms, room),
+            at=join_key(("parts", room.amplifier)),
         )  # fmt: skip
 
 
@@ -99,8 +103,14 @@ class _Room:
         """Least distance that is sound; none is asked of inputs that take in the rail."""
         return margin if self.headroom > 0 else 0.0
 
-    def is_short(self, margin: float) -> bool:
-        return self.worst.value < self.wanted(margin) - SLACK
+    def missing(self, margin: float) -> float:
+        """Volts by which it is too little."""
+        return self.wanted(margin) - self.worst.value
+
+    @property
+    def distance(self) -> float:
+        """Distance from the rail [V]."""
+        return self.worst.value + self.headroom
 
 
 def _rooms(review: Review, flow: SignalFlow, amplifier: str) -> Iterable[_Room]:
@@ -135,36 +145,39 @@ def _consequence(review: Review, amplifiers: list[str]) -> str:
     return f"{words}; the law of {', '.join(outputs)} does not hold there" if outputs else words
 
 
-def _remedies(review: Review, settings: InputHeadroom.Settings, rooms: list[_Room]) -> list[Remedy]:
-    worst = min(rooms, key=lambda room: room.worst.value)
-    part = review.design.parts[worst.amplifier]
-    missing = worst.wanted(settings.margin) - worst.worst.value
-    found = _other_level(review, settings, worst)
-    found += higher_supply(review, part.pins["V-" if worst.side == "low" else "V+"], missing)
-    distances = {side: min((r.worst.value + r.headroom for r in rooms if r.side == side), default=np.inf)
-                 for side in ("low", "high")}  # fmt: skip
+def _distance(volts: float, rail: str) -> str:
+    words = format_quantity(abs(volts), "V", 3)
+    return f"{words} from {rail}" if volts >= 0 else f"{words} beyond {rail}"
+
+
+def _remedies(
+    review: Review, settings: InputHeadroom.Settings, amplifiers: list[str], rooms: dict[str, list[_Room]], worst: _Room
+) -> list[Remedy]:
+    rail: SupplyPin = "V-" if worst.side == "low" else "V+"
+    together = [room for a in in_packages_of(review, amplifiers) for room in rooms[a]]
 
     def fits(model: Any) -> bool:  # noqa: ANN401  # an amplifier's parameters
-        ends = {side: getattr(model.input_headroom, side).max for side in distances}
-        return all(d - ends[s] >= (settings.margin if ends[s] > 0 else 0.0) - SLACK for s, d in distances.items())
+        others = (replace(room, headroom=getattr(model.input_headroom, room.side).max) for room in together)
+        return all(
+            new.wanted(settings.margin) <= room.distance - new.headroom + SLACK
+            for new, room in zip(others, together, strict=True)
+        )
 
-    why = f"its inputs go to within {format_quantity(distances[worst.side], 'V', 3)} of the rail"
-    found += other_models(review, worst.amplifier, fits, ("input_headroom",), why)
+    found = _other_level(review, settings, worst)
+    found += higher_supply(review, worst.amplifier, rail, worst.missing(settings.margin))
+    why = f"its inputs may stand {_distance(worst.distance, rail)}"
+    found += other_models(review, amplifiers, fits, ("input_headroom",), why)
     return found or [Remedy("keep the input inside the range: divide the signal before it, or shift its level")]
 
 
 def _other_level(review: Review, settings: InputHeadroom.Settings, worst: _Room) -> list[Remedy]:
     """Move the reference that sets the level, where one does so directly."""
-    part = review.design.parts[worst.amplifier]
-    references = [n for n in (part.pins["IN+"], part.pins["IN-"]) if review.design.nets[n].role == "reference"]
-    if not references:
+    pins = review.design.parts[worst.amplifier].pins
+    net = next((pins[p] for p in ("IN+", "IN-") if review.design.nets[pins[p]].role == "reference"), None)
+    if net is None or not isinstance(review.design.data["nets"][net]["voltage"], str):
         return []
-    net = references[0]
     voltage = review.design.nets[net].voltage
     assert voltage is not None
-    if isinstance(review.design.data["nets"][net]["voltage"], dict):
-        return []
-    step = 0.1
-    shift = step * np.ceil((worst.wanted(settings.margin) - worst.worst.value) / step)
+    shift = LEVEL_STEP * math.ceil(worst.missing(settings.margin) / LEVEL_STEP)
     to = quantity(voltage.typ + (shift if worst.side == "low" else -shift), "V")
     return [Remedy(f"make {net} {to}", [Set(join_key(("nets", net, "voltage")), to)])]

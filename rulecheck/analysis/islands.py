@@ -14,6 +14,7 @@ import networkx as nx
 import numpy as np
 
 from ..circuit.islands import Copy, Island, equal_islands, islands
+from ..circuit.wiring import is_ideal
 from ..design.frozen import FrozenDict
 from ..devices.constants import Array, IntArray
 from .conditions import Conditions, typical_row
@@ -75,7 +76,7 @@ def cut(design: Design, circuit: Circuit, apart: frozenset[str] = frozenset()) -
     -------
     tuple of Piece
     """
-    whole = _joined_by_heat(design, islands(design, circuit))
+    whole = _joined(design, islands(design, circuit))
     changed = tuple(i for i in whole if apart.intersection(i.parts))
     same = equal_islands(design, circuit, tuple(i for i in whole if not apart.intersection(i.parts)))
     own = tuple((_itself(island),) for island in changed)
@@ -86,8 +87,8 @@ def _itself(island: Island) -> Copy:
     return Copy(island, {p: p for p in island.parts}, {n: n for n in (*island.nets, *island.boundary)})
 
 
-def _joined_by_heat(design: Design, found: tuple[Island, ...]) -> tuple[Island, ...]:
-    """Join islands whose parts warm each other."""
+def _joined(design: Design, found: tuple[Island, ...]) -> tuple[Island, ...]:
+    """Join islands whose parts warm each other, or that hang on one source part, whose current is of them all."""
     thermal = build_thermal(design)
     place = {ref: i for i, island in enumerate(found) for ref in island.parts}
     nodes = nx.Graph()
@@ -99,6 +100,10 @@ def _joined_by_heat(design: Design, found: tuple[Island, ...]) -> tuple[Island, 
     for a, b in ((int(a), int(b)) for a, b in warms):
         together = sorted(by_node.get(a, set()) | by_node.get(b, set()))
         nodes.add_edges_from((together[0], other) for other in together)
+    for net in design.nets.values():
+        if not is_ideal(net):
+            touching = [i for i, island in enumerate(found) if net.name in island.boundary]
+            nodes.add_edges_from((touching[0], other) for other in touching[1:])
     groups = [sorted(group) for group in nx.connected_components(nodes)]
     return tuple(_join(design, [found[i] for i in group]) for group in sorted(groups))
 

@@ -130,9 +130,10 @@ def _margins(ratio: Ratio, grid: Array, where: Array) -> dict[str, Array]:
 def _unwrapped(value: ComplexArray, dc: Array) -> Array:
     """Phase [deg] of each grid point, counted on from the value at DC."""
     start = np.where(dc < 0, -180.0, 0.0)
-    first = np.degrees(np.angle(value[:, :1] / dc[:, None]))
-    steps = np.degrees(np.angle(value[:, 1:] / value[:, :-1]))
-    return start[:, None] + np.cumsum(np.concatenate([first, steps], axis=1), axis=1)
+    angle = np.degrees(np.angle(value))
+    reference = np.where(dc < 0, 180.0, 0.0)
+    steps = np.diff(np.concatenate([reference[:, None], angle], axis=1), axis=1)
+    return start[:, None] + np.cumsum((steps + 180) % 360 - 180, axis=1)
 
 
 def _crossings(
@@ -164,15 +165,22 @@ def _least(order: Array, value: Array, frequency: Array, rows: Array, count: int
 GOLDEN = (np.sqrt(5) - 1) / 2
 
 
+NEAR_LEAST = 1.3
+"""A minimum between grid points may be deeper than the least one seen: all that come this near are refined."""
+
+
 def _modulus(ratio: Ratio, grid: Array, where: Array, value: ComplexArray) -> Array:
-    """Least ``|1 + T|``, by golden section about the least grid point."""
+    """Least ``|1 + T|``, by golden section about the low grid points."""
     distance = np.abs(1 + value)
-    rows = np.arange(len(where))
-    cell = distance.argmin(axis=1)
-    low = np.log(grid[rows, np.maximum(cell - 1, 0)])
-    high = np.log(grid[rows, np.minimum(cell + 1, grid.shape[1] - 1)])
+    padded = np.pad(distance, ((0, 0), (1, 1)), constant_values=np.inf)
+    low_points = (distance <= padded[:, :-2]) & (distance <= padded[:, 2:])
+    least = distance.min(axis=1)
+    rows, cells = np.nonzero(low_points & (distance <= NEAR_LEAST * least[:, None]))
+    low = np.log(grid[rows, np.maximum(cells - 1, 0)])
+    high = np.log(grid[rows, np.minimum(cells + 1, grid.shape[1] - 1)])
     for _ in range(40):
         one, two = high - GOLDEN * (high - low), low + GOLDEN * (high - low)
-        left = np.abs(1 + ratio.at(np.exp(one), where)) < np.abs(1 + ratio.at(np.exp(two), where))
+        left = np.abs(1 + ratio.at(np.exp(one), where[rows])) < np.abs(1 + ratio.at(np.exp(two), where[rows]))
         high, low = np.where(left, two, high), np.where(left, low, one)
-    return np.minimum(np.abs(1 + ratio.at(np.exp((low + high) / 2), where)), distance[rows, cell])
+    np.minimum.at(least, rows, np.abs(1 + ratio.at(np.exp((low + high) / 2), where[rows])))
+    return least

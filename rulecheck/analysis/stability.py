@@ -21,6 +21,7 @@ SLOWEST_SHARE = 1e-14
 DAMPING_SPAN = 100.0
 """Damping is judged below this many times the largest gain-bandwidth."""
 TAKES_PART = 0.2
+UNBOUNDED = 1e-100
 
 
 @dataclass(frozen=True)
@@ -104,7 +105,9 @@ class ReturnRatio:
         if s.ndim > weight.ndim - 1:
             weight, mu, start = weight[:, None, :], mu[:, None, :], start[:, None]
         u = start - s * np.sum(weight / (1 + s[..., None] * mu), axis=-1)
-        ratio: ComplexArray = -u / (1 + u)
+        left = 1 + u
+        # it rounds to 0 where T is beyond the reach of the arithmetic, as with ideal amplifiers at DC
+        ratio: ComplexArray = -u / np.where(left == 0, UNBOUNDED, left)
         return ratio
 
 
@@ -168,6 +171,8 @@ class CircuitLoops:
     def participation(self) -> BoolArray:
         """Which amplifiers take part in the critical mode, shape (conditions, amplifiers)."""
         rows = np.arange(len(self._critical))
+        if not self.modes.columns.size:
+            return np.zeros((len(rows), len(self.system.amplifiers)), bool)
         right = self.modes.right[rows, :, self._critical]
         share = np.abs(right * self.modes.left[rows, self._critical, :])
         place = {int(c): i for i, c in enumerate(self.modes.columns)}
@@ -234,6 +239,9 @@ def _ratios(s: ComplexArray, fastest: float) -> Array:
 
 def _judge(modes: Modes, fastest: float) -> tuple[Array, Array, Array, AnyArray]:
     s = modes.frequency
+    if not s.shape[1]:  # nothing stores energy
+        none = np.full(len(s), np.nan)
+        return none, np.ones(len(s)), none, np.zeros(len(s), dtype=int)
     size = np.abs(s)
     real = np.where(np.isfinite(size), s.real, -np.inf)
     rightmost = real.max(axis=1, initial=-np.inf)

@@ -128,22 +128,30 @@ def _carrying(wiring: Wiring, steps: tuple[Step, ...]) -> Iterator[Step]:
 
 def _at_work(wiring: Wiring, routes: list[Route], levels: Mapping[str, float], known: tuple[str, ...]) -> list[Route]:
     """Choose the routes of one amplifier through junctions that conduct."""
-    through = [route for route in routes if _junctions(wiring, route) and set(_junctions(wiring, route)) <= set(known)]
+    through = [r for r in routes if set(_junctions(wiring, r)) <= set(known) and _direction(wiring, r)]
     with_transistor = [r for r in through if not all(is_diode_like(wiring, ref) for ref in _junctions(wiring, r))]
     if with_transistor:
         through = [route for route in with_transistor if not _has_diode(wiring, route)] or with_transistor
     elif any(not _junctions(wiring, route) for route in routes):
         return []
-    by_direction = {sign: [r for r in through if _direction(wiring, r) == sign] for sign in (1, -1)}
+    if not through:
+        return []
     own = {step.part for route in routes for step in route.steps}
-    wanted = direction(wiring, levels, wiring.point_of[routes[0].net], own) if through else 0
-    if with_transistor and not (by_direction[1] and by_direction[-1]):
-        return by_direction[1] + by_direction[-1]  # of the wrong polarity it is a fault, but the log element
-    if wanted or not (by_direction[1] and by_direction[-1]):
-        return by_direction[wanted] if wanted else by_direction[1] + by_direction[-1]
-    if not with_transistor and any(len(route.steps) > len(_junctions(wiring, route)) for route in through):
+    wanted = direction(wiring, levels, wiring.point_of[routes[0].net], own)
+    first = _direction(wiring, through[0])
+    along = [route for route in through if _direction(wiring, route) == first]
+    if len(along) == len(through):
+        # A transistor of the wrong polarity is a fault and yet the log element; a diode limits in waiting.
+        return through if wanted in (first, 0) or _has_transistor(wiring, through) else []
+    if wanted == -first:
+        return [route for route in through if route not in along]
+    if not wanted and not with_transistor and any(len(r.steps) > len(_junctions(wiring, r)) for r in through):
         return []  # a rectifier: either branch conducts in its turn
-    return by_direction[_direction(wiring, through[0])]
+    return along
+
+
+def _has_transistor(wiring: Wiring, routes: list[Route]) -> bool:
+    return any(wiring.design.parts[s.part].kind in TRANSISTORS for route in routes for s in route.steps)
 
 
 def _junctions(wiring: Wiring, route: Route) -> list[str]:
@@ -215,8 +223,7 @@ def _series_ends(wiring: Wiring, ref: str) -> tuple[str, str] | None:
 
 
 def _is_diode(wiring: Wiring, ref: str) -> bool:
-    part = wiring.design.parts.get(ref)
-    return part is not None and part.kind in ("diode", *TRANSISTORS) and is_diode_like(wiring, ref)
+    return ref in wiring.design.parts and junction_ends(wiring, ref) is not None and is_diode_like(wiring, ref)
 
 
 def _is_mirror(wiring: Wiring, ref: str) -> bool:
@@ -225,7 +232,7 @@ def _is_mirror(wiring: Wiring, ref: str) -> bool:
     if part.kind not in TRANSISTORS:
         return False
     others = (r for r, pin in wiring.pins_at.get(wiring.point(ref, "B"), ()) if pin == "B" and r != ref)
-    return any(wiring.design.parts[r].kind == part.kind and not is_diode_like(wiring, r) for r in others)
+    return any(wiring.design.parts[r].kind == part.kind and not _is_diode(wiring, r) for r in others)
 
 
 def _goes_on(wiring: Wiring, ref: str, point: str, at_work: set[str]) -> bool:

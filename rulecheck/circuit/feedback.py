@@ -8,7 +8,7 @@ from dataclasses import dataclass, field
 from typing import Literal
 
 from .surrogate import Feedback
-from .wiring import TRANSISTORS, Wiring, ends
+from .wiring import TRANSISTORS, Wiring, ends, has_pins
 
 LONGEST_PATH = 16  # parts; the longest sensible loop through two amplifiers and their log transistors has ten
 MOST_PATHS = 64  # an amplifier and input
@@ -80,7 +80,7 @@ def summing_nodes(wiring: Wiring, feedback: Iterable[Feedback]) -> tuple[Summing
         held: Input = "IN-" if loop.input == "IN-" else "IN+"
         level = pins["IN+" if held == "IN-" else "IN-"]
         point = wiring.point_of[pins[held]]
-        if point in wiring.known:
+        if point in wiring.sourced:
             continue
         joined = [net for net in wiring.nets_at[point] if net != pins[held] and wiring.passes_current(net)]
         for net in (pins[held], *joined):
@@ -121,7 +121,7 @@ class _Search:
 
     def run(self) -> Iterator[FeedbackLoop]:
         start = self.pins["OUT"]
-        if self.wiring.point_of[start] in self.wiring.known:
+        if self.wiring.point_of[start] in self.wiring.sourced:
             return
         queue: deque[tuple[tuple[str, ...], tuple[Step, ...]]] = deque([((start,), ())])
         counts: dict[Input, int] = {"IN-": 0, "IN+": 0}
@@ -130,7 +130,7 @@ class _Search:
                 return
             nets, steps = queue.popleft()
             for pin in counts:
-                arrived = nets[-1] == self.pins[pin] and self.wiring.point_of[nets[-1]] not in self.wiring.known
+                arrived = nets[-1] == self.pins[pin] and self.wiring.point_of[nets[-1]] not in self.wiring.sourced
                 if arrived and counts[pin] < MOST_PATHS:
                     counts[pin] += 1
                     yield FeedbackLoop(self.amplifier, pin, tuple(dict.fromkeys(s.part for s in steps)), nets, steps)
@@ -140,7 +140,7 @@ class _Search:
     def _passes(self, net: str, steps: tuple[Step, ...]) -> bool:
         """Whether a signal goes on from a net that it has reached."""
         point = self.wiring.point_of[net]
-        if point in self.wiring.known:
+        if point in self.wiring.sourced:
             return False
         return steps[-1].exit == "OUT" or not self.wiring.is_driven(point) or self._is_along(steps[-1])
 
@@ -183,10 +183,10 @@ def exits(wiring: Wiring, ref: str, pin: str) -> tuple[str, ...]:
         if pin == "WIPER" or "WIPER" not in part.pins:
             return tuple(other for other in part.pins if other != pin)
         return ("WIPER",)
-    if part.kind in TRANSISTORS:
-        tied = "B" in part.pins and part.pins.get("C") == part.pins["B"]
+    if part.kind in TRANSISTORS and has_pins(part, "C", "B", "E"):
+        tied = part.pins["C"] == part.pins["B"]
         ways = {"C": ("E",), "E": ("C",)} if tied else {"B": ("C", "E"), "E": ("C",)}
-        return tuple(other for other in ways.get(pin, ()) if other in part.pins)
+        return ways.get(pin, ())
     if part.kind == "op-amp" and pin in ("IN+", "IN-") and "OUT" in part.pins:
         return ("OUT",)
     return ()

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 import networkx as nx
 from networkx.algorithms.isomorphism import GraphMatcher
 
-from .wiring import ends, is_ideal
+from .wiring import is_ideal, joined_by_sources, voltage_sources
 
 if TYPE_CHECKING:
     from rulecheck.design.model import Design, Net, Part
@@ -89,11 +89,7 @@ def islands(design: Design, graph: Circuit) -> tuple[Island, ...]:
 
 def ideal_nets(design: Design) -> frozenset[str]:
     """Names of nets that an ideal source holds, or a chain of voltage sources from such a net."""
-    held = {name for name, net in design.nets.items() if is_ideal(net)}
-    pairs = [pair for part in design.parts.values() if part.kind == "voltage-source" and (pair := ends(part))]
-    while grown := {net for a, b in pairs for net, other in ((a, b), (b, a)) if other in held} - held:
-        held |= grown
-    return frozenset(held)
+    return joined_by_sources((n for n, net in design.nets.items() if is_ideal(net)), voltage_sources(design))
 
 
 def equal_islands(design: Design, graph: Circuit, found: tuple[Island, ...]) -> tuple[tuple[Copy, ...], ...]:

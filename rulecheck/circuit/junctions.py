@@ -226,7 +226,8 @@ class Distances:
         ways = (
             (a, b)
             for a, b, pin in graph.edges(keys=True)
-            if pin not in ("V+", "V-") and not any(k == "net" and wiring.point_of[n] in wiring.known for k, n in (a, b))
+            if pin not in ("V+", "V-")
+            and not any(k == "net" and wiring.point_of[n] in wiring.sourced for k, n in (a, b))
         )
         self.ways: nx.Graph[tuple[str, str]] = nx.Graph(ways)
         self.found: dict[str, dict[tuple[str, str], int]] = {}

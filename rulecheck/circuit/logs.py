@@ -164,7 +164,7 @@ def _load(wiring: Wiring, ref: str, held: Mapping[str, str]) -> Literal["summing
     point = wiring.point(ref, "C")
     if point in held:
         return "summing"
-    if point in wiring.known:
+    if point in wiring.sourced:
         return None
     for other, pin in wiring.pins_at[point]:
         kind = wiring.design.parts[other].kind

@@ -118,8 +118,8 @@ def _causes(wiring: Wiring, point: str, working: Collection[str]) -> Iterator[tu
                 yield ref, emitter, False
 
 
-def direction(wiring: Wiring, levels: Mapping[str, float], point: str, own: Collection[str]) -> int:
-    """Direction of the current that reaches a held point through resistors, sources and collectors.
+def direction(wiring: Wiring, levels: Mapping[str, float], point: str, own: Collection[str]) -> int | None:
+    """Tell the direction of the current that resistors, sources and collectors bring to a held point.
 
     Parameters
     ----------
@@ -132,8 +132,9 @@ def direction(wiring: Wiring, levels: Mapping[str, float], point: str, own: Coll
 
     Returns
     -------
-    int
-        +1 into the point, -1 out of it, 0 where the contributions disagree, change sign, or none is known.
+    int or None
+        +1 into the point, -1 out of it, 0 where nothing is known or contributions disagree; None where an
+        input takes the current through zero.
     """
     signs = set(_resistive_signs(wiring, levels, point))
     for net in wiring.nets_at[point]:
@@ -147,10 +148,12 @@ def direction(wiring: Wiring, levels: Mapping[str, float], point: str, own: Coll
             signs.add(1 if points[0] == point else -1)
         elif part.kind in TRANSISTORS and pin == "C" and has_pins(part, "B") and not is_diode_like(wiring, ref):
             signs.add(1 if part.kind == "pnp" else -1)
+    if None in signs:
+        return None
     return signs.pop() if len(signs) == 1 else 0
 
 
-def _resistive_signs(wiring: Wiring, levels: Mapping[str, float], start: str) -> Iterator[int]:
+def _resistive_signs(wiring: Wiring, levels: Mapping[str, float], start: str) -> Iterator[int | None]:
     """Signs of the voltages that stand behind the resistors of a point."""
     level = levels.get(start)
     if level is None:
@@ -174,14 +177,14 @@ def _resistive_signs(wiring: Wiring, levels: Mapping[str, float], start: str) ->
                 queue.append(other)
 
 
-def _side(span: tuple[float, float] | None, level: float) -> int:
-    """Side of a level on which a range lies; a range may reach across by a tenth."""
+def _side(span: tuple[float, float] | None, level: float) -> int | None:
+    """Side of a level on which a range lies, a tenth of it left out of account; None for both."""
     if span is None:
         return 0
     above, below = max(span[1] - level, 0.0), max(level - span[0], 0.0)
     if above > 10.0 * below:
         return 1
-    return -1 if below > 10.0 * above else 0
+    return -1 if below > 10.0 * above else None
 
 
 def forward_voltage(wiring: Wiring, ends: tuple[str, str], levels: Mapping[str, float]) -> float:
@@ -227,5 +230,6 @@ def _unloaded(wiring: Wiring, point: str, levels: Mapping[str, float], rest: flo
 
 def _greatest(wiring: Wiring, name: str | None, rest: float) -> float:
     """The end of an input's range that is further from zero; `rest` for what is no input."""
-    span = wiring.design.nets[name].range if name in wiring.design.nets else None
+    net = wiring.design.nets.get(name) if name else None
+    span = net.range if net is not None else None
     return max(span, key=abs) if span is not None else rest

@@ -79,6 +79,8 @@ class Wiring:
     design : Design
     point_of : mapping of net to point
     known : mapping of point to the name of the net or input that sets it, empty for ground
+    sourced : frozenset of point
+        The known ones, and those that voltage sources join to them.
     resistances : tuple of Resistance
         Between different points only.
     resistances_at : mapping of point to those resistances that end there
@@ -90,6 +92,7 @@ class Wiring:
     design: Design
     point_of: Mapping[str, str]
     known: Mapping[str, str]
+    sourced: frozenset[str]
     resistances: tuple[Resistance, ...]
     resistances_at: Mapping[str, tuple[Resistance, ...]]
     pins_at: Mapping[str, tuple[tuple[str, str], ...]]
@@ -115,7 +118,7 @@ class Wiring:
 
     def is_driven(self, point: str) -> bool:
         """Whether an amplifier's output or an ideal source sets the point."""
-        return point in self.known or any(pin == "OUT" for _, pin in self.pins_at.get(point, ()))
+        return point in self.sourced or any(pin == "OUT" for _, pin in self.pins_at.get(point, ()))
 
     def carriers_at(self, point: str) -> list[str]:
         """List what can carry current at a point, one entry a pin; empty text for loads and inputs."""
@@ -200,16 +203,33 @@ def _wire(design: Design, points: _Points, raw: list[Resistance]) -> Wiring:
     pins_on = _grouped((net, (ref, pin)) for ref, part in design.parts.items() for pin, net in part.pins.items())
     moved = (Resistance(r.part, point_of[r.a], point_of[r.b], r.ohm) for r in raw)
     resistances = tuple(r for r in moved if r.a != r.b)
+    known = {point: name for point, name in points.known.items() if point_of[point] == point}
+    pairs = [(point_of[a], point_of[b]) for a, b in voltage_sources(design)]
     return Wiring(
         design=design,
         point_of=point_of,
-        known={point: name for point, name in points.known.items() if point_of[point] == point},
+        known=known,
+        sourced=joined_by_sources(known, pairs),
         resistances=resistances,
         resistances_at=_grouped((end, r) for r in resistances for end in (r.a, r.b)),
         pins_at=_grouped((point, pin) for net, point in point_of.items() for pin in pins_on.get(net, ())),
         pins_on=pins_on,
         nets_at={p: tuple(n for n in nets if n in design.nets) for p, nets in _members(point_of).items()},
     )
+
+
+def voltage_sources(design: Design) -> list[tuple[str, str]]:
+    """Nets of the voltage sources, in pairs."""
+    return [nets for part in design.parts.values() if part.kind == "voltage-source" and (nets := ends(part))]
+
+
+def joined_by_sources(held: Iterable[str], pairs: Iterable[tuple[str, str]]) -> frozenset[str]:
+    """Names that are held, and those that chains of voltage sources join to them."""
+    found = set(held)
+    ways = [way for pair in pairs for way in (pair, pair[::-1])]
+    while grown := {there for here, there in ways if here in found} - found:
+        found |= grown
+    return frozenset(found)
 
 
 def _members(point_of: Mapping[str, str]) -> dict[str, tuple[str, ...]]:

@@ -8,9 +8,9 @@ from typing import TYPE_CHECKING, Any
 from rulecheck.report.json import FORMAT, dump, plain, tool
 
 if TYPE_CHECKING:
+    from rulecheck.analysis.loops import Loops
     from rulecheck.analysis.operating_points import OperatingPoints
     from rulecheck.analysis.review import Review
-    from rulecheck.analysis.loops import Loops
     from rulecheck.analysis.transfer import Transfer
     from rulecheck.design.model import Part
 
@@ -50,15 +50,27 @@ def arrays(review: Review) -> Figures:
         "file": str(design.path),
         "title": design.title,
         "points": dict(points.conditions.values),
-        "converged": points.converged,
-        "nets": {name: points.voltage(name) for name in design.nets},
-        "parts": {ref: _part(points, part) for ref, part in design.parts.items()},
+        **point_figures(points),
         "loops": {ref: _loop(review.loops, ref) for ref, part in design.parts.items() if part.kind == "op-amp"},
         "natural_frequencies": {
             "rightmost": review.loops.rightmost,
             "least_damping": review.loops.least_damping,
         },
         "requirements": {name: _requirement(transfer) for name, transfer in review.transfer.items()},
+    }
+
+
+def point_figures(points: OperatingPoints) -> Figures:
+    """What is known of operating points alone: nets and parts, arrays over conditions.
+
+    Parameters
+    ----------
+    points : OperatingPoints
+    """
+    return {
+        "converged": points.converged,
+        "nets": {name: points.voltage(name) for name in points.design.nets},
+        "parts": {ref: _part(points, part) for ref, part in points.design.parts.items()},
     }
 
 

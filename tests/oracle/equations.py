@@ -24,11 +24,7 @@ class Point:
     def voltages(self):
         """Voltage of every net that the design names."""
         internal = (":", " inside ", "clamp ", " source")
-        return {
-            name: self.voltage(name)
-            for name in self.network.index
-            if not any(mark in name for mark in internal)
-        }
+        return {name: self.voltage(name) for name in self.network.index if not any(mark in name for mark in internal)}
 
     def states(self):
         """State of every amplifier."""
@@ -66,9 +62,7 @@ class Point:
             rail = high if out > 0 else low
             return (high - low) * amplifier.p.supply_current + (rail - self.voltage(pins["OUT"])) * out
         if ref in self.network.resistors:
-            return (self.voltage(pins[0]) - self.voltage(pins[1])) ** 2 / self.network.resistors[
-                ref
-            ].resistance
+            return (self.voltage(pins[0]) - self.voltage(pins[1])) ** 2 / self.network.resistors[ref].resistance
         return 0.0
 
 

@@ -151,9 +151,7 @@ class Network(Equations):
         )
         leakage = p.reverse_leakage * 2 ** ((t - NORMAL) / p.leakage_doubling)
         anode = self.behind(ref, table, "A", p.series_resistance)
-        junction = Junction(
-            anode, table["pins"]["K"], p.saturation_current * grown, n * thermal_voltage(t), leakage
-        )
+        junction = Junction(anode, table["pins"]["K"], p.saturation_current * grown, n * thermal_voltage(t), leakage)
         junction.fixed_capacitance, junction.transit_time = p.capacitance, p.transit_time
         self.add(junction)
 

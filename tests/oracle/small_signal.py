@@ -62,12 +62,7 @@ class Linear:
         """Finite natural frequencies in 1/s."""
         rows = np.max(np.abs(self.g), axis=1)
         g, c = self.g / rows[:, None], self.c / rows[:, None]
-        top = (
-            1e4
-            * 2
-            * math.pi
-            * max((a.p.gain_bandwidth for a in self.network.amplifiers.values()), default=1e9)
-        )
+        top = 1e4 * 2 * math.pi * max((a.p.gain_bandwidth for a in self.network.amplifiers.values()), default=1e9)
         # unit of time near the fastest pole keeps the pencil balanced
         alpha, beta = scipy.linalg.eig(-g, c * top, right=False, homogeneous_eigvals=True)
         finite = np.abs(beta) > 1e-13 * np.hypot(np.abs(alpha), np.abs(beta))
@@ -82,9 +77,7 @@ class Linear:
         """Least damping ratio over complex pairs, 1 where there is none."""
         fastest = max((a.p.gain_bandwidth for a in self.network.amplifiers.values()), default=math.inf)
         values = self.natural_frequencies()
-        pairs = values[
-            (np.abs(values.imag) > 1e-7 * np.abs(values)) & (np.abs(values) < 200 * math.pi * fastest)
-        ]
+        pairs = values[(np.abs(values.imag) > 1e-7 * np.abs(values)) & (np.abs(values) < 200 * math.pi * fastest)]
         return float(np.min(-pairs.real / np.abs(pairs))) if len(pairs) else 1.0
 
     def return_ratio(self, ref, frequency):

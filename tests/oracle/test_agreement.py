@@ -10,6 +10,7 @@ import functools
 from pathlib import Path
 
 import pytest
+
 from rulecheck.testing import figures_of
 
 from .equations import solve

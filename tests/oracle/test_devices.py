@@ -118,13 +118,9 @@ def test_diode(temperature):
         vt, ratio, per_volt = constants(temperature)
         n = p["emission_coefficient"]
         i_s = (
-            p["saturation_current"]
-            * ratio ** (p["temperature_exponent"] / n)
-            * mpmath.exp(p["bandgap"] / n * per_volt)
+            p["saturation_current"] * ratio ** (p["temperature_exponent"] / n) * mpmath.exp(p["bandgap"] / n * per_volt)
         )
-        leak = p["reverse_leakage"] * 2 ** (
-            (mpmath.mpf(temperature) - mpmath.mpf(298.15)) / p["leakage_doubling"]
-        )
+        leak = p["reverse_leakage"] * 2 ** ((mpmath.mpf(temperature) - mpmath.mpf(298.15)) / p["leakage_doubling"])
 
         def law(v):
             return i_s * mpmath.expm1(v / (n * vt)) - leak * max(0, -mpmath.expm1(v / (n * vt)))

@@ -135,9 +135,7 @@ def text_of(parts, nets, **tables):
     nets = {"GND": {"role": "ground"}, "VP": supply(15.0), "VN": supply(-15.0), **nets}
     lines = ["format = 1", 'catalogues = ["parts.toml"]', "[design]", 'title = "check"']
     for name, table in {"nets": nets, "parts": parts, **tables}.items():
-        for header, keys in (
-            [(f"[[{name}]]", t) for t in table] if isinstance(table, list) else [(f"[{name}]", table)]
-        ):
+        for header, keys in [(f"[[{name}]]", t) for t in table] if isinstance(table, list) else [(f"[{name}]", table)]:
             lines += [header, *(f'"{key}" = {toml(entry)}' for key, entry in keys.items())]
     return "\n".join(lines) + "\n"
 

@@ -11,6 +11,7 @@ import json
 from pathlib import Path
 
 import pytest
+
 from rulecheck.testing import fault_figures_of, figures_of
 
 CASES = Path(__file__).parent / "cases"
@@ -55,9 +56,7 @@ def worst(pairs, allowed):
 def paired(records, series, key):
     """Found and expected figures of every record by name."""
     return {
-        (k, name): (series(name)[k], wanted)
-        for k, record in enumerate(records)
-        for name, wanted in record[key].items()
+        (k, name): (series(name)[k], wanted) for k, record in enumerate(records) for name, wanted in record[key].items()
     }
 
 

@@ -55,7 +55,5 @@ def test_offset_current_with_compensation(r1, r2, bias, offset, error):
     found = error_figures(r1, r2, True, bias, offset)
     assert found["nets"]["OUT"][0] == pytest.approx(0.0, abs=1e-6)
     budget = found["requirements"]["gain"]["budget"]
-    shares = [
-        entry["contribution"][0] for entry in budget if entry["parameter"].endswith("U1.offset_current")
-    ]
+    shares = [entry["contribution"][0] for entry in budget if entry["parameter"].endswith("U1.offset_current")]
     assert [abs(share) for share in shares] == pytest.approx([error], rel=1e-4)

@@ -72,9 +72,7 @@ def test_three_pole_loop_against_control_theory():
         "C": capacitor("IN", "GND", 1 / (TURN * 1e3 * 10e6)),
     }
     s = control.tf("s")
-    check_loop(
-        figures(parts, {}), 1e4 / ((1 + s / (TURN * 100)) * (1 + s / (TURN * 1e6)) * (1 + s / (TURN * 1e7)))
-    )
+    check_loop(figures(parts, {}), 1e4 / ((1 + s / (TURN * 100)) * (1 + s / (TURN * 1e6)) * (1 + s / (TURN * 1e7))))
 
 
 def test_resistive_network_against_computer_algebra():
@@ -144,13 +142,10 @@ def test_diode_on_a_resistor_against_lambert_w():
     """A diode behind a resistor carries the current of the Lambert W solution (scipy)."""
     resistance, i_s = 4.7e3, 1e-12
     parts = {"R": resistor("VIN", "A", resistance), "D": diode("A", "GND", saturation_current=i_s)}
-    points = [
-        {"VIN": v, "ambient": t} for t in (253.15, 298.15, 358.15) for v in (-3.0, -0.1, 0.2, 0.5, 0.8, 3.0)
-    ]
+    points = [{"VIN": v, "ambient": t} for t in (253.15, 298.15, 358.15) for v in (-3.0, -0.1, 0.2, 0.5, 0.8, 3.0)]
     found = figures(parts, {"VIN": voltage_input(-5.0, 5.0)}, points)["parts"]["D"]["current"]
     for point, current in zip(points, found, strict=True):
-        vt, hot = thermal_voltage(point["ambient"]), i_s * i_s / saturation(i_s, point["ambient"])
-        w = scipy.special.lambertw(
-            hot * resistance / vt * math.exp((point["VIN"] + hot * resistance) / vt)
-        ).real
+        vt, growth = thermal_voltage(point["ambient"]), i_s / saturation(i_s, point["ambient"])
+        hot = i_s * growth
+        w = scipy.special.lambertw(hot * resistance / vt * math.exp((point["VIN"] + hot * resistance) / vt)).real
         assert current == pytest.approx(vt / resistance * w - hot, rel=1e-7, abs=1e-15)

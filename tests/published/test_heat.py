@@ -14,9 +14,7 @@ def loaded_follower(supply_current, loads, theta, ambient):
         **{f"RL{k}": resistor("OUT", "GND", value) for k, value in enumerate(loads)},
     }
     nets = {"VP": supply(5.0), "VN": supply(-5.0), "VIN": voltage_input(-2.5, 2.5)}
-    found = figures(
-        parts, nets, [{"VIN": 2.5, "ambient": ambient}], packages={"U1": {"theta_ja": f"{theta} K/W"}}
-    )
+    found = figures(parts, nets, [{"VIN": 2.5, "ambient": ambient}], packages={"U1": {"theta_ja": f"{theta} K/W"}})
     temperature = found["parts"]["U1"]["temperature"][0]
     return temperature - 273.15, (temperature - ambient) / theta
 
@@ -46,9 +44,7 @@ def idle(supplies, currents, theta, ambient):
         for k, current in enumerate(currents)
     }
     nets = {"VP": supply(supplies[0]), "VN": supply(supplies[1])}
-    found = figures(
-        parts, nets, [{"ambient": ambient + 273.15}], packages={"U": {"theta_ja": f"{theta} K/W"}}
-    )
+    found = figures(parts, nets, [{"ambient": ambient + 273.15}], packages={"U": {"theta_ja": f"{theta} K/W"}})
     return [found["parts"][ref]["temperature"][0] - 273.15 for ref in parts]
 
 

@@ -60,9 +60,7 @@ def test_diode_of_a_tenth_volt_a_decade():
     """
     n_vt = 0.1 / math.log(10)
     i_s = 1e-3 / math.expm1(0.7 / n_vt)
-    current, voltage = diode_on_resistor(
-        5.0, 1e3, 298.15, i_s, emission_coefficient=n_vt / thermal_voltage(298.15)
-    )
+    current, voltage = diode_on_resistor(5.0, 1e3, 298.15, i_s, emission_coefficient=n_vt / thermal_voltage(298.15))
     assert current == pytest.approx(4.237291e-3, rel=1e-6)
     assert voltage == pytest.approx(0.762709, abs=1e-6)
 
@@ -182,9 +180,7 @@ def test_one_kelvin_between_paired_junctions():
     parts = {}
     for k, package in ((1, "COOL"), (2, "WARM")):
         parts[f"I{k}"] = current_source("VP", f"B{k}", 1e-3)
-        parts[f"Q{k}"] = transistor(
-            f"B{k}", f"B{k}", "GND", saturation_current=i_s, bandgap=1.11, package=package
-        )
+        parts[f"Q{k}"] = transistor(f"B{k}", f"B{k}", "GND", saturation_current=i_s, bandgap=1.11, package=package)
     packages = {"COOL": {"held_temperature": "26.35 degC"}, "WARM": {"held_temperature": "27.35 degC"}}
     found = figures(parts, {}, packages=packages)["parts"]
     assert [found[q]["temperature"][0] for q in ("Q1", "Q2")] == pytest.approx([299.5, 300.5], abs=1e-6)
@@ -254,6 +250,4 @@ def test_output_follows_the_base_of_a_log_transistor(base):
     nets = {"VREF": reference(10.0), "VIN": voltage_input(-0.5, 0.5)}
     found = figures(parts, nets, [{"VIN": -0.3, "ambient": 298.15}])
     level = {"GND": 0.0, "VIN": -0.3}[base]
-    assert found["nets"]["OUT"][0] == pytest.approx(
-        level - thermal_voltage(298.15) * math.log(1e-4 / 1e-14), abs=1e-6
-    )
+    assert found["nets"]["OUT"][0] == pytest.approx(level - thermal_voltage(298.15) * math.log(1e-4 / 1e-14), abs=1e-6)

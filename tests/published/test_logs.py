@@ -58,9 +58,7 @@ def scaled_log(upper, lower):
     return {**log_pair(output="OUT"), **divider("OUT", "L", upper, lower)}
 
 
-@pytest.mark.parametrize(
-    ("upper", "slope"), [(15.9035e3, 1.0), (15.7e3, 0.98796)], ids=["ICL8049", "AN-30 (memory)"]
-)
+@pytest.mark.parametrize(("upper", "slope"), [(15.9035e3, 1.0), (15.7e3, 0.98796)], ids=["ICL8049", "AN-30 (memory)"])
 def test_divider_that_sets_the_slope(upper, slope):
     """A ratio of 16.9 in the divider makes 1 V a decade; 15.7 kohm on 1 kohm make 0.988 V.
 

@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from pathlib import Path
 from typing import Any
 
 from rulecheck.circuit.graph import build_graph
-from rulecheck.circuit.structure import Structure, find_structure
+from rulecheck.circuit.structure import JunctionLoop, Structure, find_structure
 from rulecheck.design.load import load_text
 from rulecheck.design.model import Design
 
@@ -30,6 +30,10 @@ def voltage_input(low: str = "10 mV", high: str = "10 V", **more: Any) -> dict[s
 def current_input(low: str = "1 nA", high: str = "1 mA") -> dict[str, Any]:
     """Give the table of an input driven by a current."""
     return {"role": "input", "drive": "current", "range": [low, high]}
+
+
+#: Nets of most tests: three inputs, a reference, an output.
+USUAL = {name: voltage_input() for name in ("VX", "VY", "VZ")} | {"VREF": VREF, "VOUT": OUTPUT}
 
 
 def resistor(ref: str, value: str, a: str, b: str) -> Part:
@@ -98,22 +102,53 @@ def design_of(nets: Mapping[str, Any], parts: Iterable[Part], **tables: Any) -> 
     return load_text(design_text(nets, parts, **tables), Path(__file__).parent / "test.toml")
 
 
-def structure_of(nets: Mapping[str, Any], parts: Iterable[Part]) -> Structure:
-    """Find the structure of the design of these nets and parts."""
+def structure_of(parts: Iterable[Part], nets: Mapping[str, Any] = USUAL) -> Structure:
+    """Find the structure of the design of these parts and nets."""
     design = design_of(nets, parts)
     return find_structure(design, build_graph(design))
 
 
-def transdiode(n: int | str, drive: Iterable[Part], *, base: str = "GND", emitter: str = "", kind: Any = npn) -> list[Part]:
-    """One log stage: amplifier ``U``, transistor ``Q``, emitter resistor ``RE``, capacitor ``C`` of number n.
+def transdiode(
+    n: int | str, drive: Part, *, base: str = "GND", emitter: str = "", kind: Callable[..., Part] = npn
+) -> list[Part]:
+    """Build one log stage: amplifier ``U``, transistor ``Q``, emitter resistor ``RE``, capacitor ``C`` of a number.
 
-    Its summing node is ``S`` with the number; `drive` brings the current to it.
+    Its summing node is ``S`` with the number, its emitter ``E``; `drive` brings the current.
     """
     at = emitter or f"E{n}"
     return [
-        *drive,
+        drive,
         kind(f"Q{n}", f"S{n}", base, at),
         amplifier(f"U{n}", "GND", f"S{n}", f"O{n}"),
         resistor(f"RE{n}", "2.2 kohm", f"O{n}", at),
         capacitor(f"C{n}", f"S{n}", f"O{n}"),
     ]
+
+
+def log_ratio(n: int, over: Part, under: Part, out: str, *, base: str = "") -> list[Part]:
+    """Build a log-ratio stage of two transistors ``Q`` and ``P`` with a shared emitter ``T``.
+
+    `over` drives ``S``, `under` drives ``W``; the second amplifier ``V`` leads `out`, which reaches the base
+    of ``Q`` directly, or as the net `base` says. The output is kT/q·ln(I(Q)/I(P)) where direct.
+    """
+    return [
+        *transdiode(n, over, base=base or out, emitter=f"T{n}"),
+        under,
+        npn(f"P{n}", f"W{n}", "GND", f"T{n}"),
+        amplifier(f"V{n}", "GND", f"W{n}", out),
+    ]
+
+
+def antilog(n: int, reference: Part, *, base: str, out: str) -> list[Part]:
+    """Build an antilog stage: ``Q`` carries the reference, ``A`` the output's current through ``RF``."""
+    return [
+        *transdiode(n, reference, base=base),
+        npn(f"A{n}", f"X{n}", "GND", f"E{n}"),
+        amplifier(f"W{n}", "GND", f"X{n}", out),
+        resistor(f"RF{n}", "10 kohm", f"X{n}", out),
+    ]
+
+
+def weights(loop: JunctionLoop) -> dict[str, float]:
+    """Signed weights of a loop's junctions by part."""
+    return {junction.part: junction.turn * junction.weight for junction in loop.junctions}

@@ -1,0 +1,203 @@
+"""What outputs at a limit would need, and the remedies of too little swing or too much output current."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+
+from rulecheck.api import (
+    Edit,
+    OperatingPoints,
+    Part,
+    Remedy,
+    Review,
+    Worst,
+    decade_values,
+    format_quantity,
+    nearest,
+)
+
+from ._edits import quantity, set_parameter
+from ._models import higher_supply, in_packages_of, other_models
+from ._saturation import Floats, Mask, is_at_limit
+
+BOUNDLESS = 1000.0
+"""Volts beyond its rails to which an output is let go to see what it would need."""
+CLOSE = 0.01
+"""Tolerance up to which a resistor has values of E96, else of E24."""
+SPLIT_SEARCH = 2.0
+"""Factor over which a pair of preferred values with the right ratio is searched."""
+FURTHEST = 10.0
+"""Factor between an old and a new resistor beyond which it is another design."""
+
+
+class Demand:
+    """The circuit as it would be if every output could reach any voltage.
+
+    Parameters
+    ----------
+    review : Review
+    """
+
+    def __init__(self, review: Review) -> None:
+        self._review = review
+
+    @cached_property
+    def points(self) -> OperatingPoints:
+        """Operating points with limits far out; those of the circuit itself where no output is at one."""
+        review, points = self._review, self._review.operating_points
+        amplifiers = [ref for ref, part in review.design.parts.items() if part.kind == "op-amp"]
+        if not any(is_at_limit(points, a).any() for a in amplifiers):
+            return points
+        sides = [f"output_headroom.{side}" for side in ("low", "high")]
+        return review.re_solve(values={(a, side): -BOUNDLESS for a in amplifiers for side in sides})
+
+    def output(self, amplifier: str) -> Floats:
+        """Internal output that an amplifier would need at each condition [V]."""
+        part = self._review.design.parts[amplifier]
+        drop = part.output_resistance.typ * self.points.current(amplifier, "OUT")
+        volts: Floats = self.points.voltage(part.pins["OUT"]) - drop
+        return volts
+
+    def consequence(self, index: int) -> str:
+        """How far each output is from what it would be, at one condition."""
+        review, points = self._review, self._review.operating_points
+        words = []
+        for net in (n for n, entry in review.design.nets.items() if entry.role == "output"):
+            is_now, would_be = (float(p.voltage(net)[index]) for p in (points, self.points))
+            if abs(would_be) < BOUNDLESS / 2 and abs(is_now - would_be) > 1e-6 * abs(would_be):
+                there = f"{net} is {format_quantity(is_now, 'V', 3)} instead of {format_quantity(would_be, 'V', 3)}"
+                share = f" ({abs(is_now / would_be - 1) * 100:.2g} % of reading)" if would_be else ""
+                words.append(there + share)
+        return ", ".join(words) or "its summing node leaves its level, and what is computed from it is wrong"
+
+
+def swing_remedies(review: Review, demand: Demand, amplifier: str, margin: Floats, judged: Mask) -> list[Remedy]:
+    """Ways to give an output room: resistors computed, a higher supply, another model.
+
+    Parameters
+    ----------
+    review : Review
+    demand : Demand
+    amplifier : str
+    margin : ndarray, shape (conditions,)
+        Distance from the limit to reach [V].
+    judged : ndarray of bool
+        Conditions that count.
+    """
+    headroom = review.design.parts[amplifier].output_headroom
+    below, above = _distances(review, demand, amplifier, margin, judged)
+    short = np.fmax(headroom.low.max - below, headroom.high.max - above)
+    if not np.isfinite(short).any() or np.nanmax(short) > BOUNDLESS / 2:
+        return [Remedy("no swing would do: look at the sign and size of the currents into its summing node")]
+    worst = review.operating_points.worst(short)
+    upper = bool(headroom.high.max - above[worst.index] == worst.value)
+    together = [_distances(review, demand, a, margin, judged) for a in in_packages_of(review, [amplifier])]
+
+    def fits(model: Any) -> bool:  # noqa: ANN401  # an amplifier's parameters
+        ends = (model.output_headroom.low.max, model.output_headroom.high.max)
+        return all(end <= np.nanmin(room) for rooms in together for end, room in zip(ends, rooms, strict=True))
+
+    remedies = list(_resistors(review, demand, amplifier, worst))
+    remedies += higher_supply(review, amplifier, "V+" if upper else "V-", worst.value)
+    remedies += other_models(review, [amplifier], fits, ("output_headroom",), "its output comes nearer to the rails")
+    return remedies or [Remedy("split the gain between this stage and the next, or narrow the range")]
+
+
+def _distances(
+    review: Review, demand: Demand, amplifier: str, margin: Floats, judged: Mask
+) -> tuple[Floats, Floats]:
+    """Headroom that would leave the margin to the low and to the high limit, at each condition [V]."""
+    points, pins = review.operating_points, review.design.parts[amplifier].pins
+    volts = np.where(judged, demand.output(amplifier), np.nan)
+    return volts - points.voltage(pins["V-"]) - margin, points.voltage(pins["V+"]) - volts - margin
+
+
+def _resistors(review: Review, demand: Demand, amplifier: str, worst: Worst) -> Iterator[Remedy]:
+    """Smaller resistors at the output, on the way back, that take the missing volts off their drop."""
+    parts, out = review.design.parts, review.design.parts[amplifier].pins["OUT"]
+    loops = [loop for loop in review.structure.feedback_loops if loop.amplifier == amplifier and loop.parts]
+    for ref in dict.fromkeys(loop.parts[0] for loop in loops if parts[loop.parts[0]].kind == "resistor"):
+        far = next(net for net in parts[ref].pins.values() if net != out)
+        drop = abs(float((demand.points.voltage(out) - demand.points.voltage(far))[worst.index]))
+        most = parts[ref].value.typ * (1 - worst.value / drop) if drop > worst.value else 0.0
+        if most < parts[ref].value.typ / FURTHEST:
+            continue
+        if any(loop.parts == (ref,) for loop in loops):
+            yield from _split(review, amplifier, ref, most)
+        value = _at_most(most, parts[ref])
+        yield Remedy(f"make {ref} {format_quantity(value, 'ohm')}", [set_parameter(ref, "value", quantity(value, "ohm"))])
+
+
+def _series(part: Part) -> str:
+    return "E96" if part.tolerance is not None and part.tolerance <= CLOSE else "E24"
+
+
+def _at_most(ohm: float, part: Part) -> float:
+    return max(decade_values(_series(part), ohm / 1.2, ohm))
+
+
+def _split(review: Review, amplifier: str, feedback: str, most: float) -> Iterator[Remedy]:
+    """Less gain in this stage and as much more in the next: the same factor on both resistors."""
+    design, out = review.design, review.design.parts[amplifier].pins["OUT"]
+    own = {p for loop in review.structure.feedback_loops if loop.amplifier == amplifier for p in loop.parts[:1]}
+    following = [r for r, p in design.parts.items() if out in p.pins.values() and r not in {amplifier, *own}]
+    if design.nets[out].role is not None or not following or not all(_feeds_a_sum(review, r, out) for r in following):
+        return
+    resistors = [design.parts[r] for r in (feedback, *following)]
+    candidates = decade_values("E96", most / SPLIT_SEARCH, most)
+    value = min(candidates, key=lambda v: max(_scaled(p, v / resistors[0].value.typ)[1] for p in resistors))
+    scale = value / resistors[0].value.typ
+    edits: list[Edit] = [
+        set_parameter(p.ref, "value", quantity(_scaled(p, scale)[0], "ohm")) for p in resistors
+    ]
+    words = " and ".join(f"{p.ref} {format_quantity(_scaled(p, scale)[0], 'ohm')}" for p in resistors)
+    yield Remedy(f"move gain to the next stage: {words}", edits)
+
+
+def _feeds_a_sum(review: Review, ref: str, out: str) -> bool:
+    part = review.design.parts[ref]
+    far = [net for net in part.pins.values() if net != out]
+    return part.kind == "resistor" and len(far) == 1 and review.structure.summing_node(far[0]) is not None
+
+
+def _scaled(part: Part, scale: float) -> tuple[float, float]:
+    """The E96 value nearest to a resistor scaled, and by what share it is off."""
+    wanted = part.value.typ * scale
+    value = nearest(wanted, "E96")
+    return value, abs(value / wanted - 1)
+
+
+def current_remedies(review: Review, amplifier: str, worst: Worst) -> list[Remedy]:
+    """Ways to ask less current of an output: a larger resistor where most of it goes, a stronger model.
+
+    Parameters
+    ----------
+    review : Review
+    amplifier : str
+    worst : Worst
+        Of the magnitude of its output current [A].
+    """
+    points, parts = review.operating_points, review.design.parts
+    limit, out = parts[amplifier].output_current.max, parts[amplifier].pins["OUT"]
+    flows = {
+        ref: abs(float(points.current(ref, pin)[worst.index]))
+        for ref, part in parts.items() if part.kind == "resistor" and part.value.typ > 0
+        for pin, net in part.pins.items() if net == out
+    }  # fmt: skip
+    remedies = []
+    if flows and (ref := max(flows, key=lambda r: flows[r])) and worst.value - flows[ref] < limit:
+        least = parts[ref].value.typ * flows[ref] / (limit - (worst.value - flows[ref]))
+        if least <= parts[ref].value.typ * FURTHEST:
+            value = min(decade_values(_series(parts[ref]), least, least * 1.2))
+            title = f"make {ref} {format_quantity(value, 'ohm')}"
+            remedies.append(Remedy(title, [set_parameter(ref, "value", quantity(value, "ohm"))]))
+
+    def fits(model: Any) -> bool:  # noqa: ANN401  # an amplifier's parameters
+        return model.output_current is not None and bool(model.output_current.max >= worst.value)
+
+    remedies += other_models(review, [amplifier], fits, ("output_current",), "it gives the current")
+    return remedies or [Remedy("buffer the output, or ask for a lighter load")]

@@ -1,0 +1,138 @@
+"""Feedback that comes back with the wrong sign, or not at all."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator
+from typing import Any
+
+import numpy as np
+
+from rulecheck.api import BaseModel, Evidence, Finding, Remedy, Review, Rule, Severity
+
+from ._edits import swap_pins
+from ._rails import powered
+
+Array = np.ndarray[Any, np.dtype[np.float64]]
+
+
+class FeedbackSign(Rule):
+    """Amplifiers whose feedback at DC is positive or absent.
+
+    Such an amplifier computes nothing: its output runs to a limit and stays there. The sign is that of the
+    return ratio at zero frequency, with all other amplifiers at work, at every review point at which the
+    amplifier is inside its limits; where it never is, that of the circuit with all junctions conducting.
+    An amplifier with nothing but a capacitor around it is an integrator: inside an outer loop that is a
+    choice, and worth knowing; by itself it runs away. Where several amplifiers come out positive, the ones
+    are told of whose exchanged inputs set the others right.
+    """
+
+    name = "feedback-sign"
+    title = "Positive feedback, or none"
+    source = "return ratio at zero frequency, textbook theory"
+    default_severity = Severity.MAJOR
+    needs = ("operating_points", "loops")
+
+    class Settings(BaseModel):
+        """Magnitude of the return ratio below which there is no feedback to speak of."""
+
+        least_return_ratio: float = 1.0
+
+    def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
+        """Judge every amplifier that is in use."""
+        words = {ref: _feedback(review, ref, settings.least_return_ratio) for ref in powered(review.design)}
+        positive = [ref for ref, word in words.items() if word == "positive"]
+        for ref in _causes(review, positive, settings.least_return_ratio):
+            yield _positive(review, ref, [other for other in positive if other != ref])
+        for ref, word in words.items():
+            if word == "absent":
+                yield _absent(review, ref)
+            elif word == "negative" and _is_integrator(review, ref):
+                yield _integrator(review, ref)
+
+
+def _ratio(review: Review, ref: str) -> Array:
+    """DC return ratio where the amplifier is inside its limits, NaN elsewhere."""
+    ratio: Array = np.where(review.operating_points.linear(ref), review.loops.dc_return_ratio(ref), np.nan)
+    return ratio
+
+
+def _feedback(review: Review, ref: str, least: float) -> str:
+    """``positive``, ``negative`` or ``absent``."""
+    ratio = _ratio(review, ref)
+    if not np.isfinite(ratio).any():
+        return str(review.structure.dc_feedback.get(ref, "absent"))
+    if np.nanmin(ratio) <= -least:
+        return "positive"
+    return "negative" if np.nanmax(ratio) >= least else "absent"
+
+
+def _causes(review: Review, positive: list[str], least: float) -> list[str]:
+    """Amplifiers to turn round so that all are right, the one that sets most right first."""
+    if len(positive) < 2:
+        return positive
+    cured: dict[str, set[str]] = {}
+    for ref in positive:
+        turned = review.edited(swap_pins(review.design, ref, "IN+", "IN-"))
+        cured[ref] = {other for other in positive if _feedback(turned, other, least) != "positive"}
+    left, causes = set(positive), []
+    while left:
+        best = max((ref for ref in positive if ref in left), key=lambda ref: len(cured[ref] & left))
+        causes.append(best)
+        left -= cured[best] | {best}
+    return causes
+
+
+def _positive(review: Review, ref: str, others: list[str]) -> Finding:
+    ratio = _ratio(review, ref)
+    remedies = [Remedy(f"swap the inputs of {ref}", swap_pins(review.design, ref, "IN+", "IN-"))]
+    consequence = "its output runs to a limit and stays there"
+    if not np.isfinite(ratio).any():
+        return Finding(
+            f"{ref}: feedback at DC is positive, and it is at a limit at every review point", parts=[ref],
+            consequence=consequence, remedies=remedies,
+        )  # fmt: skip
+    worst = review.operating_points.least(ratio)
+    too = f"; so it is around {', '.join(others)}" if others else ""
+    return Finding(
+        f"{ref}: feedback at DC is positive, return ratio {worst.value:.3g}{too}", parts=[ref],
+        conditions=worst.conditions, consequence=consequence, remedies=remedies,
+        evidence=[Evidence("DC return ratio", worst.value, "1", 0.0, ">", over=ratio)],
+    )  # fmt: skip
+
+
+def _absent(review: Review, ref: str) -> Finding:
+    ratio = _ratio(review, ref)
+    evidence = []
+    if np.isfinite(ratio).any():
+        most = review.operating_points.worst(ratio)
+        evidence = [Evidence("DC return ratio", most.value, "1", 0.0, ">", over=ratio)]
+    return Finding(
+        f"{ref}: no feedback at DC from its output to its inputs", parts=[ref], evidence=evidence,
+        consequence="its output runs to a limit and stays there",
+        remedies=[Remedy("close the loop: a resistor or a junction from OUT to IN-, or spare = true if it is not used")],
+    )  # fmt: skip
+
+
+def _integrator(review: Review, ref: str) -> Finding:
+    outer = sorted({part for loop in review.structure.feedback_loops if loop.amplifier == ref
+                    for part in loop.parts if review.design.parts[part].kind == "op-amp"})  # fmt: skip
+    return Finding(
+        f"{ref}: nothing but a capacitor around it; at DC its loop closes through {', '.join(outer)}", parts=[ref],
+        severity=Severity.OBSERVATION, consequence="it integrates: it settles only as the outer loop does",
+        remedies=[Remedy("nothing to mend where an integrator is meant")],
+    )  # fmt: skip
+
+
+def _is_integrator(review: Review, ref: str) -> bool:
+    """Whether the ways back without another amplifier all lead through a capacitor, and one is nothing else."""
+    kinds = list(_own_ways(review, ref))
+    return bool(kinds) and all("capacitor" in way for way in kinds) and {"capacitor"} in kinds
+
+
+def _own_ways(review: Review, ref: str) -> Iterator[set[str]]:
+    """Kinds of parts on each way back to the inverting input that leads through no other amplifier."""
+    for loop in review.structure.feedback_loops:
+        if loop.amplifier == ref and loop.input == "IN-":
+            kinds = {review.design.parts[part].kind for part in loop.parts}
+            if "op-amp" not in kinds:
+                yield kinds
