@@ -148,7 +148,7 @@ def lacks_signal(review: Review, amplifier: str) -> Mask:
 
 
 def asked_for(review: Review, flow: SignalFlow, amplifier: str) -> Mask:
-    """Conditions at which an output that an amplifier moves is asked for: in range, above cutoff.
+    """Conditions at which an output that an amplifier moves is asked for: in range, above cutoff, trims set.
 
     Where no requirement with a law says, the inputs' own ranges hold.
     """
@@ -167,4 +167,7 @@ def _inside(review: Review, ranges: Mapping[str, tuple[float, float]]) -> Mask:
         low, high = ranges.get(name, (source.low, source.high))
         slack = 1e-9 * max(abs(low), abs(high))
         inside &= (x >= low - slack) & (x <= high + slack) & (np.abs(x) >= (source.cutoff or 0.0) * (1 - 1e-9))
+    for ref, part in review.design.parts.items():
+        if part.kind == "potentiometer" and part.adjusts is not None:
+            inside &= review.conditions.values[ref] == review.typical[ref]
     return inside

@@ -9,7 +9,6 @@ from typing import Any
 import numpy as np
 
 from rulecheck.api import (
-    Edit,
     OperatingPoints,
     Part,
     Remedy,
@@ -32,6 +31,13 @@ SPLIT_SEARCH = 2.0
 """Factor over which a pair of preferred values with the right ratio is searched."""
 FURTHEST = 10.0
 """Factor between an old and a new resistor beyond which it is another design."""
+
+
+def internal_output(points: OperatingPoints, amplifier: Part) -> Floats:
+    """Output of an amplifier before its output resistance, at each condition [V]."""
+    drop = amplifier.output_resistance.typ * points.current(amplifier.ref, "OUT")
+    volts: Floats = points.voltage(amplifier.pins["OUT"]) - drop
+    return volts
 
 
 class Demand:
@@ -57,10 +63,7 @@ class Demand:
 
     def output(self, amplifier: str) -> Floats:
         """Internal output that an amplifier would need at each condition [V]."""
-        part = self._review.design.parts[amplifier]
-        drop = part.output_resistance.typ * self.points.current(amplifier, "OUT")
-        volts: Floats = self.points.voltage(part.pins["OUT"]) - drop
-        return volts
+        return internal_output(self.points, self._review.design.parts[amplifier])
 
     def consequence(self, index: int) -> str:
         """How far each output is from what it would be, at one condition."""
@@ -92,7 +95,7 @@ def swing_remedies(review: Review, demand: Demand, amplifier: str, margin: Float
     below, above = _distances(review, demand, amplifier, margin, judged)
     short = np.fmax(headroom.low.max - below, headroom.high.max - above)
     if not np.isfinite(short).any() or np.nanmax(short) > BOUNDLESS / 2:
-        return [Remedy("no swing would do: look at the sign and size of the currents into its summing node")]
+        return [Remedy("no swing would do: look at the gain, and at the sign of the currents into its summing node")]
     worst = review.operating_points.worst(short)
     upper = bool(headroom.high.max - above[worst.index] == worst.value)
     together = [_distances(review, demand, a, margin, judged) for a in in_packages_of(review, [amplifier])]
@@ -128,16 +131,16 @@ def _resistors(review: Review, demand: Demand, amplifier: str, worst: Worst) -> 
             continue
         if any(loop.parts == (ref,) for loop in loops):
             yield from _split(review, amplifier, ref, most)
-        value = _at_most(most, parts[ref])
-        yield Remedy(f"make {ref} {format_quantity(value, 'ohm')}", [set_parameter(ref, "value", quantity(value, "ohm"))])
+        yield _make(parts[ref], max(decade_values(_series(parts[ref]), most / 1.2, most)))
 
 
 def _series(part: Part) -> str:
     return "E96" if part.tolerance is not None and part.tolerance <= CLOSE else "E24"
 
 
-def _at_most(ohm: float, part: Part) -> float:
-    return max(decade_values(_series(part), ohm / 1.2, ohm))
+def _make(part: Part, ohm: float) -> Remedy:
+    words = quantity(ohm, "ohm")
+    return Remedy(f"make {part.ref} {words}", [set_parameter(part.ref, "value", words)])
 
 
 def _split(review: Review, amplifier: str, feedback: str, most: float) -> Iterator[Remedy]:
@@ -151,11 +154,9 @@ def _split(review: Review, amplifier: str, feedback: str, most: float) -> Iterat
     candidates = decade_values("E96", most / SPLIT_SEARCH, most)
     value = min(candidates, key=lambda v: max(_scaled(p, v / resistors[0].value.typ)[1] for p in resistors))
     scale = value / resistors[0].value.typ
-    edits: list[Edit] = [
-        set_parameter(p.ref, "value", quantity(_scaled(p, scale)[0], "ohm")) for p in resistors
-    ]
-    words = " and ".join(f"{p.ref} {format_quantity(_scaled(p, scale)[0], 'ohm')}" for p in resistors)
-    yield Remedy(f"move gain to the next stage: {words}", edits)
+    changes = [_make(p, _scaled(p, scale)[0]) for p in resistors]
+    words = " and ".join(change.title for change in changes)
+    yield Remedy(f"move gain to the next stage: {words}", [edit for change in changes for edit in change.edits])
 
 
 def _feeds_a_sum(review: Review, ref: str, out: str) -> bool:
@@ -192,9 +193,7 @@ def current_remedies(review: Review, amplifier: str, worst: Worst) -> list[Remed
     if flows and (ref := max(flows, key=lambda r: flows[r])) and worst.value - flows[ref] < limit:
         least = parts[ref].value.typ * flows[ref] / (limit - (worst.value - flows[ref]))
         if least <= parts[ref].value.typ * FURTHEST:
-            value = min(decade_values(_series(parts[ref]), least, least * 1.2))
-            title = f"make {ref} {format_quantity(value, 'ohm')}"
-            remedies.append(Remedy(title, [set_parameter(ref, "value", quantity(value, "ohm"))]))
+            remedies.append(_make(parts[ref], min(decade_values(_series(parts[ref]), least, least * 1.2))))
 
     def fits(model: Any) -> bool:  # noqa: ANN401  # an amplifier's parameters
         return model.output_current is not None and bool(model.output_current.max >= worst.value)

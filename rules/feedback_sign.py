@@ -109,7 +109,7 @@ def _absent(review: Review, ref: str) -> Finding:
     return Finding(
         f"{ref}: no feedback at DC from its output to its inputs", parts=[ref], evidence=evidence,
         consequence="its output runs to a limit and stays there",
-        remedies=[Remedy("close the loop: a resistor or a junction from OUT to IN-, or spare = true if it is not used")],
+        remedies=[Remedy("close the loop with a resistor or a junction from OUT to IN-; say spare = true if it is not used")],
     )  # fmt: skip
 
 
@@ -117,16 +117,16 @@ def _integrator(review: Review, ref: str) -> Finding:
     outer = sorted({part for loop in review.structure.feedback_loops if loop.amplifier == ref
                     for part in loop.parts if review.design.parts[part].kind == "op-amp"})  # fmt: skip
     return Finding(
-        f"{ref}: nothing but a capacitor around it; at DC its loop closes through {', '.join(outer)}", parts=[ref],
+        f"{ref}: only a capacitor leads around it; at DC its loop closes through {', '.join(outer)}", parts=[ref],
         severity=Severity.OBSERVATION, consequence="it integrates: it settles only as the outer loop does",
         remedies=[Remedy("nothing to mend where an integrator is meant")],
     )  # fmt: skip
 
 
 def _is_integrator(review: Review, ref: str) -> bool:
-    """Whether the ways back without another amplifier all lead through a capacitor, and one is nothing else."""
-    kinds = list(_own_ways(review, ref))
-    return bool(kinds) and all("capacitor" in way for way in kinds) and {"capacitor"} in kinds
+    """Whether there are ways back without another amplifier, and all of them lead through a capacitor."""
+    ways = list(_own_ways(review, ref))
+    return bool(ways) and all("capacitor" in way for way in ways)
 
 
 def _own_ways(review: Review, ref: str) -> Iterator[set[str]]:

@@ -16,7 +16,6 @@ from rulecheck.api import (
     BaseModel,
     Evidence,
     Finding,
-    OperatingPoints,
     Review,
     Rule,
     Severity,
@@ -26,8 +25,7 @@ from rulecheck.api import (
 )
 
 from ._saturation import Floats, Mask, SignalFlow, asked_for, first_at_limit, is_at_limit, lacks_signal
-from ._swing import BOUNDLESS, Demand, current_remedies, swing_remedies
-from ._words import figures
+from ._swing import BOUNDLESS, Demand, current_remedies, internal_output, swing_remedies
 
 
 class OutputSwing(Rule):
@@ -60,9 +58,11 @@ class OutputSwing(Rule):
             where &= np.any([asked[a] & at_limit[a] for a in group], axis=0)
             if where.any():
                 yield _at_limit(review, settings, group, where)
+        saturated = [a for a in flow.amplifiers if at_limit[a].any()]
         for amplifier in flow.amplifiers:
-            upset = [at_limit[a] for a in flow.amplifiers if at_limit[a].any() and flow.drives(a, amplifier)]
-            judged = asked[amplifier] & points.linear(amplifier) & ~np.any([np.zeros_like(asked[amplifier]), *upset], axis=0)
+            judged = asked[amplifier] & points.linear(amplifier)
+            for other in saturated:
+                judged &= ~at_limit[other] | (not flow.drives(other, amplifier))
             if not (at_limit[amplifier] & asked[amplifier]).any():
                 yield from _near_limit(review, settings, amplifier, judged)
             yield from _over_current(review, amplifier, judged)
@@ -75,13 +75,6 @@ def _has_other_cause(review: Review, amplifier: str) -> Mask:
     return lacks_signal(review, amplifier)
 
 
-def internal_output(points: OperatingPoints, review: Review, amplifier: str) -> Floats:
-    """Output before the output resistance [V]."""
-    part = review.design.parts[amplifier]
-    volts: Floats = points.voltage(part.pins["OUT"]) - part.output_resistance.typ * points.current(amplifier, "OUT")
-    return volts
-
-
 def _at_limit(review: Review, settings: OutputSwing.Settings, group: list[str], where: Mask) -> Finding:
     points, demand = review.operating_points, Demand(review)
     first = max(group, key=lambda a: int((is_at_limit(points, a) & where).sum()))
@@ -92,15 +85,16 @@ def _at_limit(review: Review, settings: OutputSwing.Settings, group: list[str], 
     upper = str(points.state(first)[worst.index]) == "high"
     limit = float((high if upper else low)[worst.index])
     wanted = float(needed[worst.index])
-    balanced = worst.value < BOUNDLESS / 2
-    words = f"it would need {format_quantity(wanted, 'V', 3)}" if balanced else "no output balances its loop"
+    within_reach = worst.value < BOUNDLESS / 2
+    needs = format_quantity(wanted, "V", 3)
+    words = f"it would need {needs}" if within_reach else f"not even {needs} would balance its loop"
+    side = "high" if upper else "low"
     others = f", with {', '.join(a for a in group if a != first)}" if len(group) > 1 else ""
     return Finding(
-        f"{first}{others}: output at its {'high' if upper else 'low'} limit of {format_quantity(limit, 'V', 3)}; {words}",
+        f"{first}{others}: output at its {side} limit of {format_quantity(limit, 'V', 3)}; {words}",
         parts=group, severity=Severity.MAJOR, conditions=worst.conditions,
         consequence=demand.consequence(worst.index),
-        evidence=figures([Evidence("output voltage needed", wanted if balanced else np.nan, "V", limit,
-                                   "<=" if upper else ">=", over=needed)]),
+        evidence=[Evidence("output voltage needed", wanted, "V", limit, "<=" if upper else ">=", over=needed)],
         remedies=swing_remedies(review, demand, first, _wanted_margin(review, settings, first), where),
         at=join_key(("parts", first)),
     )  # fmt: skip
@@ -115,7 +109,7 @@ def _wanted_margin(review: Review, settings: OutputSwing.Settings, amplifier: st
 
 def _near_limit(review: Review, settings: OutputSwing.Settings, amplifier: str, judged: Mask) -> Iterator[Finding]:
     points, headroom = review.operating_points, review.design.parts[amplifier].output_headroom
-    volts, (low, high) = internal_output(points, review, amplifier), points.limits(amplifier)
+    volts, (low, high) = internal_output(points, review.design.parts[amplifier]), points.limits(amplifier)
     # The operating point has the typical limits; the margin is asked of the guaranteed ones.
     above = high - (headroom.high.max - headroom.high.typ) - volts
     below = volts - low - (headroom.low.max - headroom.low.typ)
@@ -133,7 +127,7 @@ def _near_limit(review: Review, settings: OutputSwing.Settings, amplifier: str, 
         f"{format_quantity(left, 'V', 3)} from its {side} limit, {format_quantity(limit, 'V', 3)} wanted",
         parts=[amplifier], severity=Severity.MINOR, conditions=worst.conditions, subject="margin",
         consequence="spread of parts, load or temperature may take the output to its limit",
-        evidence=[Evidence("distance of the output from its limit", left, "V", limit, ">=", over=margin, basis="limit")],
+        evidence=[Evidence("distance from the limit", left, "V", limit, ">=", over=margin, basis="limit")],
         remedies=swing_remedies(review, Demand(review), amplifier, wanted, judged),
     )  # fmt: skip
 

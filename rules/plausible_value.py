@@ -5,7 +5,20 @@ from __future__ import annotations
 from collections.abc import Iterable, Iterator
 from typing import Annotated
 
-from rulecheck.api import BaseModel, Design, Evidence, Finding, Part, Remedy, Review, Rule, Severity, Unit, format_quantity
+from rulecheck.api import (
+    BaseModel,
+    Design,
+    Evidence,
+    Finding,
+    Part,
+    Remedy,
+    Review,
+    Rule,
+    Severity,
+    Unit,
+    format_quantity,
+    join_key,
+)
 
 from ._edits import quantity, set_parameter
 from ._rails import FIXED, SUPPLY_PINS, Rails
@@ -70,7 +83,7 @@ def _judge(part: Part, unit: str, what: str, least: float, most: float) -> Itera
     yield Finding(
         f"{part.ref}: {what} of {format_quantity(value, unit)}, {than} {format_quantity(limit, unit)}",
         parts=[part.ref], consequence="the circuit works with another value, or not at all: a slip of the prefix?",
-        at=f"parts.{part.ref}.value" if part.ref.isalnum() else None,
+        at=join_key(("parts", part.ref, "value")),
         evidence=[Evidence("value", value, unit, limit, relation)],
         remedies=_prefixes(part, unit, *usual),
     )  # fmt: skip
@@ -100,17 +113,17 @@ def _supply_resistors(design: Design) -> set[str]:
 
 def _compensation_capacitors(design: Design) -> set[str]:
     """Capacitors from an amplifier's output, or the far end of a resistor at it, to one of its inputs."""
+    ends: dict[tuple[str, str], list[tuple[str, str]]] = {}
+    for ref, part in design.parts.items():
+        if part.kind in ("resistor", "capacitor"):
+            a, b = part.pins.values()
+            ends.setdefault((part.kind, a), []).append((ref, b))
+            ends.setdefault((part.kind, b), []).append((ref, a))
     found = set()
-    for amplifier in design.parts.values():
-        if amplifier.kind != "op-amp" or "OUT" not in amplifier.pins:
-            continue
-        inputs = {amplifier.pins[pin] for pin in ("IN+", "IN-") if pin in amplifier.pins}
-        outputs = {amplifier.pins["OUT"]}
-        for part in design.parts.values():
-            if part.kind == "resistor" and amplifier.pins["OUT"] in part.pins.values():
-                outputs.update(net for net in part.pins.values() if design.nets[net].role not in FIXED)
-        for ref, part in design.parts.items():
-            a, b, *_ = [*part.pins.values(), "", ""]
-            if part.kind == "capacitor" and ((a in inputs and b in outputs) or (b in inputs and a in outputs)):
-                found.add(ref)
+    for part in design.parts.values():
+        if part.kind == "op-amp" and "OUT" in part.pins:
+            inputs = {part.pins[pin] for pin in ("IN+", "IN-") if pin in part.pins}
+            behind = {net for _, net in ends.get(("resistor", part.pins["OUT"]), ())}
+            outputs = {part.pins["OUT"], *(net for net in behind if design.nets[net].role not in FIXED)}
+            found |= {ref for net in outputs for ref, other in ends.get(("capacitor", net), ()) if other in inputs}
     return found

@@ -17,6 +17,7 @@ from rulecheck.api import (
     Unit,
     format_quantity,
     in_series,
+    join_key,
     nearest,
     series_for_tolerance,
 )
@@ -68,6 +69,7 @@ def _finding(part: Part, own: str) -> Finding:
     tolerance = "" if part.tolerance is None else f", the series for {format_quantity(part.tolerance, '%')},"
     return Finding(
         f"{part.ref}: {format_quantity(value, unit)} is neither in {ALWAYS} nor in {own}{tolerance}".rstrip(","),
-        parts=[part.ref], consequence=f"made to order, or two parts; {text} differs by {best / value - 1:+.2%}",
+        parts=[part.ref], at=join_key(("parts", part.ref, "value")),
+        consequence=f"made to order, or two parts; {text} differs by {best / value - 1:+.2%}",
         remedies=[Remedy(f"take {text} of {series}", [set_parameter(part.ref, "value", text)])],
     )  # fmt: skip

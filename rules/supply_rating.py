@@ -7,7 +7,19 @@ from collections.abc import Iterable, Iterator
 
 import numpy as np
 
-from rulecheck.api import Edit, Evidence, Finding, Remedy, Review, Rule, Set, Severity, Spread, format_quantity, join_key
+from rulecheck.api import (
+    Edit,
+    Evidence,
+    Finding,
+    Remedy,
+    Review,
+    Rule,
+    Set,
+    Severity,
+    Spread,
+    format_quantity,
+    join_key,
+)
 
 from ._edits import quantity, set_parameter
 from ._rails import SUPPLY_PINS, Rails, powered
@@ -39,8 +51,8 @@ class SupplyRating(Rule):
             if part.supply is not None:
                 rails = (part.pins["V+"], part.pins["V-"])
                 groups.setdefault((part.model, part.supply.min, part.supply.max, *rails), []).append(ref)
-        for (_, low, high, *rails), refs in groups.items():
-            yield from _judge(review, refs, (low, high), (rails[0], rails[1]))
+        for (_, low, high, positive, negative), refs in groups.items():
+            yield from _judge(review, refs, (low, high), (positive, negative))
 
 
 def _judge(review: Review, refs: list[str], span: tuple[float, float], rails: tuple[str, str]) -> Iterator[Finding]:

@@ -160,7 +160,7 @@ def solve_pieces(
         own = {key: value for key, value in overrides.items() if key[0] in parts or key[0] in piece.design.nets}
         imposed = {ref: t for ref, t in temperatures.items() if ref in parts}
         apart = bool(imposed) or any(np.size(v) > 1 for v in own.values())
-        local, indices = _local_conditions(piece, conditions, whole=apart or len(pieces) == 1)
+        local, indices = _local_conditions(piece, conditions, whole=apart or len(pieces) == len(piece.copies) == 1)
         solution = solve_circuit(
             piece.design, local, with_clamps=with_clamps, overrides=own, temperatures=imposed, cache=cache
         )

@@ -329,8 +329,8 @@ LOCATED = HEAD + part(NPN + 'package = "M1"', "Q1") + part(RESISTOR, '"R 2"')
 @pytest.mark.parametrize(
     ("key", "line", "column", "found"),
     [
-        ("nets.VIN.range", 7, 45, "nets.VIN.range"),
-        ("nets.VIN.range.1", 7, 55, "nets.VIN.range.1"),
+        ("nets.VIN.range", 7, 52, "nets.VIN.range"),
+        ("nets.VIN.range.1", 7, 62, "nets.VIN.range.1"),
         ("parts.Q1.package", 14, 11, "parts.Q1.package"),
         ("parts.Q1.early_voltage", 12, 9, "parts.Q1.model"),  # which the catalogue states
         ("parts.Q1.input_offset", 10, 1, "parts.Q1"),
