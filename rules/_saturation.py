@@ -166,7 +166,11 @@ def _inside(review: Review, ranges: Mapping[str, tuple[float, float]]) -> Mask:
         x = review.conditions.values[name]
         low, high = ranges.get(name, (source.low, source.high))
         slack = 1e-9 * max(abs(low), abs(high))
-        inside &= (x >= low - slack) & (x <= high + slack) & (np.abs(x) >= (source.cutoff or 0.0) * (1 - 1e-9))
+        inside &= (x >= low - slack) & (x <= high + slack)
+        if source.cutoff is not None:
+            # Of a range that just reaches across zero the far side is below the cutoff too.
+            side = 1.0 if source.high > -source.low else -1.0 if source.high < -source.low else np.sign(x)
+            inside &= side * x >= source.cutoff * (1 - 1e-9)
     for ref, part in review.design.parts.items():
         if part.kind == "potentiometer" and part.adjusts is not None:
             inside &= review.conditions.values[ref] == review.typical[ref]

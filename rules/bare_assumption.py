@@ -9,6 +9,7 @@ from rulecheck.api import Design, Finding, Part, Remedy, Review, Rule, Severity,
 Keys = tuple[str, ...]
 CONFORMITY = ("log_range", "early_voltage", "bulk_emitter_resistance")
 HEAT = ("theta_ja",)
+MOST_NAMED = 4
 
 #: What the verdicts of rules rest on: by rule and kind of part, the keys of the part or its model.
 RESTS_ON: dict[str, dict[str, Keys]] = {
@@ -103,16 +104,21 @@ def _is_stated(design: Design, part: Part, key: str) -> bool:
 def _finding(of: tuple[str, str], keys: dict[str, set[str]], refs: list[str]) -> Finding:
     what, name = of
     rules = sorted(set.union(*keys.values()))
-    who = f"model {name}" if what == "model" else f"{name} {', '.join(refs)}"
     return Finding(
-        f"{who} does not state {', '.join(keys)}", parts=refs, subject=f"{what} {name}",
-        at=join_key(("parts", refs[0], "model") if what == "model" else ("parts", refs[0])),
-        consequence=f"as good as can be is assumed by {', '.join(rules)}",
+        f"{f'model {name}' if what == 'model' else _listed(name, refs)}: {', '.join(keys)} not stated", parts=refs,
+        subject=f"{what} {name}", at=join_key(("parts", refs[0], "model") if what == "model" else ("parts", refs[0])),
+        consequence=f"the verdicts of {', '.join(rules)} rest on an assumption",
         remedies=[Remedy(words) for words in _remedies(what, name, keys)],
     )  # fmt: skip
 
 
+def _listed(kind: str, refs: list[str]) -> str:
+    """Parts of a kind, the first few by name."""
+    more = f" and {len(refs) - MOST_NAMED} more" if len(refs) > MOST_NAMED else ""
+    return f"{kind} {', '.join(refs[:MOST_NAMED])}{more}"
+
+
 def _remedies(what: str, name: str, keys: dict[str, set[str]]) -> Iterator[str]:
-    where = f"[models.{name}]" if what == "model" else "the part"
+    where = f"[models.{name}]" if what == "model" else f"each {name}"
     for key, rules in keys.items():
         yield f"state {key} in {where}, for {', '.join(sorted(rules))}"

@@ -109,7 +109,7 @@ def _absent(review: Review, ref: str) -> Finding:
     return Finding(
         f"{ref}: no feedback at DC from its output to its inputs", parts=[ref], evidence=evidence,
         consequence="its output runs to a limit and stays there",
-        remedies=[Remedy("close the loop with a resistor or a junction from OUT to IN-; say spare = true if it is not used")],
+        remedies=[Remedy("close the loop from OUT to IN-, or say spare = true where it is not used")],
     )  # fmt: skip
 
 

@@ -14,7 +14,7 @@ import numpy as np
 
 from rulecheck.api import (
     Add, BaseModel, Cost, Design, Edit, Evidence, Finding, Model, Remedy, Remove, Review, Rule, Set, Severity,
-    format_quantity, join_key, worst_cost,
+    format_quantity, join_key, junction_offset, worst_cost,
 )  # fmt: skip
 
 from ._pairs import Pair, chosen_pairs, cost_evidence, cost_words, fault_of, group_of, link, mismatch_key, one_package
@@ -141,9 +141,7 @@ def _limits(design: Design, member: _Member) -> tuple[float, float]:
 
 
 def _cost(review: Review, ref: str, volts: Any) -> Cost | None:  # noqa: ANN401  # float or array
-    from rulecheck.api import junction_offset
-
-    return worst_cost(review, review.re_solve(values=junction_offset(review, ref, volts)))
+    return worst_cost(review, values=junction_offset(review, ref, volts))
 
 
 def _words(review: Review, cost: Cost | None) -> str:

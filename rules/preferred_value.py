@@ -28,6 +28,7 @@ UNITS = {"resistor": "ohm", "capacitor": "F"}
 ALWAYS = "E24"
 """Series that parts of every tolerance are made in."""
 FINEST = "E192"
+COARSER = (ALWAYS, "E48", "E96")
 
 
 class PreferredValue(Rule):
@@ -65,10 +66,11 @@ def _finding(part: Part, own: str) -> Finding:
     value, unit = part.value.typ, UNITS[part.kind]
     best = min((nearest(value, series) for series in (ALWAYS, own)), key=lambda v: abs(math.log(v / value)))
     text = quantity(best, unit)
-    series = ALWAYS if in_series(best, ALWAYS) else own
-    tolerance = "" if part.tolerance is None else f", the series for {format_quantity(part.tolerance, '%')},"
+    series = next(series for series in (*COARSER, own) if in_series(best, series))
+    where = f"not in {ALWAYS}" if own == ALWAYS else f"neither in {ALWAYS} nor in {own}"
+    why = "" if part.tolerance is None else f", the series for {format_quantity(part.tolerance, '%')}"
     return Finding(
-        f"{part.ref}: {format_quantity(value, unit)} is neither in {ALWAYS} nor in {own}{tolerance}".rstrip(","),
+        f"{part.ref}: {format_quantity(value, unit)} is {where}{why}",
         parts=[part.ref], at=join_key(("parts", part.ref, "value")),
         consequence=f"made to order, or two parts; {text} differs by {best / value - 1:+.2%}",
         remedies=[Remedy(f"take {text} of {series}", [set_parameter(part.ref, "value", text)])],

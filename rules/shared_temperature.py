@@ -89,7 +89,7 @@ def _apart(
     review: Review, settings: SharedTemperature.Settings, ref: str, others: Sequence[str], package: list[Edit]
 ) -> Finding:
     design, step = review.design, settings.unlinked_difference
-    cost = worst_cost(review, review.re_solve(temperatures={ref: _temperatures(review, [ref])[ref] + step}))
+    cost = worst_cost(review, temperatures={ref: _temperatures(review, [ref])[ref] + step})
     minor = cost is not None and cost.worst.value < settings.shares
     packages = [design.parts[others[0]].package, design.parts[ref].package]
     remedies = [Remedy(f"move {others[0]} and {ref} into one package", package)] if package else []
@@ -124,7 +124,7 @@ def _difference(
 ) -> Iterator[Finding]:  # fmt: skip
     if np.abs(apart).max() < LEAST_DIFFERENCE:
         return
-    cost = worst_cost(review, review.re_solve(temperatures=equal))
+    cost = worst_cost(review, temperatures=equal)
     if cost is None or cost.worst.value <= settings.shares:
         return
     at = cost.worst.index

@@ -5,8 +5,6 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable, Iterator
 
-import numpy as np
-
 from rulecheck.api import (
     Edit,
     Evidence,
@@ -16,17 +14,14 @@ from rulecheck.api import (
     Rule,
     Set,
     Severity,
-    Spread,
     format_quantity,
     join_key,
 )
 
-from ._edits import quantity, set_parameter
+from ._edits import quantity
+from ._models import USUAL_SUPPLIES, other_models
 from ._rails import SUPPLY_PINS, Rails, powered
 
-USUAL_SUPPLIES = (1.8, 2.5, 3.3, 5.0, 6.0, 8.0, 9.0, 10.0, 12.0, 15.0, 18.0, 24.0, 30.0, 36.0, 48.0)
-"""Volts that regulators are sold for."""
-MOST_MODELS = 2
 SAME = 1e-9
 """Rounding of a sum of supplies, as a fraction; no limit of a data sheet is that fine."""
 
@@ -68,55 +63,32 @@ def _judge(review: Review, refs: list[str], span: tuple[float, float], rails: tu
         consequence = "none of its data holds"
     else:
         return
-    spread = Spread(least.value, float(np.nanmedian(total)), most.value)
     yield Finding(
         f"{who}: total supply {format_quantity(worst.value, 'V')} is {than} the limit of {format_quantity(limit, 'V')}",
         parts=refs, conditions=worst.conditions, consequence=consequence,
         evidence=[Evidence("total supply", worst.value, "V", limit, relation, over=total, basis="limit")],
-        remedies=[*_supplies(review, refs[0], spread), *_models(review, refs, spread)],
+        remedies=[*_supplies(review, refs[0], least.value, most.value), *_models(review, refs)],
     )  # fmt: skip
 
 
-def _models(review: Review, refs: list[str], total: Spread) -> Iterator[Remedy]:
-    """Amplifier models that take the supply, the ones nearest in speed and input current first."""
-    own = review.design.parts[refs[0]]
-    fitting = [
-        (_distance(own, model.parameters), name)
-        for name, model in review.design.models.items()
-        if model.kind == "op-amp" and name != own.model and (supply := model.parameters.supply) is not None
-        and supply.min <= total.min and total.max <= supply.max
-    ]  # fmt: skip
-    for _, name in sorted(fitting)[:MOST_MODELS]:
-        yield Remedy(f"take {name}, which allows it", [set_parameter(ref, "model", name) for ref in refs])
-    if not fitting:
-        yield Remedy("take an amplifier for this supply: no catalogue has one")
+def _models(review: Review, refs: list[str]) -> list[Remedy]:
+    # whatever takes the supply fits: that is all that is wrong
+    found = other_models(review, refs, lambda model: True, ("supply",), "it takes this supply")
+    return found or [Remedy("take an amplifier for this supply: no catalogue of the design has one")]
 
 
-def _distance(own: object, other: object) -> float:
-    """How unlike two amplifiers are, in decades of gain-bandwidth and of bias current."""
-    speeds = [getattr(a, "gain_bandwidth").typ for a in (own, other)]  # noqa: B009 - parts and models alike
-    biases = [_most(getattr(a, "bias_current", None)) for a in (own, other)]
-    return abs(math.log10(speeds[0] / speeds[1])) + abs(math.log10(biases[0] / biases[1]))
-
-
-def _most(bias: Spread | None) -> float:
-    return max(abs(bias.min), abs(bias.max), 1e-15) if bias is not None else 1e-15
-
-
-def _supplies(review: Review, ref: str, total: Spread) -> Iterator[Remedy]:
+def _supplies(review: Review, ref: str, least: float, most: float) -> Iterator[Remedy]:
     """The usual supply nearest to what there is that the amplifier allows, its supplies kept in proportion."""
     design, part = review.design, review.design.parts[ref]
     rails = Rails(design)
     sources = dict.fromkeys(feed.source for pin in SUPPLY_PINS if (feed := rails.feed(part, pin)) is not None)
-    volts = {n: v for n in sources if (v := design.nets[n].voltage) is not None and design.nets[n].role == "supply"}
+    volts = {n: v for n in sources if design.nets[n].role == "supply" and (v := design.nets[n].voltage) is not None}
     # A voltage written as a table states its limits itself; one value in its place would drop them.
     if not volts or not all(isinstance(design.data["nets"][name]["voltage"], str) for name in volts):
         return
     largest = max(abs(v.typ) for v in volts.values())
-    fitting = [
-        usual for usual in USUAL_SUPPLIES
-        if part.supply.min <= total.min * usual / largest and total.max * usual / largest <= part.supply.max
-    ]  # fmt: skip
+    low, high = part.supply.min / least, part.supply.max / most
+    fitting = [usual for usual in USUAL_SUPPLIES if low <= usual / largest <= high]
     if not fitting:
         return
     usual = min(fitting, key=lambda usual: abs(math.log(usual / largest)))

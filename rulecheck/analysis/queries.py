@@ -12,9 +12,10 @@ from ..circuit.structure import CurrentSources
 from ..devices.constants import NOMINAL_TEMPERATURE, Array, BoolArray, thermal_voltage
 from .conditions import Conditions
 from .operating_points import OperatingPoints
+from .review import Cost
 
 if TYPE_CHECKING:
-    from .review import Cost, Review
+    from .review import Review
 
 STEADY = 0.05  # of a current: base currents and Early voltages of the others move a fixed one by less
 FOLLOWING = 0.1  # of the inputs' own relative change
@@ -66,7 +67,7 @@ def carriers(review: Review) -> tuple[Carrier, ...]:
     """
     structure, parts = review.structure, review.design.parts
     nodes = {log.part: log.summing_node for log in (*structure.log_transistors, *structure.log_diodes)}
-    others = {a.part for a in structure.antilog_transistors} | {r for l in structure.junction_loops for r in l.parts}
+    others = {a.part for a in structure.antilog_transistors} | {r for loop in structure.junction_loops for r in loop.parts}
     found = []
     for ref in parts:
         if ref not in nodes and ref not in others:
@@ -135,7 +136,7 @@ def _below_cutoff(review: Review) -> dict[str, BoolArray]:
 
 def forward_current(points: OperatingPoints, ref: str) -> Array:
     """Current of a junction in its forward direction: of a transistor its collector current [A]."""
-    kind = points.network.design.parts[ref].kind
+    kind = points.design.parts[ref].kind
     if kind == "diode":
         return points.current(ref, "A")
     return points.current(ref, "C") * (1 if kind == "npn" else -1)
@@ -143,7 +144,7 @@ def forward_current(points: OperatingPoints, ref: str) -> Array:
 
 def forward_voltage(points: OperatingPoints, ref: str) -> Array:
     """Voltage across a junction in its forward direction [V]."""
-    part = points.network.design.parts[ref]
+    part = points.design.parts[ref]
     if part.kind == "diode":
         return points.voltage(part.pins["A"]) - points.voltage(part.pins["K"])
     return points.vbe(ref) * (1 if part.kind == "npn" else -1)
@@ -158,23 +159,34 @@ def junction_offset(review: Review, ref: str, volts: Array | float) -> dict[tupl
     return {(ref, "saturation_current"): part.saturation_current.typ * np.exp(np.nan_to_num(volts / slope))}
 
 
-def worst_cost(review: Review, changed: OperatingPoints) -> Cost | None:
+def worst_cost(
+    review: Review, *, values: Mapping[tuple[str, str], Any] | None = None, temperatures: Mapping[str, Array] | None = None
+) -> Cost | None:
     """The output that a change costs most of its share, judged where the circuit is in use; None: none is judged.
 
     Parameters
     ----------
     review : Review
-    changed : OperatingPoints
-        From `Review.re_solve`.
+    values, temperatures : mapping
+        As for `Review.re_solve`; arrays over the review conditions.
     """
-    from dataclasses import replace
-
-    judged, points = in_use(review), review.operating_points
+    rows, points = in_use(review), review.operating_points
+    if not rows.any():
+        return None
+    changed = review.solve(
+        review.conditions.take(rows),
+        overrides={key: value[rows] if isinstance(value, np.ndarray) else value for key, value in (values or {}).items()},
+        temperatures={ref: value[rows] for ref, value in (temperatures or {}).items()},
+    )
     costs = []
-    for cost in review.cost(changed):
-        ratio = np.where(judged, cost.ratio, np.nan)
+    for net in (n for n, entry in review.design.nets.items() if entry.role == "output"):
+        error = np.full(rows.shape, np.nan)
+        error[rows] = changed.voltage(net) - points.voltage(net)[rows]
+        share = review.share(net)
+        with np.errstate(all="ignore"):
+            ratio = np.abs(error) / share
         if np.isfinite(ratio).any():
-            costs.append(replace(cost, ratio=ratio, worst=points.worst(ratio)))
+            costs.append(Cost(net, error, share, ratio, points.worst(ratio)))
     return max(costs, key=lambda cost: cost.worst.value, default=None)
 
 
@@ -195,7 +207,7 @@ def conformity_cost(review: Review, ref: str) -> Cost | None:
         (ref, name): value for name, value in IDEAL.items()
         if name in part.parameters and part.parameters[name].typ not in (0.0, np.inf)
     }  # fmt: skip
-    return worst_cost(review, review.re_solve(values=ideal)) if ideal else None
+    return worst_cost(review, values=ideal) if ideal else None
 
 
 @dataclass(frozen=True)
@@ -256,7 +268,7 @@ def bias_limit(amplifier: Any) -> float:  # noqa: ANN401  # a part or the parame
 
 def _offset_limit(points: OperatingPoints, ref: str) -> Array:
     """Offset voltage of an amplifier at its limit; what a single unit states is known, and stays [V]."""
-    part = points.network.design.parts[ref]
+    part = points.design.parts[ref]
     known = part.offset
     if known is not None:
         return np.full(points.conditions.size, getattr(known, "typ", known), dtype=float)

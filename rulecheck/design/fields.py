@@ -51,6 +51,8 @@ __all__ = [
 FAULT = "fault"
 OUT_OF_BOUNDS = "out_of_bounds"
 
+LIKENESS = 0.5  # of two words that may be meant for one another; names of parts differ in one sign of two
+
 Flag = StrictBool
 Text = StrictStr
 
@@ -102,7 +104,7 @@ def did_you_mean(word: object, allowed: Iterable[str]) -> str:
     """Question for the nearest right word, empty where none is near."""
     words = list(allowed)
     near = [w for w in words if w.lower() == str(word).lower()]
-    near = near or difflib.get_close_matches(str(word), words, n=1)
+    near = near or difflib.get_close_matches(str(word), words, n=1, cutoff=LIKENESS)
     return f"did you mean {near[0]!r}?" if near else ""
 
 

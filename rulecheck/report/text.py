@@ -12,9 +12,9 @@ from rulecheck.review.completion import severity_of
 from rulecheck.review.outcome import ReviewedDesign
 
 CAUTIONS = (
-    "Findings are a design aid, not an approval; figures rest on the catalogue data given. Circuits whose "
-    "failure can hurt someone need independent review under the standards that apply; mains-derived and "
-    "stored-energy circuits are for licensed people under local codes. Verify on the bench."
+    "A design aid, not an approval: figures rest on the catalogue data; bench-verify. Circuits that can hurt "
+    "someone need independent review under their standards; mains-derived and stored-energy ones, licensed "
+    "people under local codes."
 )
 RELATIONS = {"<=": "at most", "<": "below", ">=": "at least", ">": "above", "==": "exactly"}
 STYLES = {Severity.MAJOR: "red", Severity.MINOR: "yellow", Severity.OBSERVATION: "cyan"}
@@ -104,8 +104,8 @@ def _evidence(evidence: Evidence) -> str:
     if evidence.limit is not None:
         bound = kept_together(f"{RELATIONS[evidence.relation]} {quantity(evidence.limit, evidence.unit)}")
         limit = f"; sound is {bound}"
-    basis = "from typical data" if evidence.basis == "typ" else "from limits of data"
-    return f"{evidence.quantity} {kept_together(quantity(evidence.value, evidence.unit))}{limit} ({basis})"
+    basis = "typical" if evidence.basis == "typ" else "at limits"
+    return f"{evidence.quantity} {kept_together(quantity(evidence.value, evidence.unit))} ({basis}){limit}"
 
 
 def _remedy(remedy: Remedy, layout: Layout) -> Iterator[str]:

@@ -123,7 +123,10 @@ def test_value_and_tolerance_of_passive_parts() -> None:
     """The value stays as written; `value_spread` has the tolerance in it, ± of the magnitude."""
     d = design(
         part('kind = "resistor"\nvalue = "4K7"\ntolerance = "1 %"\npins = ["VIN", "VOUT"]', "R1")
-        + part('kind = "capacitor"\nvalue = { min = "90 pF", typ = "100 pF", max = "120 pF" }\npins = ["VIN", "VOUT"]', "C1")
+        + part(
+            'kind = "capacitor"\nvalue = { min = "90 pF", typ = "100 pF", max = "120 pF" }\npins = ["VIN", "VOUT"]',
+            "C1",
+        )
         + part('kind = "voltage-source"\nvalue = "-2 V"\ntolerance = "5 %"\npins = { N = "GND", P = "VOUT" }', "V1")
     )
     r, c, v = (d.parts[ref] for ref in ("R1", "C1", "V1"))
@@ -287,8 +290,7 @@ def test_groups_links_and_concessions() -> None:
 def test_requirement() -> None:
     """Constants, accuracy, ranges and points are in SI, with the dimensions of the constants beside them."""
     r = design(
-        part(RESISTOR, "R1")
-        + '[requirements.root]\noutput = "VOUT"\nlaw = "full_scale * (VIN / full_scale) ** n"\n'
+        part(RESISTOR, "R1") + '[requirements.root]\noutput = "VOUT"\nlaw = "full_scale * (VIN / full_scale) ** n"\n'
         'constants = { full_scale = "10 V", n = 0.5 }\naccuracy = { reading = "1 %", absolute = "5 mV" }\n'
         'range = { VIN = ["1 V", "5 V"], IIN = ["0 A", "1 uA"] }\nphase_margin = "55 deg"\n'
         'bandwidth = { min = "1 kHz", input = "VIN", at = { VIN = "0.1 V", ambient = "50 degC" } }\n'

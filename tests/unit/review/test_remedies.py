@@ -93,7 +93,7 @@ def test_a_finding_that_only_softens_is_not_gone():
 
 
 def test_a_finding_of_the_rule_at_the_same_parts_in_other_words_spoils_it():
-    """ "Cannot decide" at the same parts is no cure."""
+    """To say "cannot decide" of the same parts is no cure."""
     disguise = Finding("cannot decide", parts=["R1"], subject="undecided", severity=Severity.OBSERVATION)
     assert not proven(toy(after=[disguise]))
     assert proven(toy(after=[disguise], before=[disguise])), "it was there before"

@@ -1,0 +1,203 @@
+"""Remedies of faults: clamp diodes, series resistors, sturdier models."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Iterator
+from functools import partial
+from typing import Any
+
+import numpy as np
+
+from rulecheck.api import Edit, LogTransistor, Model, Remedy, Review, decade_values, format_quantity
+
+from ._edits import add_diode, add_in_series, set_parameter
+from ._models import other_models
+
+KNEE = 0.3
+"""Volts up to which a diode across a signal carries nothing that matters."""
+LEAST_EFFECT = 1e-3
+"""Share by which a series resistor must lower a current to be its cure."""
+ROOM = 1.05
+LARGEST_SHARE = 1e4
+"""A series resistor is at least this part of what the whole voltage would ask."""
+
+
+def against_reversal(review: Review, parts: list[str], emitter: str, index: int) -> list[Remedy]:
+    """Keep base-emitter junctions from reversing: a clamp in the amplifier's loop, or diodes across them.
+
+    Parameters
+    ----------
+    review : Review
+    parts : list of str
+        Transistors with their emitters on the net `emitter`.
+    index : int
+        The worst fault scenario.
+    """
+    diode = quietest_diode(review)
+    if diode is None:
+        return [Remedy("clamp the junction with a diode of low leakage; the catalogues have none")]
+    remedies = list(_clamp_in_loop(review, parts, emitter, index, diode))
+    edits: list[Edit] = []
+    for ref in parts:
+        part = review.design.parts[ref]
+        anode, cathode = ("E", "B") if part.kind == "npn" else ("B", "E")
+        edits.append(add_diode(review.design, diode, part.pins[anode], part.pins[cathode], edits))
+    way = "emitter to base" if review.design.parts[parts[0]].kind == "npn" else "base to emitter"
+    return [*remedies, Remedy(f"diode {diode} across {', '.join(parts)}, from {way}", edits)]
+
+
+def _clamp_in_loop(review: Review, parts: list[str], emitter: str, index: int, diode: str) -> Iterator[Remedy]:
+    """Diode from the amplifier's output to its summing node that takes over when the junction turns off."""
+    design = review.design
+    for log in _logs_at(review, parts, emitter)[:1]:
+        pins = design.parts[log.amplifier].pins
+        out, node = pins["OUT"], pins[_input_of(review, log.amplifier)]
+        fault = float((review.faults.voltage(out) - review.faults.voltage(node))[index])
+        normal = review.operating_points.voltage(out) - review.operating_points.voltage(node)
+        if fault > 0 and np.nanmax(normal) < KNEE:
+            anode, cathode = out, node
+        elif fault < 0 and np.nanmin(normal) > -KNEE:
+            anode, cathode = node, out
+        else:
+            continue
+        yield Remedy(f"clamp {diode} from {anode} to {cathode}, output and summing node of {log.amplifier}",
+                     [add_diode(design, diode, anode, cathode)])  # fmt: skip
+
+
+def _logs_at(review: Review, parts: list[str], emitter: str | None) -> list[LogTransistor]:
+    """Log transistors among some parts, or with their emitter on a net."""
+    pins = {ref: part.pins for ref, part in review.design.parts.items()}
+    return [log for log in review.structure.log_transistors if log.part in parts or pins[log.part]["E"] == emitter]
+
+
+def _input_of(review: Review, amplifier: str) -> str:
+    return next((n.input for n in review.structure.summing_nodes if n.amplifier == amplifier), "IN-")
+
+
+def leakage_bound(model: Any) -> float:  # noqa: ANN401  # a diode's parameters
+    """Greatest reverse current at 25 °C that a diode's parameters allow [A]."""
+    return float(model.saturation_current.max + model.reverse_leakage.max)
+
+
+def quietest_diode(review: Review) -> str | None:
+    """The diode model of the catalogues with the least leakage that stands the supplies."""
+    nets = review.design.nets.values()
+    rails = [v for net in nets if net.role == "supply" and net.voltage for v in (net.voltage.min, net.voltage.max)]
+    span = max([0.0, *rails]) - min([0.0, *rails])
+    fitting = [m for m in review.design.models.values() if m.kind == "diode" and _stands(m, span)]
+    return min(fitting, key=lambda m: (leakage_bound(m.parameters), m.name)).name if fitting else None
+
+
+def _stands(model: Model, volts: float) -> bool:
+    limit = model.parameters.reverse_voltage
+    return limit is not None and bool(limit.max >= volts)
+
+
+def series_resistor(
+    review: Review, ref: str, pin: str, limit: float, current: Callable[[Review], float]
+) -> Iterator[Remedy]:
+    """Resistor between a pin and its net that brings a fault current down to its limit.
+
+    The source is taken as a voltage behind a resistance, both found by solving once more with a resistor so
+    large that no supply or input could drive the limit through it.
+
+    Parameters
+    ----------
+    review : Review
+    ref, pin : str
+    limit : float
+        Current allowed [A].
+    current : callable
+        Greatest fault current of a review [A].
+    """
+    trial = _greatest_span(review) / limit
+    before, after = current(review), current(review.edited(add_in_series(review.design, trial, ref, pin)))
+    if not after < before * (1 - LEAST_EFFECT):
+        return
+    own = trial * after / (before - after)
+    least = max((before * own / limit - own) * ROOM, trial / LARGEST_SHARE)
+    value = min(decade_values("E24", least, least * 1.2))
+    title = f"put {format_quantity(value, 'ohm')} in series with {pin} of {ref}"
+    yield Remedy(title, add_in_series(review.design, value, ref, pin))
+
+
+def _greatest_span(review: Review) -> float:
+    """Largest voltage that supplies, inputs and drives have between them in any fault [V]."""
+    conditions, nets = review.faults.conditions, review.design.nets
+    ends = [0.0]
+    for name, net in nets.items():
+        if net.role in ("supply", "reference") or net.drive == "voltage":
+            ends += [float(np.nanmin(conditions.values[name])), float(np.nanmax(conditions.values[name]))]
+        elif net.drive == "current":
+            ends += [-net.compliance, net.compliance]
+    return max(ends) - min(ends)
+
+
+def against_current(review: Review, ref: str, quantity: str, limit: float) -> list[Remedy]:
+    """Less current through a part in faults: a resistor in series, or a model that stands it.
+
+    Parameters
+    ----------
+    review : Review
+    ref, quantity : str
+        Part and which of its currents is over its rating.
+    limit : float
+        Current allowed [A].
+    """
+    design = review.design
+    pin = {"output current": "OUT", "collector current": "C", "forward current": "A"}[quantity]
+
+    def current(other: Review) -> float:
+        return float(np.nanmax(np.abs(other.faults.current(ref, pin))))
+
+    at = next(((log.amplifier, "OUT") for log in _logs_at(review, [ref], design.parts[ref].pins.get("E"))), (ref, pin))
+    remedies = list(series_resistor(review, *at, limit, current))
+    return [*remedies, *sturdier(review, ref, quantity.replace(" ", "_"), current(review))]
+
+
+def sturdier(review: Review, ref: str, rating: str, needed: float) -> list[Remedy]:
+    """Another model with the rating that is needed, for the part and those it is matched or packaged with.
+
+    Parameters
+    ----------
+    review : Review
+    ref : str
+    rating : str
+        Parameter that is exceeded.
+    needed : float
+        What the part must stand.
+    """
+    part = review.design.parts[ref]
+    if part.kind == "op-amp":
+        fits = partial(_has, rating, needed)
+        return other_models(review, [ref], fits, (rating,), "it stands " + format_quantity(needed, "A", 3))
+    found = [
+        (abs(math.log(m.parameters.saturation_current.typ / part.saturation_current.typ)), m.name)
+        for m in review.design.models.values()
+        if part.model and m.kind == part.kind and m.name != part.model and _has(rating, needed, m.parameters)
+        and (part.kind == "diode" or m.parameters.monolithic == part.monolithic)
+    ]  # fmt: skip
+    together = _alike(review, ref)
+    if not found or any(rating in review.design.data["parts"][r] for r in together):
+        return [Remedy(f"take a part for {ref} that stands {format_quantity(needed, _unit(rating), 3)}")]
+    model = min(found)[1]
+    return [Remedy(f"take {model} for {', '.join(together)}", [set_parameter(r, "model", model) for r in together])]
+
+
+def _has(rating: str, needed: float, model: Any) -> bool:  # noqa: ANN401  # a model's parameters
+    limit = getattr(model, rating)
+    return limit is not None and bool(limit.min >= needed)
+
+
+def _unit(rating: str) -> str:
+    return "A" if rating.endswith("current") else "V"
+
+
+def _alike(review: Review, ref: str) -> list[str]:
+    """The part and those of its kind that share its package or its matched group."""
+    design = review.design
+    groups = [set(m.parts) for m in design.matching.values() if ref in m.parts]
+    package = {r for r, p in design.parts.items() if p.package == design.parts[ref].package}
+    near = package.union({ref}, *groups)
+    return [r for r, p in design.parts.items() if r in near and p.kind == design.parts[ref].kind]
