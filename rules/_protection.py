@@ -134,26 +134,26 @@ def _greatest_span(review: Review) -> float:
     return max(ends) - min(ends)
 
 
-def against_current(review: Review, ref: str, quantity: str, limit: float) -> list[Remedy]:
+def against_current(review: Review, ref: str, rating: str, limit: float) -> list[Remedy]:
     """Less current through a part in faults: a resistor in series, or a model that stands it.
 
     Parameters
     ----------
     review : Review
-    ref, quantity : str
-        Part and which of its currents is over its rating.
+    ref, rating : str
+        Part and which of its current ratings is exceeded.
     limit : float
         Current allowed [A].
     """
     design = review.design
-    pin = {"output current": "OUT", "collector current": "C", "forward current": "A"}[quantity]
+    pin = {"output_current": "OUT", "collector_current": "C", "forward_current": "A"}[rating]
 
     def current(other: Review) -> float:
         return float(np.nanmax(np.abs(other.faults.current(ref, pin))))
 
     at = next(((log.amplifier, "OUT") for log in _logs_at(review, [ref], design.parts[ref].pins.get("E"))), (ref, pin))
     remedies = list(series_resistor(review, *at, limit, current))
-    return [*remedies, *sturdier(review, ref, quantity.replace(" ", "_"), current(review))]
+    return [*remedies, *sturdier(review, ref, rating, current(review))]
 
 
 def sturdier(review: Review, ref: str, rating: str, needed: float) -> list[Remedy]:
@@ -186,8 +186,16 @@ def sturdier(review: Review, ref: str, rating: str, needed: float) -> list[Remed
 
 
 def _has(rating: str, needed: float, model: Any) -> bool:  # noqa: ANN401  # a model's parameters
-    limit = getattr(model, rating)
-    return limit is not None and bool(limit.min >= needed)
+    limit = rated(model, rating)
+    return limit is not None and limit >= needed
+
+
+def rated(parameters: Any, rating: str) -> float | None:  # noqa: ANN401  # a part's or a model's parameters
+    """Limit that a rating sets: of a breakdown the least voltage, else the greatest of what is allowed."""
+    spread = getattr(parameters, rating)
+    if spread is None:
+        return None
+    return float(spread.min if rating.endswith("breakdown") else spread.max)
 
 
 def _unit(rating: str) -> str:

@@ -7,11 +7,12 @@ from typing import Any
 
 import networkx as nx
 import numpy as np
+import numpy.typing as npt
 
 from rulecheck.api import OperatingPoints, Part, Review
 
-Mask = np.ndarray[Any, np.dtype[np.bool_]]
-Floats = np.ndarray[Any, np.dtype[np.float64]]
+Mask = npt.NDArray[np.bool_]
+Floats = npt.NDArray[np.floating[Any]]
 Node = tuple[str, str]
 TWO_TERMINAL = ("resistor", "diode", "voltage-source", "potentiometer")
 OFF = 0.1

@@ -8,18 +8,31 @@ A missing supply does the like. Reverse emitter current is the commonest field f
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass
 from typing import Annotated
 
 import numpy as np
 
 from rulecheck.api import (
-    BaseModel, Evidence, Finding, OperatingPoints, Part, Remedy, Review, Rule, Severity, Unit, format_quantity, join_key,
-)  # fmt: skip
+    BaseModel,
+    Evidence,
+    Finding,
+    OperatingPoints,
+    Part,
+    Remedy,
+    Review,
+    Rule,
+    Severity,
+    Unit,
+    format_quantity,
+    join_key,
+)
 
-from ._protection import against_current, against_reversal, sturdier
+from ._protection import against_current, against_reversal, rated, sturdier
 from ._saturation import Floats
+
+REVERSAL = "emitter-base reverse voltage"
 
 
 class JunctionReverse(Rule):
@@ -51,7 +64,7 @@ class JunctionReverse(Rule):
                 if np.isfinite(stress.over).any() and np.nanmax(stress.over) > stress.limit:
                     groups.setdefault((stress.place, stress.quantity), []).append(stress)
         for stresses in groups.values():
-            if not stresses[0].is_current or not _is_usual(review, settings, stresses[0]):
+            if stresses[0].unit == "V" or not _is_usual(review, settings, stresses[0]):
                 yield _finding(review, stresses)
         yield from (_survival_unknown(name, name in review.design.nets)
                     for name, source in review.design.inputs.items() if source.survives is None)
@@ -64,45 +77,49 @@ class _Stress:
     part: str
     place: str
     quantity: str
+    rating: str
     over: Floats
     limit: float
-    unit: str = "V"
     remark: str = ""
 
     @property
-    def is_current(self) -> bool:
-        return self.unit == "A"
+    def unit(self) -> str:
+        return "A" if self.rating.endswith("current") else "V"
 
 
 def _stresses(part: Part, points: OperatingPoints, settings: JunctionReverse.Settings) -> Iterator[_Stress]:
     if part.kind in ("npn", "pnp"):
-        yield from _transistor(part, points, settings)
-    elif part.kind in ("diode", "photodiode"):
-        reverse = points.voltage(part.pins["K"]) - points.voltage(part.pins["A"])
-        if part.reverse_voltage is not None:
-            yield _Stress(part.ref, part.ref, "reverse voltage", reverse, part.reverse_voltage.max)
-        if part.kind == "diode" and part.forward_current is not None:
-            current = points.current(part.ref, "A")
-            yield _Stress(part.ref, part.ref, "forward current", current, part.forward_current.max, "A")
-    elif part.kind == "op-amp" and part.output_current is not None:
-        current = np.abs(points.current(part.ref, "OUT"))
-        yield _Stress(part.ref, part.ref, "output current", current, part.output_current.max, "A")
+        yield _reversal(part, points, settings)
+    for kinds, name, rating, figure in _RATINGS:
+        limit = rated(part, rating) if part.kind in kinds else None
+        if limit is not None:
+            yield _Stress(part.ref, part.ref, name, rating, figure(part, points), limit)
 
 
-def _transistor(part: Part, points: OperatingPoints, settings: JunctionReverse.Settings) -> Iterator[_Stress]:
-    sign = 1 if part.kind == "npn" else -1
-    known = part.emitter_base_breakdown is not None
-    breakdown = part.emitter_base_breakdown.min if known else settings.assumed_breakdown
-    yield _Stress(
-        part.ref, part.pins["E"], "emitter-base reverse voltage", -sign * points.vbe(part.ref),
-        settings.share_of_breakdown * breakdown, remark="" if known else " (breakdown assumed, the model does not say)",
-    )  # fmt: skip
-    if part.collector_emitter_breakdown is not None:
-        limit = part.collector_emitter_breakdown.min
-        yield _Stress(part.ref, part.ref, "collector-emitter voltage", sign * points.vce(part.ref), limit)
-    if part.collector_current is not None:
-        current = np.abs(points.current(part.ref, "C"))
-        yield _Stress(part.ref, part.ref, "collector current", current, part.collector_current.max, "A")
+def _reversal(part: Part, points: OperatingPoints, settings: JunctionReverse.Settings) -> _Stress:
+    breakdown = rated(part, "emitter_base_breakdown")
+    limit = settings.share_of_breakdown * (settings.assumed_breakdown if breakdown is None else breakdown)
+    remark = " (breakdown assumed, the model does not say)" if breakdown is None else ""
+    reverse = -_polarity(part) * points.vbe(part.ref)
+    return _Stress(part.ref, part.pins["E"], REVERSAL, "emitter_base_breakdown", reverse, limit, remark)
+
+
+def _polarity(part: Part) -> int:
+    return 1 if part.kind == "npn" else -1
+
+
+_TRANSISTORS = ("npn", "pnp")
+_Figure = Callable[[Part, OperatingPoints], Floats]
+_RATINGS: tuple[tuple[tuple[str, ...], str, str, _Figure], ...] = (
+    (_TRANSISTORS, "collector-emitter voltage", "collector_emitter_breakdown",
+     lambda part, points: _polarity(part) * points.vce(part.ref)),
+    (_TRANSISTORS, "collector current", "collector_current",
+     lambda part, points: np.abs(points.current(part.ref, "C"))),
+    (("diode", "photodiode"), "reverse voltage", "reverse_voltage",
+     lambda part, points: points.voltage(part.pins["K"]) - points.voltage(part.pins["A"])),
+    (("diode",), "forward current", "forward_current", lambda part, points: points.current(part.ref, "A")),
+    (("op-amp",), "output current", "output_current", lambda part, points: np.abs(points.current(part.ref, "OUT"))),
+)  # fmt: skip
 
 
 def _is_usual(review: Review, settings: JunctionReverse.Settings, stress: _Stress) -> bool:
@@ -122,7 +139,7 @@ def _finding(review: Review, stresses: list[_Stress]) -> Finding:
         f"{', '.join(parts)}: {stress.quantity} {format_quantity(worst.value, stress.unit, 3)}, allowed "
         f"{format_quantity(stress.limit, stress.unit, 3)}{stress.remark}",
         parts=parts, nets=[stress.place] if stress.place != stress.part else [], subject=stress.quantity,
-        conditions=worst.conditions, scenario=scenario, consequence=_CONSEQUENCES[stress.quantity],
+        conditions=worst.conditions, scenario=scenario, consequence=_CONSEQUENCES[stress.rating],
         evidence=[Evidence(f"{s.quantity} of {s.part}", float(s.over[worst.index]), s.unit, s.limit, "<=", over=s.over,
                            basis="limit") for s in stresses],
         remedies=_remedies(review, stress, parts, worst.index),
@@ -130,22 +147,21 @@ def _finding(review: Review, stresses: list[_Stress]) -> Finding:
 
 
 _CONSEQUENCES = {
-    "emitter-base reverse voltage": "the junction breaks down; gain, noise and match are spoilt for good",
-    "collector-emitter voltage": "the transistor breaks down, and what the supply gives flows through it",
-    "collector current": "the transistor is overloaded and may be destroyed",
-    "reverse voltage": "the diode breaks down",
-    "forward current": "the diode is overloaded and may be destroyed",
-    "output current": "the output is overloaded; it heats, or limits its current",
+    "emitter_base_breakdown": "the junction breaks down; gain, noise and match are spoilt for good",
+    "collector_emitter_breakdown": "the transistor breaks down, and what the supply gives flows through it",
+    "collector_current": "the transistor is overloaded and may be destroyed",
+    "reverse_voltage": "the diode breaks down",
+    "forward_current": "the diode is overloaded and may be destroyed",
+    "output_current": "the output is overloaded; it heats, or limits its current",
 }
 
 
 def _remedies(review: Review, stress: _Stress, parts: list[str], index: int) -> list[Remedy]:
-    if stress.quantity == "emitter-base reverse voltage":
+    if stress.quantity == REVERSAL:
         return against_reversal(review, parts, stress.place, index)
-    if stress.is_current:
-        return against_current(review, stress.part, stress.quantity, stress.limit)
-    rating = "reverse_voltage" if stress.quantity == "reverse voltage" else "collector_emitter_breakdown"
-    return sturdier(review, stress.part, rating, float(np.nanmax(stress.over)))
+    if stress.unit == "A":
+        return against_current(review, stress.part, stress.rating, stress.limit)
+    return sturdier(review, stress.part, stress.rating, float(np.nanmax(stress.over)))
 
 
 def _survival_unknown(name: str, is_net: bool) -> Finding:

@@ -228,7 +228,7 @@ def test_a_reference_diode_without_amplifier_is_at_work():
         parts = [
             feed,
             npn("Q1", "N", "N", "GND"),
-            resistor("R2", "10 kohm", "N", "M"),
+            resistor("R2", "100 kohm", "N", "M"),
             resistor("R3", "10 kohm", "M", "VOUT"),
         ]
         assert structure_of([*parts, amplifier("U1", "GND", "M", "VOUT")]).conducting == ("Q1",)
