@@ -23,56 +23,57 @@ LARGEST_SHARE = 1e4
 """A series resistor is at least this part of what the whole voltage would ask."""
 
 
-def against_reversal(review: Review, parts: list[str], emitter: str, index: int) -> list[Remedy]:
-    """Keep base-emitter junctions from reversing: a clamp in the amplifier's loop, or diodes across them.
+def against_reversal(review: Review, parts: list[str], causes: list[str], index: int) -> list[Remedy]:
+    """Keep base-emitter junctions from reversing: clamps in the amplifiers' loops, or diodes across them.
 
     Parameters
     ----------
     review : Review
     parts : list of str
-        Transistors with their emitters on the net `emitter`.
+        Transistors reversed.
+    causes : list of str
+        Amplifiers at their limits that reverse them.
     index : int
         The worst fault scenario.
     """
     diode = quietest_diode(review)
     if diode is None:
         return [Remedy("clamp the junction with a diode of low leakage; the catalogues have none")]
-    remedies = list(_clamp_in_loop(review, parts, emitter, index, diode))
+    clamps = [_clamp_in_loop(review, a, index, diode) for a in causes if a in review.design.parts]
     edits: list[Edit] = []
+    for ends in clamps:
+        edits += [add_diode(review.design, diode, *ends, edits)] if ends else []
+    where = ", ".join(f"from {ends[0]} to {ends[1]}" for ends in clamps if ends)
+    remedies = [Remedy(f"clamp {', '.join(causes)} with {diode} {where}", edits)] if clamps and all(clamps) else []
+    across: list[Edit] = []
     for ref in parts:
         part = review.design.parts[ref]
         anode, cathode = ("E", "B") if part.kind == "npn" else ("B", "E")
-        edits.append(add_diode(review.design, diode, part.pins[anode], part.pins[cathode], edits))
+        across.append(add_diode(review.design, diode, part.pins[anode], part.pins[cathode], across))
     way = "emitter to base" if review.design.parts[parts[0]].kind == "npn" else "base to emitter"
-    return [*remedies, Remedy(f"diode {diode} across {', '.join(parts)}, from {way}", edits)]
+    return [*remedies, Remedy(f"{diode} across {', '.join(parts)}, from {way}", across)]
 
 
-def _clamp_in_loop(review: Review, parts: list[str], emitter: str, index: int, diode: str) -> Iterator[Remedy]:
-    """Diode from the amplifier's output to its summing node that takes over when the junction turns off."""
-    design = review.design
-    for log in _logs_at(review, parts, emitter)[:1]:
-        pins = design.parts[log.amplifier].pins
-        out, node = pins["OUT"], pins[_input_of(review, log.amplifier)]
-        fault = float((review.faults.voltage(out) - review.faults.voltage(node))[index])
-        normal = review.operating_points.voltage(out) - review.operating_points.voltage(node)
-        if fault > 0 and np.nanmax(normal) < KNEE:
-            anode, cathode = out, node
-        elif fault < 0 and np.nanmin(normal) > -KNEE:
-            anode, cathode = node, out
-        else:
-            continue
-        yield Remedy(f"clamp {diode} from {anode} to {cathode}, output and summing node of {log.amplifier}",
-                     [add_diode(design, diode, anode, cathode)])  # fmt: skip
+def _clamp_in_loop(review: Review, amplifier: str, index: int, diode: str) -> tuple[str, str] | None:
+    """Anode and cathode of a diode between output and summing node that takes over when the loop opens."""
+    pins = review.design.parts[amplifier].pins
+    node = next((n for n in review.structure.summing_nodes if n.amplifier == amplifier), None)
+    if node is None:
+        return None
+    out, held = pins["OUT"], pins[node.input]
+    fault = float((review.faults.voltage(out) - review.faults.voltage(held))[index])
+    normal = review.operating_points.voltage(out) - review.operating_points.voltage(held)
+    if fault > 0 and np.nanmax(normal) < KNEE:
+        return out, held
+    if fault < 0 and np.nanmin(normal) > -KNEE:
+        return held, out
+    return None
 
 
 def _logs_at(review: Review, parts: list[str], emitter: str | None) -> list[LogTransistor]:
     """Log transistors among some parts, or with their emitter on a net."""
     pins = {ref: part.pins for ref, part in review.design.parts.items()}
     return [log for log in review.structure.log_transistors if log.part in parts or pins[log.part]["E"] == emitter]
-
-
-def _input_of(review: Review, amplifier: str) -> str:
-    return next((n.input for n in review.structure.summing_nodes if n.amplifier == amplifier), "IN-")
 
 
 def leakage_bound(model: Any) -> float:  # noqa: ANN401  # a diode's parameters

@@ -133,6 +133,13 @@ def _sources(flow: SignalFlow, names: list[str]) -> Iterator[frozenset[str]]:
     yield from (frozenset(condensed.nodes[c]["members"]) for c in condensed if condensed.in_degree(c) == 0)
 
 
+def causes_of(flow: SignalFlow, points: OperatingPoints, index: int, nets: set[str]) -> list[str]:
+    """Amplifiers at a limit at one condition that move any of some nets and that no other one explains."""
+    names = [a for a in flow.amplifiers if is_at_limit(points, a)[index] and flow.nets(a) & nets]
+    first = set().union(*_sources(flow, names))
+    return [name for name in names if name in first]
+
+
 def lacks_signal(review: Review, amplifier: str) -> Mask:
     """Where the junction in an amplifier's feedback is off because the signal has the wrong sign, or is none."""
     points, structure = review.operating_points, review.structure

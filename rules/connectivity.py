@@ -9,7 +9,7 @@ import difflib
 from collections.abc import Callable, Iterable, Iterator
 from typing import Annotated
 
-from rulecheck.api import Add, BaseModel, Edit, Finding, Part, Remedy, Review, Rule, Set, Severity, Unit, join_key
+from rulecheck.api import BaseModel, Edit, Finding, Part, Remedy, Review, Rule, Set, Severity, Unit, join_key
 
 from ._conduction import floating, source_loops, tied_outputs
 from ._edits import move
@@ -21,7 +21,6 @@ REQUIRED = {
     "diode": ("A", "K"), "photodiode": ("A", "K"), "potentiometer": ("END1", "WIPER", "END2"),
     "voltage-source": ("P", "N"), "current-source": ("P", "N"),
 }  # fmt: skip
-GROUND_NAMES = ("gnd", "agnd", "ground", "0", "0v", "com", "common")
 LOOK_ALIKE = str.maketrans("01 -", "ol__")
 """Characters taken for each other in names, lower case."""
 SLIP = 0.85
@@ -53,7 +52,6 @@ class Connectivity(Rule):
         """Look for each sort of slip in turn; a net told of is not told of again."""
         nets = _Nets(review)
         searches: list[Callable[[], Iterable[Finding]]] = [
-            nets.without_ground,
             nets.missing_pins,
             lambda: supply_faults(review.design, settings.series_resistance, settings.series_drop),
             nets.shorted_parts,
@@ -87,17 +85,6 @@ class _Nets:
         alone = {net: pins[0][0] for net, pins in self.pins.items() if len(pins) == 1}
         ordinary = (net for net, ref in alone.items() if self.design.nets[net].role is None and ref in self.used)
         return [net for net in ordinary if net not in self.told]
-
-    def without_ground(self) -> Iterator[Finding]:
-        if grounds(self.design):
-            return
-        near = [net for net in self.pins if net.lower() in GROUND_NAMES and self.design.nets[net].role is None]
-        edits = [Add(join_key(("nets", net)), {"role": "ground"}) for net in near] if len(near) == 1 else []
-        title = f"make {near[0]} the ground" if edits else "give one net the role of ground"
-        yield Finding(
-            "no net has the role of ground", subject="ground", at="nets", remedies=[Remedy(title, edits)],
-            consequence="voltages have no point to be counted from",
-        )  # fmt: skip
 
     def missing_pins(self) -> Iterator[Finding]:
         missing = {ref: [p for p in _required(part) if p not in part.pins] for ref, part in self.used.items()}
@@ -208,8 +195,6 @@ class _Nets:
             )  # fmt: skip
 
     def floating_nets(self) -> Iterator[Finding]:
-        if not grounds(self.design):
-            return
         for group in floating(self.design):
             refs = list(dict.fromkeys(ref for net in group for ref, _ in self.pins[net] if ref in self.used))
             if not refs or self.told.intersection(group):

@@ -120,8 +120,6 @@ def _without(rail: _Rail, capacitors: list[set[str]]) -> Iterator[str]:
 
 
 def _remedy(design: Design, rail: _Rail, nets: list[str]) -> Remedy:
-    if not grounds(design):
-        return Remedy("add a capacitor to ground")
     rating = next((v for v in RATINGS if v >= RATING_MARGIN * abs(rail.volts)), None)
     edits: list[Edit] = []
     for net in nets:

@@ -30,9 +30,9 @@ from rulecheck.api import (
 )
 
 from ._protection import against_current, against_reversal, rated, sturdier
-from ._saturation import Floats
+from ._saturation import Floats, SignalFlow, causes_of
 
-REVERSAL = "emitter-base reverse voltage"
+REVERSAL = "emitter_base_breakdown"
 
 
 class JunctionReverse(Rule):
@@ -40,7 +40,8 @@ class JunctionReverse(Rule):
 
     An absent supply is a net held at 0 V; that a rail can be fed through clamps and float up is not modelled.
     Small transistors break down at 5 to 7 V from emitter to base; where the model does not say, the least of
-    these is taken. Junctions on one emitter net are one finding. Currents that are over their rating in normal
+    these is taken. Junctions that the same saturated amplifiers reverse are
+    one finding. Currents that are over their rating in normal
     operation too are other rules' matter.
     """
 
@@ -57,25 +58,24 @@ class JunctionReverse(Rule):
         assumed_breakdown: Annotated[float, Unit("V")] = 5.0
 
     def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
-        """One finding for the junctions on one emitter net, one a part for other stresses."""
-        groups: dict[tuple[str, str], list[_Stress]] = {}
+        """One finding for the junctions that the same amplifiers reverse, one a part for other stresses."""
+        flow = SignalFlow(review)
+        groups: dict[tuple[str, ...], list[_Stress]] = {}
         for part in review.design.parts.values():
             for stress in _stresses(part, review.faults, settings):
-                if np.isfinite(stress.over).any() and np.nanmax(stress.over) > stress.limit:
-                    groups.setdefault((stress.place, stress.quantity), []).append(stress)
-        for stresses in groups.values():
-            if stresses[0].unit == "V" or not _is_usual(review, settings, stresses[0]):
-                yield _finding(review, stresses)
+                if stress.is_exceeded and (stress.unit == "V" or not _is_usual(review, settings, stress)):
+                    groups.setdefault((stress.rating, *_cause(review, flow, stress)), []).append(stress)
+        for (_, *causes), stresses in groups.items():
+            yield _finding(review, stresses, causes)
         yield from (_survival_unknown(name, name in review.design.nets)
                     for name, source in review.design.inputs.items() if source.survives is None)
 
 
 @dataclass(frozen=True)
 class _Stress:
-    """A figure of a part over conditions against what the part stands; `place` joins those with one cause."""
+    """A figure of a part over conditions against what the part stands."""
 
     part: str
-    place: str
     quantity: str
     rating: str
     over: Floats
@@ -86,6 +86,10 @@ class _Stress:
     def unit(self) -> str:
         return "A" if self.rating.endswith("current") else "V"
 
+    @property
+    def is_exceeded(self) -> bool:
+        return bool(np.isfinite(self.over).any() and np.nanmax(self.over) > self.limit)
+
 
 def _stresses(part: Part, points: OperatingPoints, settings: JunctionReverse.Settings) -> Iterator[_Stress]:
     if part.kind in ("npn", "pnp"):
@@ -93,15 +97,15 @@ def _stresses(part: Part, points: OperatingPoints, settings: JunctionReverse.Set
     for kinds, name, rating, figure in _RATINGS:
         limit = rated(part, rating) if part.kind in kinds else None
         if limit is not None:
-            yield _Stress(part.ref, part.ref, name, rating, figure(part, points), limit)
+            yield _Stress(part.ref, name, rating, figure(part, points), limit)
 
 
 def _reversal(part: Part, points: OperatingPoints, settings: JunctionReverse.Settings) -> _Stress:
-    breakdown = rated(part, "emitter_base_breakdown")
+    breakdown = rated(part, REVERSAL)
     limit = settings.share_of_breakdown * (settings.assumed_breakdown if breakdown is None else breakdown)
     remark = " (breakdown assumed, the model does not say)" if breakdown is None else ""
     reverse = -_polarity(part) * points.vbe(part.ref)
-    return _Stress(part.ref, part.pins["E"], REVERSAL, "emitter_base_breakdown", reverse, limit, remark)
+    return _Stress(part.ref, "emitter-base reverse voltage", REVERSAL, reverse, limit, remark)
 
 
 def _polarity(part: Part) -> int:
@@ -125,29 +129,40 @@ _RATINGS: tuple[tuple[tuple[str, ...], str, str, _Figure], ...] = (
 def _is_usual(review: Review, settings: JunctionReverse.Settings, stress: _Stress) -> bool:
     """Whether the figure is over its limit in normal operation too."""
     part = review.design.parts[stress.part]
-    same = (s for s in _stresses(part, review.operating_points, settings) if s.quantity == stress.quantity)
-    return any(np.isfinite(s.over).any() and np.nanmax(s.over) > s.limit for s in same)
+    usual = _stresses(part, review.operating_points, settings)
+    return any(s.is_exceeded for s in usual if s.rating == stress.rating)
 
 
-def _finding(review: Review, stresses: list[_Stress]) -> Finding:
-    points = review.faults
+def _cause(review: Review, flow: SignalFlow, stress: _Stress) -> list[str]:
+    """What joins stresses in one finding: the amplifiers that reverse junctions, else the part."""
+    if stress.rating != REVERSAL:
+        return [stress.part]
+    pins = review.design.parts[stress.part].pins
+    index = review.faults.worst(stress.over).index
+    return causes_of(flow, review.faults, index, {pins["B"], pins["E"]}) or [pins["E"]]
+
+
+def _finding(review: Review, stresses: list[_Stress], causes: list[str]) -> Finding:
+    points, design = review.faults, review.design
     stress = max(stresses, key=lambda s: float(np.nanmax(s.over)) / s.limit)
     worst = points.worst(stress.over)
     parts = [s.part for s in stresses]
-    scenario = points.conditions.scenario[worst.index] if points.conditions.scenario else None
+    reversal = stress.rating == REVERSAL
     return Finding(
         f"{', '.join(parts)}: {stress.quantity} {format_quantity(worst.value, stress.unit, 3)}, allowed "
         f"{format_quantity(stress.limit, stress.unit, 3)}{stress.remark}",
-        parts=parts, nets=[stress.place] if stress.place != stress.part else [], subject=stress.quantity,
-        conditions=worst.conditions, scenario=scenario, consequence=_CONSEQUENCES[stress.rating],
+        parts=parts, nets=list(dict.fromkeys(design.parts[p].pins["E"] for p in parts)) if reversal else [],
+        subject=stress.quantity, conditions=worst.conditions,
+        scenario=points.conditions.scenario[worst.index] if points.conditions.scenario else None,
+        consequence=_CONSEQUENCES[stress.rating],
         evidence=[Evidence(f"{s.quantity} of {s.part}", float(s.over[worst.index]), s.unit, s.limit, "<=", over=s.over,
                            basis="limit") for s in stresses],
-        remedies=_remedies(review, stress, parts, worst.index),
+        remedies=against_reversal(review, parts, causes, worst.index) if reversal else _remedies(review, stress),
     )  # fmt: skip
 
 
 _CONSEQUENCES = {
-    "emitter_base_breakdown": "the junction breaks down; gain, noise and match are spoilt for good",
+    REVERSAL: "the junction breaks down; gain, noise and match are spoilt for good",
     "collector_emitter_breakdown": "the transistor breaks down, and what the supply gives flows through it",
     "collector_current": "the transistor is overloaded and may be destroyed",
     "reverse_voltage": "the diode breaks down",
@@ -156,9 +171,7 @@ _CONSEQUENCES = {
 }
 
 
-def _remedies(review: Review, stress: _Stress, parts: list[str], index: int) -> list[Remedy]:
-    if stress.quantity == REVERSAL:
-        return against_reversal(review, parts, stress.place, index)
+def _remedies(review: Review, stress: _Stress) -> list[Remedy]:
     if stress.unit == "A":
         return against_current(review, stress.part, stress.rating, stress.limit)
     return sturdier(review, stress.part, stress.rating, float(np.nanmax(stress.over)))

@@ -112,9 +112,10 @@ def _groups(participation: np.ndarray, chosen: np.ndarray) -> Iterator[list[int]
     """Amplifiers that take part together at any chosen condition, as connected groups."""
     shared = participation[chosen].astype(int)
     linked = shared.T @ shared > 0
-    left = set(np.flatnonzero(np.diag(linked)))
+    left = {int(i) for i in np.flatnonzero(np.diag(linked))}
     while left:
-        group, front = set(), {min(left)}
+        group: set[int] = set()
+        front = {min(left)}
         while front:
             group |= front
             front = {int(j) for i in front for j in np.flatnonzero(linked[i])} - group

@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from ..devices.constants import Array
+from ..devices.constants import Array, Index
 from ..errors import CommandError
 from ..units import format_quantity
 
@@ -50,7 +50,7 @@ class Conditions:
         """The values of one condition as plain numbers."""
         return {name: float(array[index]) for name, array in self.values.items()}
 
-    def take(self, index: Array) -> Conditions:
+    def take(self, index: Index) -> Conditions:
         """The conditions that `index` (integers or booleans) picks."""
         scenario = None if self.scenario is None else tuple(np.array(self.scenario, dtype=object)[index])
         return Conditions(

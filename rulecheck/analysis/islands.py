@@ -91,7 +91,7 @@ def _joined(design: Design, found: tuple[Island, ...]) -> tuple[Island, ...]:
     """Join islands whose parts warm each other, or that hang on one source part, whose current is of them all."""
     thermal = build_thermal(design)
     place = {ref: i for i, island in enumerate(found) for ref in island.parts}
-    nodes = nx.Graph()
+    nodes: nx.Graph[int] = nx.Graph()
     nodes.add_nodes_from(range(len(found)))
     by_node: dict[int, set[int]] = {}
     for ref, node in thermal.node.items():

@@ -8,7 +8,7 @@ from typing import Protocol
 
 import numpy as np
 
-from ..devices.constants import Array, BoolArray, ComplexArray
+from ..devices.constants import Array, BoolArray, ComplexArray, Index, IntArray
 
 POINTS_PER_DECADE = 12
 REFINEMENTS = 48
@@ -27,7 +27,7 @@ class Ratio(Protocol):
     def mu(self) -> ComplexArray:
         """Time constants, shape (conditions, modes); sets the memory one evaluation takes."""
 
-    def at(self, frequency: Array, index: Array | slice = slice(None)) -> ComplexArray:
+    def at(self, frequency: Array, index: Index = slice(None)) -> ComplexArray:
         """Value at `frequency` [Hz]."""
 
 
@@ -98,7 +98,7 @@ def frequency_grid(natural: ComplexArray) -> Array:
     return np.sort(np.concatenate([common, own, own * (1 - width), own * (1 + width)], axis=1), axis=1)
 
 
-def _margins(ratio: Ratio, grid: Array, where: Array) -> dict[str, Array]:
+def _margins(ratio: Ratio, grid: Array, where: IntArray) -> dict[str, Array]:
     value = ratio.at(grid, where)
     dc = ratio.dc[where]
     phase = _unwrapped(value, dc)
@@ -137,8 +137,8 @@ def _unwrapped(value: ComplexArray, dc: Array) -> Array:
 
 
 def _crossings(
-    ratio: Ratio, grid: Array, where: Array, sampled: Array, measure: Callable[[ComplexArray], Array]
-) -> tuple[Array, Array, Array]:
+    ratio: Ratio, grid: Array, where: IntArray, sampled: Array, measure: Callable[[ComplexArray], Array]
+) -> tuple[IntArray, IntArray, Array]:
     """Sign changes of `sampled` refined by bisection: rows, grid cells and frequencies [Hz]."""
     with np.errstate(invalid="ignore"):
         rows, cells = np.nonzero((sampled[:, :-1] > 0) != (sampled[:, 1:] > 0))
@@ -153,7 +153,7 @@ def _crossings(
     return rows, cells, np.exp((low + high) / 2)
 
 
-def _least(order: Array, value: Array, frequency: Array, rows: Array, count: int) -> tuple[Array, Array]:
+def _least(order: Array, value: Array, frequency: Array, rows: IntArray, count: int) -> tuple[Array, Array]:
     """Of the crossings of each row the one least by `order`: its value and frequency; NaN where none."""
     best, place = np.full(count, np.nan), np.full(count, np.nan)
     by_row = np.lexsort((order, rows))
@@ -169,7 +169,7 @@ NEAR_LEAST = 1.3
 """A minimum between grid points may be deeper than the least one seen: all that come this near are refined."""
 
 
-def _modulus(ratio: Ratio, grid: Array, where: Array, value: ComplexArray) -> Array:
+def _modulus(ratio: Ratio, grid: Array, where: IntArray, value: ComplexArray) -> Array:
     """Least ``|1 + T|``, by golden section about the low grid points."""
     distance = np.abs(1 + value)
     padded = np.pad(distance, ((0, 0), (1, 1)), constant_values=np.inf)

@@ -11,7 +11,7 @@ from functools import cached_property
 
 import numpy as np
 
-from ..devices.constants import AnyArray, Array, BoolArray, ComplexArray, IntArray
+from ..devices.constants import AnyArray, Array, BoolArray, ComplexArray, Index, IntArray
 from .margins import Margins, margins
 from .small_signal import SmallSignal
 
@@ -98,7 +98,7 @@ class ReturnRatio:
     mu: ComplexArray
     dc: Array
 
-    def at(self, frequency: Array, index: Array | slice = slice(None)) -> ComplexArray:
+    def at(self, frequency: Array, index: Index = slice(None)) -> ComplexArray:
         """T at frequencies [Hz] of shape (conditions, points), or one per chosen condition."""
         s = 2j * np.pi * frequency
         weight, mu, start = self.weight[index], self.mu[index], self.start[index]

@@ -59,7 +59,9 @@ def complete_pairings(junctions: Sequence[Junction]) -> tuple[Pairing, ...]:
     clockwise = tuple((j.part, j.weight) for j in junctions if j.turn > 0)
     anticlockwise = tuple((j.part, j.weight) for j in junctions if j.turn < 0)
     nothing = BALANCE * min(weight for _, weight in clockwise + anticlockwise)
-    found = dict.fromkeys(islice(_spent(clockwise, anticlockwise, nothing), MOST_TRIED))
+    place = {j.part: i for i, j in enumerate(junctions)}
+    tried = islice(_spent(clockwise, anticlockwise, nothing), MOST_TRIED)
+    found = dict.fromkeys(tuple(sorted(pairs, key=lambda p: (place[p[0]], place[p[1]]))) for pairs in tried)
     fewest = min(map(len, found), default=0)
     return tuple(pairing for pairing in found if len(pairing) == fewest)
 

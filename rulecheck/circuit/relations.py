@@ -70,10 +70,11 @@ def junction_relations(
             short = _shortened(row, layouts, place)
             if len(_junctions(short)) > 1:
                 yield Relation(short)
-        for (_, point), row in back_substituted(reaching).items():
-            short = _shortened(row, layouts, place)
+        reached = back_substituted(reaching)
+        for column in reaching:
+            short = _shortened(reached[column], layouts, place)
             if _junctions(short):
-                yield Relation(short, point)
+                yield Relation(short, column[1])
 
 
 def _columns(rows: Iterable[Row], kind: str) -> list[Column]:

@@ -68,7 +68,7 @@ def _diffs(report: DesignReport, review: DesignReview) -> str:
 
     diffs = ""
     for finding in report.findings:
-        for remedy in finding.remedies:
+        for remedy in (remedy for remedy in finding.remedies if remedy.edits):
             try:
                 text = edited(review.design.text, remedy)
             except EditError:

@@ -11,6 +11,7 @@ from typing import Any
 from rulecheck.design.fields import shown
 from rulecheck.design.frozen import FrozenDict
 from rulecheck.design.model import Model
+from rulecheck.design.names import entries
 from rulecheck.design.parameters import MODEL_TABLES, NOT_PARAMETERS, ModelTable
 from rulecheck.design.read import by_name, check_format, chosen
 from rulecheck.design.source import Problems, Source, parse, read_file
@@ -68,8 +69,7 @@ def read_catalogues(design: Source, folder: Path) -> Catalogue:
         if source is None:
             catalogue.is_complete = False
             continue
-        models = source.data.get("models")
-        for model in models if isinstance(models, Mapping) else ():
+        for model in entries(source.data, "models"):
             if model in own:
                 problems.add(["catalogues", index], f"{name!r} has a model {model!r}, as a catalogue before it has")
             own.add(model)
@@ -120,7 +120,7 @@ def _add_models(catalogue: Catalogue, source: Source) -> None:
         if key not in ("format", "models"):
             problems.add([key], *unknown_key(key, ["format", "models"], "a catalogue"), of_key=True)
     tables = by_name(source.data, "models", _model_table, problems)
-    catalogue.is_complete &= len(tables) == len(source.data.get("models", ()))
+    catalogue.is_complete &= set(tables) == set(entries(source.data, "models"))
     for name, table in tables.items():
         given = table.given - NOT_PARAMETERS
         catalogue.models[name] = Model(name, table.kind, table.note, table, given, source.file)

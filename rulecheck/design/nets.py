@@ -8,13 +8,13 @@ from rulecheck.design.fields import (
     NON_NEGATIVE,
     POSITIVE,
     TOLERANCE,
-    Range,
     Table,
     Text,
     key,
     required,
 )
 from rulecheck.design.parameters import ZERO
+from rulecheck.design.readers import Range
 from rulecheck.units import Spread, Unit
 
 Capacitance = Annotated[Spread | None, Unit("F"), NON_NEGATIVE]

@@ -5,7 +5,8 @@ from __future__ import annotations
 import math
 from typing import Annotated, ClassVar, Literal
 
-from rulecheck.design.fields import NON_NEGATIVE, POSITIVE, Flag, Range, Table, Text, key, required
+from rulecheck.design.fields import NON_NEGATIVE, POSITIVE, Flag, Table, Text, key, required
+from rulecheck.design.readers import Range
 from rulecheck.errors import QuantityError
 from rulecheck.units import Spread, Unit
 

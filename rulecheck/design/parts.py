@@ -11,8 +11,6 @@ from rulecheck.design.fields import (
     POSITIVE,
     TOLERANCE,
     Flag,
-    Pins,
-    Range,
     Table,
     Text,
     key,
@@ -25,6 +23,7 @@ from rulecheck.design.parameters import (
     Parameters,
     TransistorParameters,
 )
+from rulecheck.design.readers import Pins, Range
 from rulecheck.units import Spread, Unit
 
 Nets = Mapping[str, str]

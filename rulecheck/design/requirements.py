@@ -8,11 +8,11 @@ from typing import Any, TypeVar
 from pydantic_core import PydanticCustomError, ValidationError
 
 from rulecheck.design.check import unknown
-from rulecheck.design.fields import Range
 from rulecheck.design.frozen import FrozenDict
 from rulecheck.design.law import Law
 from rulecheck.design.model import Bandwidth, Noise, Requirement
 from rulecheck.design.names import Names
+from rulecheck.design.readers import Range
 from rulecheck.design.source import Problems
 from rulecheck.design.tables import Accuracy, BandwidthTable, RequirementTable
 from rulecheck.errors import LawError, QuantityError

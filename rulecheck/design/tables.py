@@ -4,19 +4,27 @@ from __future__ import annotations
 
 from typing import Annotated, Any, ClassVar, Literal
 
+from pydantic import WithJsonSchema
+
 from rulecheck.design.fields import (
     NON_NEGATIVE,
     POSITIVE,
-    AnyQuantity,
     Date,
-    Names,
-    Range,
     Table,
     Text,
     key,
     required,
 )
+from rulecheck.design.readers import AnyQuantity, Names, Range
 from rulecheck.units import ZERO_CELSIUS, Dimension, Spread, Unit
+
+# The units of these depend on what is named; they are read where the names are known.
+_QUANTITY = {"type": ["string", "number"]}
+_BY_NAME = {"type": "object", "additionalProperties": _QUANTITY}
+_RANGES = {
+    "type": "object",
+    "additionalProperties": {"type": "array", "items": _QUANTITY, "minItems": 2, "maxItems": 2},
+}
 
 Limit = Annotated[float | None, Unit("%"), NON_NEGATIVE]
 
@@ -101,7 +109,9 @@ class BandwidthTable(Table):
 
     min: Annotated[float, Unit("Hz"), POSITIVE] = required("least -3 dB frequency")
     input: Text | None = key("the input it is from (the only one)")
-    at: dict[str, Any] = key("where it is asked: quantities by name of input, ambient and so on", {})
+    at: Annotated[dict[str, Any], WithJsonSchema(_BY_NAME)] = key(
+        "where it is asked: quantities by name of input, ambient and so on", {}
+    )
 
 
 class NoiseTable(Table):
@@ -122,7 +132,7 @@ class RequirementTable(Table):
     law: Text | None = key('law of the output, "full_scale * (VIN / full_scale) ** n"')
     constants: dict[str, Annotated[tuple[float, Dimension], AnyQuantity()]] = key("quantities that the law names", {})
     accuracy: Accuracy | None = key("allowed error of the output about the law")
-    range: dict[str, Any] = key("ranges [low, high] by input (the inputs' own)", {})
+    range: Annotated[dict[str, Any], WithJsonSchema(_RANGES)] = key("ranges [low, high] by input (the inputs' own)", {})
     bandwidth: BandwidthTable | None = key("least bandwidth")
     phase_margin: Annotated[float | None, Unit("deg"), POSITIVE] = key("least phase margin")
     noise: NoiseTable | None = key("greatest noise at the output")

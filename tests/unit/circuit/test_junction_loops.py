@@ -4,7 +4,6 @@ import pytest
 from circuits import (
     OUTPUT,
     USUAL,
-    VREF,
     amplifier,
     antilog,
     current_input,
@@ -530,6 +529,7 @@ def test_bulk_compensation_leaves_the_pair_compensated():
 
 
 def test_a_faulty_amplifier_takes_its_loops_with_it():
-    """With swapped inputs nothing is held, so nothing is claimed."""
-    parts = [X1, npn("Q1", "S1", "GND", "VOUT"), amplifier("U1", "S1", "GND", "VOUT")]
-    assert structure_of(parts, {"VX": voltage_input(), "VREF": VREF, "VOUT": OUTPUT}).junction_loops == ()
+    """With the inputs of a difference amplifier swapped nothing is held, so nothing is claimed."""
+    stages = [*transdiode(1, X1), *transdiode(2, resistor("R2", "10 kohm", "VY", "S2"))]
+    parts = [*stages, *difference("U3", "E1", "E2", "VOUT")[:-1], amplifier("U3", "NU3", "PU3", "VOUT")]
+    assert structure_of(parts).junction_loops == ()

@@ -200,7 +200,7 @@ def test_nets_of_pins_come_after_those_with_a_table() -> None:
 
 def test_inputs_are_nets_and_photodiodes() -> None:
     """Each has its range; it is spaced logarithmically from a factor of 10 between ends of one sign on."""
-    diode = 'kind = "photodiode"\nphotocurrent = ["0 A", "1 mA"]\nsurvives = ["0 A", "5 mA"]\npins = { A = "VOUT", K = "GND" }'
+    diode = 'kind = "photodiode"\nphotocurrent = ["0 A", "1 mA"]\nsurvives = ["0 A", "5 mA"]\npins = {}'
     inputs = design(part(diode, "PD1")).inputs
     assert list(inputs) == ["VIN", "IIN", "PD1"]
     assert [i.kind for i in inputs.values()] == ["voltage", "current", "photodiode"]

@@ -1,0 +1,1 @@
+"""The shape of the project, checked like its behaviour."""
