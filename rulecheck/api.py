@@ -33,24 +33,29 @@ from rulecheck.units import Unit as _Unit
 
 if TYPE_CHECKING:
     from rulecheck.analysis.conditions import Conditions
+    from rulecheck.analysis.effects import (
+        Disturbance,
+        SupplyEffect,
+        bias_limit,
+        conformity_cost,
+        disturbance,
+        junction_offset,
+        supply_effect,
+        worst_cost,
+    )
     from rulecheck.analysis.loops import IslandLoops, Loops
     from rulecheck.analysis.operating_points import OperatingPoints, Worst
     from rulecheck.analysis.queries import (
         Carrier,
-        Disturbance,
         at_typical,
-        bias_limit,
         carriers,
-        conformity_cost,
-        disturbance,
         forward_current,
         forward_voltage,
         in_use,
-        junction_offset,
+        is_regulated,
         partner_of,
         points_in_use,
         potentiometers,
-        worst_cost,
     )
     from rulecheck.analysis.review import Cost, Review
     from rulecheck.analysis.transfer import Transfer
@@ -75,10 +80,27 @@ _LAZY = {
         "rulecheck.analysis.conditions": ("Conditions",),
         "rulecheck.analysis.operating_points": ("OperatingPoints", "Worst"),
         "rulecheck.analysis.loops": ("IslandLoops", "Loops"),
+        "rulecheck.analysis.effects": (
+            "Disturbance",
+            "SupplyEffect",
+            "bias_limit",
+            "conformity_cost",
+            "disturbance",
+            "junction_offset",
+            "supply_effect",
+            "worst_cost",
+        ),
         "rulecheck.analysis.queries": (
-            "Carrier", "Disturbance", "at_typical", "bias_limit", "carriers", "conformity_cost",
-            "disturbance", "forward_current", "forward_voltage", "in_use", "junction_offset", "partner_of",
-            "points_in_use", "potentiometers", "worst_cost",
+            "Carrier",
+            "at_typical",
+            "carriers",
+            "forward_current",
+            "forward_voltage",
+            "in_use",
+            "is_regulated",
+            "partner_of",
+            "points_in_use",
+            "potentiometers",
         ),
         "rulecheck.analysis.review": ("Cost", "Review"),
         "rulecheck.analysis.transfer": ("Transfer",),
@@ -142,6 +164,7 @@ __all__ = [
     "Spread",
     "Structure",
     "SummingNode",
+    "SupplyEffect",
     "Transfer",
     "Unit",
     "Worst",
@@ -158,6 +181,7 @@ __all__ = [
     "forward_voltage",
     "in_series",
     "in_use",
+    "is_regulated",
     "islands",
     "join_key",
     "junction_offset",
@@ -169,6 +193,7 @@ __all__ = [
     "series_for_tolerance",
     "series_values",
     "split_key",
+    "supply_effect",
     "thermal_voltage",
     "worst_cost",
 ]

@@ -3,13 +3,13 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from typing import Any
 
-from rulecheck.api import Part, Remedy, Review, Set, format_quantity, join_key
+from rulecheck.api import Net, Part, Remedy, Review, Set, format_quantity, join_key
 
 from ._edits import quantity, set_parameter
-from ._rails import SUPPLY_PINS, Rails, SupplyPin
+from ._rails import SUPPLY_PINS, Rails
 
 MOST_MODELS = 2
 USUAL_SUPPLIES = (2.5, 3.0, 3.3, 5.0, 6.0, 9.0, 10.0, 12.0, 15.0, 18.0, 20.0, 24.0, 28.0, 30.0, 36.0, 48.0)
@@ -83,38 +83,61 @@ def _size(spread: Any) -> float:  # noqa: ANN401  # a spread or nothing
     return 0.0 if spread is None else max(abs(spread.min), abs(spread.max))
 
 
-def higher_supply(review: Review, ref: str, pin: SupplyPin, missing: float) -> list[Remedy]:
-    """Remedy that makes a supply greater by at least `missing` volts, where all amplifiers on it stand that.
+def higher_supplies(review: Review, ref: str, missing: Mapping[str, float]) -> list[Remedy]:
+    """Remedy that makes supplies of an amplifier greater, where all amplifiers on them stand that.
 
     Parameters
     ----------
     review : Review
-    ref, pin : str
-        Amplifier and supply pin concerned.
-    missing : float
-        Volts missing at the worst condition.
+    ref : str
+        Amplifier.
+    missing : mapping of supply pin to float
+        Volts missing at the worst condition, for ``V+`` and ``V-``; nothing is missing where not positive.
     """
-    rails = Rails(review.design)
-    feed = rails.feed(review.design.parts[ref], pin)
-    net = review.design.nets.get(feed.source) if feed else None
-    if net is None or net.role != "supply" or net.voltage is None or not net.voltage.typ:
-        return []
+    rails, edits, words = Rails(review.design), [], []
+    added = dict.fromkeys(review.design.nets, 0.0)
+    for pin in SUPPLY_PINS:
+        if missing.get(pin, 0.0) <= 0:
+            continue
+        feed = rails.feed(review.design.parts[ref], pin)
+        net = review.design.nets.get(feed.source) if feed else None
+        volts = _usual_beyond(net, missing[pin]) if net is not None else None
+        if net is None or volts is None:
+            return []
+        edits.append(Set(join_key(("nets", net.name, "voltage")), _scaled_voltage(review, net, volts)))
+        words.append(f"{net.name} {format_quantity(volts, 'V')}")
+        added[net.name] = _largest(net) * (volts / _typ(net) - 1)
+    for other, part in review.design.parts.items():
+        if part.kind == "op-amp" and part.supply is not None:
+            more = sum(added[source] for source in _sources(rails, part))
+            if more and total_supply(review, other)[1] + more > part.supply.max:
+                return []
+    return [Remedy(f"make {' and '.join(words)}", edits)] if edits else []
+
+
+def _typ(net: Net) -> float:
+    return net.voltage.typ if net.voltage is not None else 0.0
+
+
+def _largest(net: Net) -> float:
+    return max(abs(net.voltage.min), abs(net.voltage.max)) if net.voltage is not None else 0.0
+
+
+def _usual_beyond(net: Net, missing: float) -> float | None:
+    """The next usual voltage of a supply that is greater by so much at the low end of its tolerance too."""
+    if net.role != "supply" or net.voltage is None or not net.voltage.typ:
+        return None
     typ, weakest = abs(net.voltage.typ), min(abs(net.voltage.min), abs(net.voltage.max))
     usual = next((u for u in USUAL_SUPPLIES if u > typ and (u - typ) * weakest / typ >= missing), None)
-    if usual is None:
-        return []
-    scale = usual / typ
-    more = (scale - 1) * max(abs(net.voltage.min), abs(net.voltage.max))
-    parts = review.design.parts.items()
-    on_it = [(r, p) for r, p in parts if p.kind == "op-amp" and net.name in _sources(rails, p)]
-    if any(p.supply is not None and total_supply(review, r)[1] + more > p.supply.max for r, p in on_it):
-        return []
+    return None if usual is None else usual * (1 if net.voltage.typ > 0 else -1)
+
+
+def _scaled_voltage(review: Review, net: Net, volts: float) -> object:
+    """The voltage as the file has it, its limits in proportion."""
     written = review.design.data["nets"][net.name]["voltage"]
-    to: object = quantity(scale * net.voltage.typ, "V")
-    if isinstance(written, dict):
-        to = {end: quantity(scale * getattr(net.voltage, end), "V") for end in written}
-    title = f"make {net.name} {format_quantity(scale * net.voltage.typ, 'V')}"
-    return [Remedy(title, [Set(join_key(("nets", net.name, "voltage")), to)])]
+    if not isinstance(written, dict):
+        return quantity(volts, "V")
+    return {end: quantity(getattr(net.voltage, end) * volts / _typ(net), "V") for end in written}
 
 
 def _sources(rails: Rails, part: Part) -> list[str]:

@@ -7,7 +7,19 @@ from typing import Literal
 
 import networkx as nx
 
-from rulecheck.api import Add, Design, Edit, Evidence, JunctionLoop, Part, Review, Set, format_quantity, join_key
+from rulecheck.api import (
+    Add,
+    Design,
+    Edit,
+    Evidence,
+    JunctionLoop,
+    Part,
+    Remove,
+    Review,
+    Set,
+    format_quantity,
+    join_key,
+)
 
 Pair = tuple[str, str]
 Fault = Literal["polarity", "models", "packages", "unmatched", "unknown"]
@@ -68,20 +80,39 @@ def is_together(design: Design, pair: Pair) -> bool:
 
 
 def is_linked(design: Design, pair: Pair) -> bool:
-    """Whether thermal links join the packages of two parts, over others too."""
-    links = nx.Graph([link.between for link in design.thermal_links])
-    one, other = (design.parts[ref].package for ref in pair)
+    """Whether thermal links join the packages of two parts."""
+    return are_linked(design, (design.parts[pair[0]].package, design.parts[pair[1]].package))
+
+
+def are_linked(design: Design, packages: Pair) -> bool:
+    """Whether thermal links join two packages, over others too."""
+    links = nx.Graph([entry.between for entry in design.thermal_links])
+    one, other = packages
     return one in links and other in links and bool(nx.has_path(links, one, other))
 
 
 def one_package(design: Design, pair: Pair) -> list[Edit]:
-    """Edits that bring two parts into one package, the fuller one, or a new one of neither has another part."""
+    """Edits that bring two parts into one package, the fuller one, or a new one if neither has other parts."""
     packages = [design.packages[design.parts[ref].package] for ref in pair]
     if packages[0] is packages[1]:
         return []
     home = max(packages, key=lambda package: (package.name not in design.parts, len(package.parts)))
     name = home.name if home.name not in design.parts else free_name(design.packages, "M")
-    return [Set(join_key(("parts", ref, "package")), name) for ref in pair if design.parts[ref].package != name]
+    moved = [ref for ref in pair if design.parts[ref].package != name]
+    edits: list[Edit] = [Set(join_key(("parts", ref, "package")), name) for ref in moved]
+    return edits + _moved_links(design, {p.name for p in packages if len(p.parts) == 1} - {name}, name)
+
+
+def _moved_links(design: Design, emptied: set[str], home: str) -> list[Edit]:
+    """Edits that lead thermal links of emptied packages to the one their parts are in now."""
+    edits: list[Edit] = []
+    for index, entry in reversed(list(enumerate(design.thermal_links))):
+        ends = [home if package in emptied else package for package in entry.between]
+        if ends[0] == ends[1]:
+            edits.append(Remove(join_key(("thermal_links", str(index)))))
+        elif ends != list(entry.between):
+            edits.append(Set(join_key(("thermal_links", str(index), "between")), ends))
+    return edits
 
 
 def link(packages: Iterable[str]) -> Add:

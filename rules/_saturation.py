@@ -9,7 +9,7 @@ import networkx as nx
 import numpy as np
 import numpy.typing as npt
 
-from rulecheck.api import OperatingPoints, Part, Review
+from rulecheck.api import OperatingPoints, Part, Requirement, Review
 
 Mask = npt.NDArray[np.bool_]
 Floats = npt.NDArray[np.floating[Any]]
@@ -162,9 +162,16 @@ def asked_for(review: Review, flow: SignalFlow, amplifier: str) -> Mask:
     """
     moved = flow.nets(amplifier)
     laws = [r for r in review.design.requirements.values() if r.law is not None]
-    own = [r for r in laws if r.output in moved]
-    ranges = [r.range for r in own or laws] or [{}]
-    mask: Mask = np.any([_inside(review, r) for r in ranges], axis=0)
+    return _asked_by(review, [r for r in laws if r.output in moved] or laws)
+
+
+def asked_everywhere(review: Review) -> Mask:
+    """Conditions at which any output is asked for."""
+    return _asked_by(review, [r for r in review.design.requirements.values() if r.law is not None])
+
+
+def _asked_by(review: Review, laws: list[Requirement]) -> Mask:
+    mask: Mask = np.any([_inside(review, ranges) for ranges in [r.range for r in laws] or [{}]], axis=0)
     return mask & review.operating_points.converged
 
 

@@ -20,7 +20,7 @@ from rulecheck.api import (
 )
 
 from ._edits import quantity, set_parameter
-from ._models import higher_supply, in_packages_of, other_models
+from ._models import higher_supplies, in_packages_of, other_models
 from ._saturation import Floats, Mask, is_at_limit
 
 BOUNDLESS = 1000.0
@@ -93,19 +93,18 @@ def swing_remedies(review: Review, demand: Demand, amplifier: str, margin: Float
     """
     headroom = review.design.parts[amplifier].output_headroom
     below, above = _distances(review, demand, amplifier, margin, judged)
-    short = np.fmax(headroom.low.max - below, headroom.high.max - above)
-    if not np.isfinite(short).any() or np.nanmax(short) > BOUNDLESS / 2:
+    short = {"V-": headroom.low.max - below, "V+": headroom.high.max - above}
+    either = np.fmax(*short.values())
+    if not np.isfinite(either).any() or np.nanmax(either) > BOUNDLESS / 2:
         return [Remedy("no swing would do: look at the gain, and at the sign of the currents into its summing node")]
-    worst = review.operating_points.worst(short)
-    upper = bool(headroom.high.max - above[worst.index] == worst.value)
     together = [_distances(review, demand, a, margin, judged) for a in in_packages_of(review, [amplifier])]
 
     def fits(model: Any) -> bool:  # noqa: ANN401  # an amplifier's parameters
         ends = (model.output_headroom.low.max, model.output_headroom.high.max)
         return all(end <= np.nanmin(room) for rooms in together for end, room in zip(ends, rooms, strict=True))
 
-    remedies = list(_resistors(review, demand, amplifier, worst))
-    remedies += higher_supply(review, amplifier, "V+" if upper else "V-", worst.value)
+    remedies = list(_resistors(review, demand, amplifier, review.operating_points.worst(either)))
+    remedies += higher_supplies(review, amplifier, {pin: float(np.nanmax(volts)) for pin, volts in short.items()})
     remedies += other_models(review, [amplifier], fits, ("output_headroom",), "its output comes nearer to the rails")
     return remedies or [Remedy("split the gain between this stage and the next, or narrow the range")]
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable
 
 from rulecheck.api import Design, Finding, Part, Remedy, Review, Rule, Severity, join_key
 
@@ -54,16 +54,15 @@ class BareAssumption(Rule):
         """Gather what is left out by model, or by kind of part where there is none."""
         design = review.design
         wanted = _wanted(design)
-        left_out: dict[tuple[str, str], dict[str, set[str]]] = {}
-        users: dict[tuple[str, str], list[str]] = {}
+        left_out: dict[tuple[str, str], dict[str, list[str]]] = {}
         for ref, part in design.parts.items():
-            keys = [key for key in wanted.get(_kind(part), {}) if not _is_stated(design, part, key)]
-            if keys:
-                of = ("model", part.model) if part.model is not None else ("kind", part.kind)
-                left_out.setdefault(of, {}).update({key: wanted[_kind(part)][key] for key in keys})
-                users.setdefault(of, []).append(ref)
-        for of, keys_of in left_out.items():
-            yield _finding(of, keys_of, users[of])
+            of = ("model", part.model) if part.model is not None else ("kind", part.kind)
+            for key in wanted.get(_kind(part), ()):
+                if not _is_stated(design, part, key):
+                    left_out.setdefault(of, {}).setdefault(key, []).append(ref)
+        for (what, name), keys in left_out.items():
+            kind = _kind(design.parts[next(iter(keys.values()))[0]])
+            yield _finding(what, name, keys, wanted[kind])
 
 
 def _kind(part: Part) -> str:
@@ -101,24 +100,21 @@ def _is_stated(design: Design, part: Part, key: str) -> bool:
     return key == "input_current" and part.input_clamps == "none"
 
 
-def _finding(of: tuple[str, str], keys: dict[str, set[str]], refs: list[str]) -> Finding:
-    what, name = of
-    rules = sorted(set.union(*keys.values()))
+def _finding(what: str, name: str, left_out: dict[str, list[str]], wanted: dict[str, set[str]]) -> Finding:
+    refs = list(dict.fromkeys(ref for users in left_out.values() for ref in users))
+    rules = sorted(set.union(*(wanted[key] for key in left_out)))
+    keys = left_out if what == "model" else [f"{key} of {_listed(users)}" for key, users in left_out.items()]
+    who = f"model {name}" if what == "model" else name
+    where = f"[models.{name}]" if what == "model" else f"each {name}"
     return Finding(
-        f"{f'model {name}' if what == 'model' else _listed(name, refs)}: {', '.join(keys)} not stated", parts=refs,
-        subject=f"{what} {name}", at=join_key(("parts", refs[0], "model") if what == "model" else ("parts", refs[0])),
+        f"{who}: {', '.join(keys)} not stated", parts=refs, subject=f"{what} {name}",
+        at=join_key(("parts", refs[0], "model") if what == "model" else ("parts", refs[0])),
         consequence=f"the verdicts of {', '.join(rules)} rest on an assumption",
-        remedies=[Remedy(words) for words in _remedies(what, name, keys)],
+        remedies=[Remedy(f"state {key} in {where}, for {', '.join(sorted(wanted[key]))}") for key in left_out],
     )  # fmt: skip
 
 
-def _listed(kind: str, refs: list[str]) -> str:
-    """Parts of a kind, the first few by name."""
+def _listed(refs: list[str]) -> str:
+    """References, the first few by name."""
     more = f" and {len(refs) - MOST_NAMED} more" if len(refs) > MOST_NAMED else ""
-    return f"{kind} {', '.join(refs[:MOST_NAMED])}{more}"
-
-
-def _remedies(what: str, name: str, keys: dict[str, set[str]]) -> Iterator[str]:
-    where = f"[models.{name}]" if what == "model" else f"each {name}"
-    for key, rules in keys.items():
-        yield f"state {key} in {where}, for {', '.join(sorted(rules))}"
+    return f"{', '.join(refs[:MOST_NAMED])}{more}"

@@ -21,7 +21,7 @@ REQUIRED = {
     "diode": ("A", "K"), "photodiode": ("A", "K"), "potentiometer": ("END1", "WIPER", "END2"),
     "voltage-source": ("P", "N"), "current-source": ("P", "N"),
 }  # fmt: skip
-LOOK_ALIKE = str.maketrans("01 -", "ol__")
+LOOK_ALIKE = str.maketrans("01i -", "oll__")
 """Characters taken for each other in names, lower case."""
 SLIP = 0.85
 """Likeness of two names above which one is taken for a slip of the other: one letter too many or few in four."""
@@ -189,8 +189,8 @@ class _Nets:
     def source_loops(self) -> Iterator[Finding]:
         for parts, nets in source_loops(self.design):
             yield Finding(
-                f"{', '.join(parts)} close a loop of ideal voltage sources over {', '.join(nets)}", parts=parts,
-                nets=nets, subject="source loop", consequence="nothing limits the current in the loop",
+                f"a loop of ideal voltage sources closes through {', '.join(parts)} over {', '.join(nets)}",
+                parts=parts, nets=nets, subject="source loop", consequence="nothing limits the current in the loop",
                 remedies=[Remedy("take one of them out of the loop, or give it a series resistance")],
             )  # fmt: skip
 

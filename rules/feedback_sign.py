@@ -41,8 +41,8 @@ class FeedbackSign(Rule):
         """Judge every amplifier that is in use."""
         words = {ref: _feedback(review, ref, settings.least_return_ratio) for ref in powered(review.design)}
         positive = [ref for ref, word in words.items() if word == "positive"]
-        for ref in _causes(review, positive, settings.least_return_ratio):
-            yield _positive(review, ref, [other for other in positive if other != ref])
+        for ref, others in _causes(review, positive, settings.least_return_ratio).items():
+            yield _positive(review, ref, others)
         for ref, word in words.items():
             if word == "absent":
                 yield _absent(review, ref)
@@ -66,19 +66,24 @@ def _feedback(review: Review, ref: str, least: float) -> str:
     return "negative" if np.nanmax(ratio) >= least else "absent"
 
 
-def _causes(review: Review, positive: list[str], least: float) -> list[str]:
-    """Amplifiers to turn round so that all are right, the one that sets most right first."""
+def _causes(review: Review, positive: list[str], least: float) -> dict[str, list[str]]:
+    """Amplifiers to turn round so that all are right, with the others that each sets right.
+
+    Where turning round any one of several does, the one that leaves the calmest circuit is the cause.
+    """
     if len(positive) < 2:
-        return positive
+        return {ref: [] for ref in positive}
     cured: dict[str, set[str]] = {}
+    calm: dict[str, float] = {}
     for ref in positive:
         turned = review.edited(swap_pins(review.design, ref, "IN+", "IN-"))
         cured[ref] = {other for other in positive if _feedback(turned, other, least) != "positive"}
-    left, causes = set(positive), []
+        calm[ref] = -float(np.nanmax(turned.loops.rightmost, initial=-np.inf))
+    left, causes = list(positive), {}
     while left:
-        best = max((ref for ref in positive if ref in left), key=lambda ref: len(cured[ref] & left))
-        causes.append(best)
-        left -= cured[best] | {best}
+        best = max(left, key=lambda ref: (len(cured[ref].intersection(left)), calm[ref]))
+        causes[best] = [ref for ref in left if ref in cured[best] and ref != best]
+        left = [ref for ref in left if ref not in cured[best] and ref != best]
     return causes
 
 
@@ -92,7 +97,7 @@ def _positive(review: Review, ref: str, others: list[str]) -> Finding:
             consequence=consequence, remedies=remedies,
         )  # fmt: skip
     worst = review.operating_points.least(ratio)
-    too = f"; so it is around {', '.join(others)}" if others else ""
+    too = f"; with it around {', '.join(others)}" if others else ""
     return Finding(
         f"{ref}: feedback at DC is positive, return ratio {worst.value:.3g}{too}", parts=[ref],
         conditions=worst.conditions, consequence=consequence, remedies=remedies,

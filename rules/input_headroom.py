@@ -29,8 +29,7 @@ from rulecheck.api import (
 )
 
 from ._edits import quantity
-from ._models import higher_supply, in_packages_of, other_models
-from ._rails import SupplyPin
+from ._models import higher_supplies, in_packages_of, other_models
 from ._saturation import SignalFlow
 
 LEVEL_STEP = 0.1
@@ -153,7 +152,7 @@ def _distance(volts: float, rail: str) -> str:
 def _remedies(
     review: Review, settings: InputHeadroom.Settings, amplifiers: list[str], rooms: dict[str, list[_Room]], worst: _Room
 ) -> list[Remedy]:
-    rail: SupplyPin = "V-" if worst.side == "low" else "V+"
+    rail = "V-" if worst.side == "low" else "V+"
     together = [room for a in in_packages_of(review, amplifiers) for room in rooms[a]]
 
     def fits(model: Any) -> bool:  # noqa: ANN401  # an amplifier's parameters
@@ -164,7 +163,7 @@ def _remedies(
         )
 
     found = _other_level(review, settings, worst)
-    found += higher_supply(review, worst.amplifier, rail, worst.missing(settings.margin))
+    found += higher_supplies(review, worst.amplifier, {rail: worst.missing(settings.margin)})
     why = f"its inputs may stand {_distance(worst.distance, rail)}"
     found += other_models(review, amplifiers, fits, ("input_headroom",), why)
     return found or [Remedy("keep the input inside the range: divide the signal before it, or shift its level")]
@@ -178,6 +177,6 @@ def _other_level(review: Review, settings: InputHeadroom.Settings, worst: _Room)
         return []
     voltage = review.design.nets[net].voltage
     assert voltage is not None
-    shift = LEVEL_STEP * math.ceil(worst.missing(settings.margin) / LEVEL_STEP)
+    shift = LEVEL_STEP * math.ceil((worst.missing(settings.margin) - SLACK) / LEVEL_STEP)
     to = quantity(voltage.typ + (shift if worst.side == "low" else -shift), "V")
     return [Remedy(f"make {net} {to}", [Set(join_key(("nets", net, "voltage")), to)])]

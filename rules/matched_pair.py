@@ -13,8 +13,24 @@ from typing import Any
 import numpy as np
 
 from rulecheck.api import (
-    Add, BaseModel, Cost, Design, Edit, Evidence, Finding, Model, Remedy, Remove, Review, Rule, Set, Severity,
-    format_quantity, join_key, junction_offset, worst_cost,
+    Add,
+    BaseModel,
+    Cost,
+    Design,
+    Edit,
+    Evidence,
+    Finding,
+    Model,
+    Remedy,
+    Remove,
+    Review,
+    Rule,
+    Set,
+    Severity,
+    format_quantity,
+    join_key,
+    junction_offset,
+    worst_cost,
 )  # fmt: skip
 
 from ._pairs import Pair, chosen_pairs, cost_evidence, cost_words, fault_of, group_of, link, mismatch_key, one_package
@@ -82,7 +98,7 @@ def _members(design: Design, pair: Pair) -> Iterator[_Member]:
 
 def _unknown(review: Review, pair: Pair) -> Finding:
     part, group = review.design.parts[pair[1]], group_of(review.design, pair)
-    key = ("matching", group, "vbe_mismatch") if group else ("parts", part.ref, part.model and "model" or "kind")
+    key = ("matching", group, "vbe_mismatch") if group else ("parts", part.ref, (part.model and "model") or "kind")
     where = f"group {group}" if group else f"model {part.model}"
     return Finding(
         f"{pair[0]} and {pair[1]}: no vbe_mismatch is known, so what it costs cannot be judged",

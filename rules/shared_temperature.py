@@ -5,6 +5,7 @@ A base-emitter voltage falls by about 2 mV/K: 1 K between two junctions is 8 % o
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Iterable, Iterator, Sequence
 from typing import Annotated
 
@@ -12,15 +13,27 @@ import numpy as np
 import numpy.typing as npt
 
 from rulecheck.api import (
-    BaseModel, Cost, Edit, Evidence, Finding, Remedy, Review, Rule, Set, Severity, Unit, format_quantity, join_key,
+    BaseModel,
+    Cost,
+    Edit,
+    Evidence,
+    Finding,
+    Remedy,
+    Review,
+    Rule,
+    Set,
+    Severity,
+    Unit,
+    format_quantity,
+    join_key,
     worst_cost,
 )  # fmt: skip
 
-from ._pairs import Pair, chosen_pairs, cost_evidence, cost_words, is_linked, is_together, link, one_package
+from ._pairs import Pair, are_linked, chosen_pairs, cost_evidence, cost_words, is_linked, is_together, link, one_package
 
 Array = npt.NDArray[np.float64]
 LEAST_DIFFERENCE = 2e-3  # K: what the temperatures themselves are solved to
-CLOSER_LINK = 5.0
+CLOSER = 2.0  # a link than what the excess asks, as other heat paths go round it
 
 
 class SharedTemperature(Rule):
@@ -135,23 +148,24 @@ def _difference(
         consequence=_consequence(review, cost, ""),
         evidence=[Evidence(subject, abs(float(apart[at])), "K", over=np.abs(apart)),
                   cost_evidence(cost.worst.value, cost.ratio, "typ")],
-        remedies=_closer(review, refs),
+        remedies=_closer(review, refs, cost.worst.value),
     )  # fmt: skip
 
 
-def _closer(review: Review, refs: Sequence[str]) -> list[Remedy]:
-    """A common die, a tighter thermal link, or a first one."""
+def _closer(review: Review, refs: Sequence[str], excess: float) -> list[Remedy]:
+    """A common die; thermal links where there are none; closer ones where they are too loose."""
     design = review.design
     packages = list(dict.fromkeys(design.parts[ref].package for ref in refs))
     if len(packages) == 1:
         title = f"use one with all of {packages[0]} on a single die"
         return [Remedy(title, [Set(join_key(("packages", packages[0], "die")), "single")])]
-    tighter: list[Edit] = [Set(join_key(("thermal_links", str(i), "theta")),
-                               format_quantity(link.theta / CLOSER_LINK, "K/W", 3))
-                           for i, link in enumerate(design.thermal_links) if set(link.between) <= set(packages)]  # fmt: skip
-    if tighter:
-        return [Remedy(f"couple {_listed(packages)} {CLOSER_LINK:g} times more closely", tighter)]
-    return [Remedy(f"couple {_listed(packages)} thermally", [link(p) for p in zip(packages, packages[1:], strict=False)])]
+    missing = [ends for ends in itertools.pairwise(packages) if not are_linked(design, ends)]
+    if missing:
+        return [Remedy(f"couple {_listed(packages)} thermally", [link(ends) for ends in missing])]
+    thetas = {i: entry.theta for i, entry in enumerate(design.thermal_links) if set(entry.between) <= set(packages)}
+    closer = {i: format_quantity(theta / (CLOSER * excess), "K/W", 2) for i, theta in thetas.items()}
+    edits = [Set(join_key(("thermal_links", str(i), "theta")), theta) for i, theta in closer.items()]
+    return [Remedy(f"couple {_listed(packages)} more closely, {', '.join(closer.values())}", edits)]
 
 
 def _temperatures(review: Review, refs: Iterable[str]) -> dict[str, Array]:

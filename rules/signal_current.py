@@ -3,23 +3,37 @@
 from __future__ import annotations
 
 import itertools
-import math
 from collections.abc import Iterable, Iterator, Sequence
 
 import numpy as np
 import numpy.typing as npt
 
 from rulecheck.api import (
-    BaseModel, Carrier, Cost, Evidence, Finding, OperatingPoints, Remedy, Review, Rule, Severity, carriers,
-    conformity_cost, disturbance, format_quantity, forward_current, forward_voltage, points_in_use,
-)  # fmt: skip
+    BaseModel,
+    Carrier,
+    Cost,
+    Disturbance,
+    Evidence,
+    Finding,
+    OperatingPoints,
+    Remedy,
+    Review,
+    Rule,
+    Severity,
+    carriers,
+    disturbance,
+    format_quantity,
+    forward_current,
+    forward_voltage,
+    is_regulated,
+    points_in_use,
+)
 
-from ._currents import better_amplifiers, narrowed, outside, scaled, source_magnitude
-from ._pairs import cost_evidence, cost_words
+from ._carried import MARGIN, conformity, middle_of, outside_log_range, working_current
+from ._currents import better_amplifiers, input_magnitude, narrowed, offset_limit, scaled
 
 Array = npt.NDArray[np.float64]
-MARGIN = 1.1
-SLACK_DECADES = 0.005  # 1 %: a range is not known more closely
+Mask = npt.NDArray[np.bool_]
 RATINGS = ("collector_current", "forward_current")
 
 
@@ -46,211 +60,185 @@ class SignalCurrent(Rule):
         decades_outside: float = 1.0
 
     def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
-        """Judge log junctions by summing node, then the conformity and range of all that carry a signal."""
+        """Judge log junctions by summing node, then the logarithm of all junctions that carry a signal."""
         signals = [c for c in carriers(review) if not c.is_fixed]
-        logs = sorted((c for c in signals if c.is_log), key=lambda c: (c.node, c.amplifier or ""))
+        logs = sorted((c for c in signals if c.is_log), key=lambda c: c.node)
         points = points_in_use(review)
         reversed_nodes: set[str] = set()
         for node, group in itertools.groupby(logs, key=lambda c: c.node):
             together = list(group)
-            finding = _sign(review, points, together)
-            if finding is not None:
-                reversed_nodes.add(node)
-                yield finding
-                continue
-            yield from _floor(review, settings, together)
+            found = list(_sign(review, settings, points, together))
+            reversed_nodes.update(node for _ in found)
+            yield from found or _floor(review, settings, together)
             yield from _rating(review, together)
-        for carrier in signals:
-            if carrier.node not in reversed_nodes:
-                yield from _conformity(review, settings, carrier)
-                yield from _range(review, settings, points, carrier)
+        for carrier in (c for c in signals if c.node not in reversed_nodes):
+            yield from _logarithm(review, settings, points, carrier)
 
 
 def _carried(points: OperatingPoints, group: Sequence[Carrier]) -> Array:
     """Forward current of the junction of a node that conducts: those of two polarities take turns."""
-    currents = [np.where(forward_voltage(points, c.part) > 0, forward_current(points, c.part), np.minimum(
-        forward_current(points, c.part), 0.0)) for c in group]  # fmt: skip
-    return np.max(currents, axis=0)
+    currents = [forward_current(points, c.part) for c in group]
+    on = [forward_voltage(points, c.part) > 0 for c in group]
+    found: Array = np.max([np.where(f, i, np.minimum(i, 0.0)) for f, i in zip(on, currents, strict=True)], axis=0)
+    return found
 
 
-def _sign(review: Review, points: OperatingPoints, group: Sequence[Carrier]) -> Finding | None:
-    first = group[0]
+def _sign(
+    review: Review, settings: SignalCurrent.Settings, points: OperatingPoints, group: Sequence[Carrier]
+) -> Iterator[Finding]:
+    first, parts = group[0], [c.part for c in group]
     current = _carried(points, group)
-    nothing = [points.conditions.values[name] == 0 for name in first.sources.inputs]
-    bad = (current <= 0) | np.logical_and.reduce(nothing)
-    if not bad[np.isfinite(current)].any():
-        return None
+    is_open = points.linear(first.amplifier or "") | _is_pulled_open(review, points, first)
+    zero = np.logical_and.reduce([points.conditions.values[name] == 0 for name in first.sources.inputs])
+    bad = ((current <= 0) & is_open) | (zero & np.isfinite(current))
+    if not bad.any():
+        return
     worst = points.least(np.where(bad, current, np.nan))
-    zero = bool(np.logical_and.reduce(nothing)[worst.index])
-    parts = [c.part for c in group]
-    words = "zero" if zero else "of the wrong sign for it"
-    good = ~bad & np.isfinite(current)
-    return Finding(
-        f"the signal current of {', '.join(parts)} is {words} at a point of the range where the law is asked",
-        parts=parts, nets=[first.node], subject="sign", severity=Severity.MAJOR, conditions=worst.conditions,
+    words = "zero" if zero[worst.index] else "of the wrong sign for it"
+    yield Finding(
+        f"the signal current of {', '.join(parts)} is {words} in the range in which the law is asked",
+        parts=parts,
+        nets=[first.node],
+        subject="sign",
+        severity=Severity.MAJOR,
+        conditions=worst.conditions,
         consequence=f"{first.amplifier} loses its feedback there and runs to its limit; a logarithm has no value",
         evidence=[Evidence("signal current", worst.value, "A", 0.0, ">")],
-        remedies=list(_positive(review, points, group, good)),
-    )  # fmt: skip
+        remedies=list(_positive(review, settings, points, group, ~bad & np.isfinite(current))),
+    )
 
 
-def _positive(review: Review, points: OperatingPoints, group: Sequence[Carrier], good: npt.NDArray[np.bool_]
-              ) -> Iterator[Remedy]:  # fmt: skip
-    """Narrow the range to where the current is large enough; of the wrong sign throughout, turn something round."""
-    first, inputs = group[0], source_magnitude(points, group[0])
+def _is_pulled_open(review: Review, points: OperatingPoints, carrier: Carrier) -> Mask:
+    """Where the node is off its level to the side at which the junction takes no current.
+
+    On the other side it is the amplifier that cannot drive the junction as far as the current asks.
+    """
+    part, level = review.design.parts[carrier.part], review.structure.level_of(carrier.node)
+    away = points.voltage(carrier.node) - points.voltage(level or carrier.node)
+    leaves = part.pins["E" if part.kind != "diode" else "K"] != carrier.node
+    found: Mask = away * (1 if leaves == (part.kind != "pnp") else -1) < 0
+    return found
+
+
+def _positive(
+    review: Review,
+    settings: SignalCurrent.Settings,
+    points: OperatingPoints,
+    group: Sequence[Carrier],
+    good: Mask,
+) -> Iterator[Remedy]:
+    """Narrow the range to where the current is large enough; where it is nowhere, turn something round."""
+    first, inputs = group[0], input_magnitude(points, group[0])
     if inputs is None or not good.any():
         kind = review.design.parts[first.part].kind
-        yield Remedy(f"turn the signal round, or use a transistor of the other kind than {kind}")
+        yield Remedy(f"turn the signal round, or log it with a junction of the other kind than {kind}")
         return
-    least = float(inputs[good].min())
     found = disturbance(review, first)
-    level, errors = _carried(found.points, group), found.bias + found.offset + found.leakage
-    x = np.abs(found.points.conditions.values[first.sources.inputs[0]])
-    with np.errstate(all="ignore"):
-        needed = x * 20.0 * MARGIN * errors / level
-    usable = needed[(level > 0) & (x > 0)]
-    floor = float(np.nanmax(usable)) if usable.size else least
-    yield from narrowed(review, first, least=min(floor, least) if floor > 0 else least)
+    ratio = _over_errors(review, found, group)
+    x = input_magnitude(found.points, first)
+    usable = (ratio > 0) & (np.asarray(x) > 0)
+    needed = settings.over_errors * MARGIN * np.asarray(x)[usable] / ratio[usable]
+    least = float(inputs[good].min())
+    yield from narrowed(review, first, least=min(least, float(needed.max())) if needed.size else least)
+
+
+def _over_errors(review: Review, found: Disturbance, group: Sequence[Carrier]) -> Array:
+    """Signal current over all that disturbs it, NaN where an amplifier is at a limit or nothing disturbs."""
+    errors = found.bias + found.offset + found.leakage
+    judged = is_regulated(review, found.points, group[0].node) & (errors > 0)
+    return np.where(judged, _carried(found.points, group) / np.where(judged, errors, 1.0), np.nan)
 
 
 def _floor(review: Review, settings: SignalCurrent.Settings, group: Sequence[Carrier]) -> Iterator[Finding]:
-    first, found = group[0], disturbance(review, group[0])
-    current, errors = _carried(found.points, group), found.bias + found.offset + found.leakage
-    with np.errstate(all="ignore"):
-        ratio = np.where(errors > 0, current / errors, np.nan)
+    first, parts, found = group[0], [c.part for c in group], disturbance(review, group[0])
+    ratio = _over_errors(review, found, group)
     if not np.isfinite(ratio).any() or np.nanmin(ratio) >= settings.over_errors:
         return
     worst = found.points.least(ratio)
     at = worst.index
-    level, bias, offset, leakage = (float(a[at]) for a in (current, found.bias, found.offset, found.leakage))
-    parts = [c.part for c in group]
+    shown = [format_quantity(float(a[at]), "A", 3) for a in (found.bias, found.offset, found.leakage)]
+    level = format_quantity(float(_carried(found.points, group)[at]), "A", 3)
     yield Finding(
-        f"the least signal current of {', '.join(parts)}, {format_quantity(level, 'A', 3)}, is {worst.value:.3g} times "
-        f"the errors at {first.node} (bias {format_quantity(bias, 'A', 3)}, offset {format_quantity(offset, 'A', 3)}, "
-        f"leakage {format_quantity(leakage, 'A', 3)} at the hottest); {settings.over_errors:g} times asked",
-        parts=parts, nets=[first.node], subject="floor", conditions=worst.conditions,
+        f"the least signal current of {', '.join(parts)}, {level}, is {worst.value:.3g} times the errors at "
+        f"{first.node} (bias {shown[0]}, offset {shown[1]}, leakage {shown[2]} at the hottest), "
+        f"{settings.over_errors:g} times asked",
+        parts=parts,
+        nets=[first.node],
+        subject="floor",
+        conditions=worst.conditions,
         consequence=f"the current logged there may be {100 / worst.value:.2g} % off",
-        evidence=[Evidence("least signal current over errors", worst.value, "1", settings.over_errors, ">=",
-                           basis="limit")],
-        remedies=list(_above_floor(review, settings, first, found.points, at, level, (bias, offset, leakage))),
-    )  # fmt: skip
+        evidence=[
+            Evidence("least signal current over errors", worst.value, "1", settings.over_errors, ">=", basis="limit")
+        ],
+        remedies=list(_above_floor(review, settings.over_errors * MARGIN, first, found, at, worst.value)),
+    )
 
 
 def _above_floor(
-    review: Review, settings: SignalCurrent.Settings, carrier: Carrier, points: OperatingPoints, at: int,
-    level: float, errors: tuple[float, float, float],
-) -> Iterator[Remedy]:  # fmt: skip
+    review: Review, wanted: float, carrier: Carrier, found: Disturbance, at: int, ratio: float
+) -> Iterator[Remedy]:
     """Smaller input resistor, where bias and leakage are the cause; better amplifier; narrower range."""
-    bias, offset, leakage = errors
-    wanted = settings.over_errors * MARGIN
-    left = level - wanted * offset  # an offset grows as the resistor shrinks
-    if left > 0 and (remedy := scaled(review, carrier, wanted * (bias + leakage) / left)):
-        yield remedy
-    budget = level / wanted - leakage
-    volts = max((_offset_volts(review, ref) for ref in review.structure.amplifiers_of(carrier.node)), default=0.0)
-    if budget > 0 and offset + bias > 0:
-        keep = budget / (bias + offset)
-        yield from better_amplifiers(review, carrier.node, bias * keep, volts * keep if offset > 0 else None)
-    inputs = source_magnitude(points, carrier)
+    bias, offset, leakage = (float(a[at]) for a in (found.bias, found.offset, found.leakage))
+    level = ratio * (bias + offset + leakage)
+    left = level - wanted * offset  # the current of an offset grows as the resistor shrinks
+    if left > 0:
+        yield from scaled(review, carrier, wanted * (bias + leakage) / left)
+    hottest = float(found.points.conditions.values["ambient"][at])
+    amplifiers = [review.design.parts[ref] for ref in review.structure.amplifiers_of(carrier.node)]
+    volts = max((offset_limit(amplifier, hottest) for amplifier in amplifiers), default=0.0)
+    yield from better_amplifiers(review, carrier.node, level / wanted - leakage, offset / volts if volts else 0.0)
+    inputs = input_magnitude(found.points, carrier)
     if inputs is not None:
-        yield from narrowed(review, carrier, least=float(inputs[at]) * wanted * sum(errors) / level)
-
-
-def _offset_volts(review: Review, ref: str) -> float:
-    """Offset limit of an amplifier at the hottest [V]."""
-    part = review.design.parts[ref]
-    limit = 0.0 if part.offset_voltage is None else part.offset_voltage.half
-    drift = 0.0 if part.offset_drift is None else part.offset_drift.half
-    hottest = float(np.nanmax(review.operating_points.temperature(ref)))
-    return float(limit + drift * abs(hottest - 298.15))
+        yield from narrowed(review, carrier, least=float(inputs[at]) * wanted / ratio)
 
 
 def _rating(review: Review, group: Sequence[Carrier]) -> Iterator[Finding]:
     points = review.operating_points
     for carrier in group:
-        part = review.design.parts[carrier.part]
-        limits = [part.parameters[name] for name in RATINGS if part.parameters.get(name) is not None]
+        parameters = review.design.parts[carrier.part].parameters
+        limit = next((float(parameters[n].max) for n in RATINGS if parameters.get(n) is not None), np.inf)
         current = np.abs(forward_current(points, carrier.part))
-        if not limits or not np.nanmax(current, initial=0.0) > limits[0].max:
+        if not np.nanmax(current, initial=0.0) > limit:
             continue
-        worst, limit = points.worst(current), float(limits[0].max)
+        worst = points.worst(current)
         yield Finding(
             f"{carrier.part} carries {format_quantity(worst.value, 'A', 3)}, rated {format_quantity(limit, 'A')}",
-            parts=[carrier.part], nets=[carrier.node], subject="rating", severity=Severity.MAJOR,
-            conditions=worst.conditions, consequence="the transistor is damaged, or leaves its matching behind",
+            parts=[carrier.part],
+            nets=[carrier.node],
+            subject="rating",
+            severity=Severity.MAJOR,
+            conditions=worst.conditions,
+            consequence="the transistor is damaged, or its matching lost",
             evidence=[Evidence("signal current", worst.value, "A", limit, "<=", over=current, basis="limit")],
-            remedies=list(_below(review, carrier, points, worst.index, limit / worst.value / MARGIN)),
-        )  # fmt: skip
+            remedies=list(_changed(review, carrier, points, worst.index, limit / worst.value / MARGIN)),
+        )
 
 
-def _below(review: Review, carrier: Carrier, points: OperatingPoints, at: int, factor: float) -> Iterator[Remedy]:
-    """Smaller currents, or a range that ends sooner."""
-    if remedy := scaled(review, carrier, factor):
-        yield remedy
-    inputs = source_magnitude(points, carrier)
+def _changed(review: Review, carrier: Carrier, points: OperatingPoints, at: int, factor: float) -> Iterator[Remedy]:
+    """Current times `factor` at a condition by its resistor; or a range that ends where it has that current."""
+    yield from scaled(review, carrier, factor)
+    inputs = input_magnitude(points, carrier)
     if inputs is not None and carrier.is_log:
-        yield from narrowed(review, carrier, most=float(inputs[at]) * factor)
+        end = float(inputs[at]) * factor
+        yield from narrowed(review, carrier, most=end) if factor < 1 else narrowed(review, carrier, least=end)
 
 
-def _conformity(review: Review, settings: SignalCurrent.Settings, carrier: Carrier) -> Iterator[Finding]:
-    cost = conformity_cost(review, carrier.part)
-    if cost is None or cost.worst.value <= settings.shares:
-        return
-    points, at = review.operating_points, cost.worst.index
-    current = forward_current(points, carrier.part)
-    yield Finding(
-        f"{carrier.part} departs from a logarithm at {format_quantity(float(current[at]), 'A', 3)}: resistance, knee, "
-        f"leakage and Early effect cost {cost.worst.value:.3g} times their share at {cost.output}",
-        parts=[carrier.part], nets=[carrier.node], subject="conformity", conditions=cost.worst.conditions,
-        consequence=cost_words(cost.output, float(cost.error[at]), float(points.voltage(cost.output)[at])),
-        evidence=[cost_evidence(cost.worst.value, cost.ratio, "typ")],
-        remedies=list(_conforming(review, settings, carrier, cost, current)),
-    )  # fmt: skip
-
-
-def _conforming(
-    review: Review, settings: SignalCurrent.Settings, carrier: Carrier, cost: Cost, current: Array
-) -> Iterator[Remedy]:
-    """Away from the end that bends, by the resistor or by the range; where neither helps, another transistor."""
-    points = review.operating_points
-    worst, fine = float(current[cost.worst.index]), current[np.isfinite(cost.ratio) & (cost.ratio <= settings.shares)]
-    middle = math.sqrt(np.nanmin(np.abs(current)) * np.nanmax(np.abs(current)))
-    high = worst > middle
-    if high:
-        yield from _below(review, carrier, points, cost.worst.index, 1 / (MARGIN * cost.worst.value))
-    elif remedy := scaled(review, carrier, MARGIN * cost.worst.value):
-        yield remedy
-    inputs = source_magnitude(points, carrier)
-    if not high and carrier.is_log and inputs is not None and fine.size:
-        yield from narrowed(review, carrier, least=float(inputs[current >= fine.min()].min()))
-    if not carrier.is_log:
-        yield Remedy("use a transistor of lower bulk resistance and higher knee current")
-
-
-def _range(
+def _logarithm(
     review: Review, settings: SignalCurrent.Settings, points: OperatingPoints, carrier: Carrier
 ) -> Iterator[Finding]:
-    log_range = review.design.parts[carrier.part].parameters.get("log_range")
-    current = forward_current(points, carrier.part)
-    decades = outside(current, log_range)
-    if log_range is None or not np.nanmax(decades, initial=0.0) > SLACK_DECADES:
-        return
-    worst = points.worst(decades)
-    far = worst.value >= settings.decades_outside
-    if far and not carrier.is_log:
-        return  # how far an antilog junction is driven is another rule's concern
-    at, high = float(current[worst.index]), float(current[worst.index]) > log_range[1]
-    factor = log_range[1 if high else 0] / at
-    remedies = list(_below(review, carrier, points, worst.index, factor)) if high else [
-        r for r in (scaled(review, carrier, factor),) if r is not None
-    ]
-    inputs = source_magnitude(points, carrier)
-    if not high and carrier.is_log and inputs is not None:
-        remedies += narrowed(review, carrier, least=float(inputs[worst.index]) * factor)
-    yield Finding(
-        f"{carrier.part} carries {format_quantity(at, 'A', 3)}, outside its log range of "
-        f"{format_quantity(log_range[0], 'A')} to {format_quantity(log_range[1], 'A')}",
-        parts=[carrier.part], nets=[carrier.node], subject="log range", conditions=worst.conditions,
-        severity=Severity.MINOR if far else Severity.OBSERVATION, consequence="there the maker states no conformity",
-        evidence=[Evidence("decades outside the log range", worst.value, "1", 0.0, "<=")], remedies=remedies,
-    )  # fmt: skip
+    """Conformity by solving again, and the range in which the maker states it."""
+    current = working_current(review, carrier)
+
+    def straighter(cost: Cost) -> Iterator[Remedy]:
+        middle, excess = middle_of(current), MARGIN * cost.worst.value
+        is_high = middle is None or current[cost.worst.index] > middle
+        return _changed(review, carrier, review.operating_points, cost.worst.index, 1 / excess if is_high else excess)
+
+    def inside(at: int, factor: float) -> Iterator[Remedy]:
+        return _changed(review, carrier, points, at, factor)
+
+    yield from conformity(review, carrier, settings.shares, straighter)
+    judged = np.where(is_regulated(review, points, carrier.node), forward_current(points, carrier.part), np.nan)
+    for finding in outside_log_range(points, carrier, judged, settings.decades_outside, inside):
+        if carrier.is_log or finding.severity is Severity.OBSERVATION:
+            yield finding

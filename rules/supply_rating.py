@@ -5,10 +5,13 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable, Iterator
 
+import numpy as np
+
 from rulecheck.api import (
     Edit,
     Evidence,
     Finding,
+    Part,
     Remedy,
     Review,
     Rule,
@@ -40,33 +43,41 @@ class SupplyRating(Rule):
     needs = ("operating_points",)
 
     def check(self, review: Review, settings: object) -> Iterable[Finding]:
-        """Judge amplifiers of one model on the same rails together: they have one cause."""
-        groups: dict[tuple[str | None, float, float, str, str], list[str]] = {}
+        """Judge amplifiers of one model on the same supplies together: they have one cause."""
+        rails = Rails(review.design)
+        groups: dict[tuple[object, ...], list[str]] = {}
         for ref, part in powered(review.design).items():
             if part.supply is not None:
-                rails = (part.pins["V+"], part.pins["V-"])
-                groups.setdefault((part.model, part.supply.min, part.supply.max, *rails), []).append(ref)
-        for (_, low, high, positive, negative), refs in groups.items():
-            yield from _judge(review, refs, (low, high), (positive, negative))
+                groups.setdefault((part.model, part.supply, *_sources(rails, part)), []).append(ref)
+        for refs in groups.values():
+            yield from _judge(review, refs)
 
 
-def _judge(review: Review, refs: list[str], span: tuple[float, float], rails: tuple[str, str]) -> Iterator[Finding]:
-    points = review.operating_points
-    total = points.voltage(rails[0]) - points.voltage(rails[1])
-    least, most = points.least(total), points.worst(total)
-    who, (low, high) = ", ".join(refs), span
-    if most.value > high * (1 + SAME):
-        worst, limit, relation, than = most, high, "<=", "over"
+def _sources(rails: Rails, part: Part) -> list[str]:
+    """What feeds the supply pins; the pin's own net where nothing does."""
+    feeds = ((rails.feed(part, pin), part.pins[pin]) for pin in SUPPLY_PINS)
+    return [feed.source if feed is not None else net for feed, net in feeds]
+
+
+def _judge(review: Review, refs: list[str]) -> Iterator[Finding]:
+    points, parts = review.operating_points, review.design.parts
+    supply = parts[refs[0]].supply
+    totals = [points.voltage(parts[ref].pins["V+"]) - points.voltage(parts[ref].pins["V-"]) for ref in refs]
+    highest, lowest = np.max(totals, axis=0), np.min(totals, axis=0)
+    most, least = points.worst(highest), points.least(lowest)
+    if most.value > supply.max * (1 + SAME):
+        worst, over, limit, relation, than = most, highest, supply.max, "<=", "over"
         consequence = "the amplifier may break down"
-    elif least.value < low * (1 - SAME):
-        worst, limit, relation, than = least, low, ">=", "under"
+    elif least.value < supply.min * (1 - SAME):
+        worst, over, limit, relation, than = least, lowest, supply.min, ">=", "under"
         consequence = "none of its data holds"
     else:
         return
+    who = ", ".join(refs)
     yield Finding(
         f"{who}: total supply {format_quantity(worst.value, 'V')} is {than} the limit of {format_quantity(limit, 'V')}",
         parts=refs, conditions=worst.conditions, consequence=consequence,
-        evidence=[Evidence("total supply", worst.value, "V", limit, relation, over=total, basis="limit")],
+        evidence=[Evidence("total supply", worst.value, "V", limit, relation, over=over, basis="limit")],
         remedies=[*_supplies(review, refs[0], least.value, most.value), *_models(review, refs)],
     )  # fmt: skip
 
@@ -81,7 +92,7 @@ def _supplies(review: Review, ref: str, least: float, most: float) -> Iterator[R
     """The usual supply nearest to what there is that the amplifier allows, its supplies kept in proportion."""
     design, part = review.design, review.design.parts[ref]
     rails = Rails(design)
-    sources = dict.fromkeys(feed.source for pin in SUPPLY_PINS if (feed := rails.feed(part, pin)) is not None)
+    sources = _sources(rails, part)
     volts = {n: v for n in sources if design.nets[n].role == "supply" and (v := design.nets[n].voltage) is not None}
     # A voltage written as a table states its limits itself; one value in its place would drop them.
     if not volts or not all(isinstance(design.data["nets"][name]["voltage"], str) for name in volts):

@@ -1,30 +1,23 @@
-"""Questions that several rules ask of a review: which current a junction carries, and what disturbs it."""
+"""Questions that several rules ask of a review: which junctions carry what, and where the circuit is at work."""
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from ..circuit.structure import CurrentSources
-from ..devices.constants import NOMINAL_TEMPERATURE, Array, BoolArray, thermal_voltage
+from ..devices.constants import Array, BoolArray
 from .conditions import Conditions
 from .operating_points import OperatingPoints
-from .review import Cost
 
 if TYPE_CHECKING:
     from .review import Review
 
 STEADY = 0.05  # of a current: base currents and Early voltages of the others move a fixed one by less
 FOLLOWING = 0.1  # of the inputs' own relative change
-SMALL_RESISTANCE = 1e-6  # ohm: in place of zero, so that the internal node stays
-IDEAL = {
-    "bulk_emitter_resistance": SMALL_RESISTANCE, "base_resistance": SMALL_RESISTANCE,
-    "series_resistance": SMALL_RESISTANCE, "knee_current": np.inf, "early_voltage": np.inf,
-    "leakage_saturation_current": 0.0,
-}  # fmt: skip
 
 
 @dataclass(frozen=True, slots=True)
@@ -66,8 +59,10 @@ def carriers(review: Review) -> tuple[Carrier, ...]:
     review : Review
     """
     structure, parts = review.structure, review.design.parts
-    nodes = {log.part: log.summing_node for log in (*structure.log_transistors, *structure.log_diodes)}
-    others = {a.part for a in structure.antilog_transistors} | {r for loop in structure.junction_loops for r in loop.parts}
+    nodes = {log.part: log.summing_node for log in structure.log_transistors}
+    nodes |= {log.part: log.summing_node for log in structure.log_diodes}
+    others = {antilog.part for antilog in structure.antilog_transistors}
+    others.update(ref for loop in structure.junction_loops for ref in loop.parts)
     found = []
     for ref in parts:
         if ref not in nodes and ref not in others:
@@ -134,6 +129,23 @@ def _below_cutoff(review: Review) -> dict[str, BoolArray]:
     return below
 
 
+def is_regulated(review: Review, points: OperatingPoints, *nets: str) -> BoolArray:
+    """Conditions at which no amplifier that holds the nets, or leads to them, is at a limit.
+
+    Parameters
+    ----------
+    review : Review
+    points : OperatingPoints
+        Of this design, at any conditions.
+    *nets : str
+    """
+    structure, parts = review.structure, review.design.parts
+    leading = {ref for net in nets for ref in structure.current_sources_of(net).parts if parts[ref].kind == "op-amp"}
+    holding = {structure.amplifier_of(net) for net in nets} - {None}
+    states = [points.linear(str(amplifier)) for amplifier in leading | holding]
+    return np.logical_and.reduce([points.converged, *states])
+
+
 def forward_current(points: OperatingPoints, ref: str) -> Array:
     """Current of a junction in its forward direction: of a transistor its collector current [A]."""
     kind = points.design.parts[ref].kind
@@ -148,151 +160,6 @@ def forward_voltage(points: OperatingPoints, ref: str) -> Array:
     if part.kind == "diode":
         return points.voltage(part.pins["A"]) - points.voltage(part.pins["K"])
     return points.vbe(ref) * (1 if part.kind == "npn" else -1)
-
-
-def junction_offset(review: Review, ref: str, volts: Array | float) -> dict[tuple[str, str], Any]:
-    """Parameter change that adds a voltage to that of a junction, for `Review.re_solve`."""
-    part = review.design.parts[ref]
-    if part.kind != "diode":
-        return {(ref, "mismatch"): volts}
-    slope = part.emission_coefficient.typ * thermal_voltage(review.operating_points.temperature(ref))
-    return {(ref, "saturation_current"): part.saturation_current.typ * np.exp(np.nan_to_num(volts / slope))}
-
-
-def worst_cost(
-    review: Review, *, values: Mapping[tuple[str, str], Any] | None = None, temperatures: Mapping[str, Array] | None = None
-) -> Cost | None:
-    """The output that a change costs most of its share, judged where the circuit is in use; None: none is judged.
-
-    Parameters
-    ----------
-    review : Review
-    values, temperatures : mapping
-        As for `Review.re_solve`; arrays over the review conditions.
-    """
-    rows, points = in_use(review), review.operating_points
-    if not rows.any():
-        return None
-    changed = review.solve(
-        review.conditions.take(rows),
-        overrides={key: value[rows] if isinstance(value, np.ndarray) else value for key, value in (values or {}).items()},
-        temperatures={ref: value[rows] for ref, value in (temperatures or {}).items()},
-    )
-    costs = []
-    for net in (n for n, entry in review.design.nets.items() if entry.role == "output"):
-        error = np.full(rows.shape, np.nan)
-        error[rows] = changed.voltage(net) - points.voltage(net)[rows]
-        share = review.share(net)
-        with np.errstate(all="ignore"):
-            ratio = np.abs(error) / share
-        if np.isfinite(ratio).any():
-            costs.append(Cost(net, error, share, ratio, points.worst(ratio)))
-    return max(costs, key=lambda cost: cost.worst.value, default=None)
-
-
-def conformity_cost(review: Review, ref: str) -> Cost | None:
-    """What a junction's departure from an ideal exponential costs the outputs.
-
-    The circuit is solved again with the ohmic resistances, the knee, the leakage and the Early effect of this one
-    junction taken away.
-
-    Parameters
-    ----------
-    review : Review
-    ref : str
-        Transistor or diode.
-    """
-    part = review.design.parts[ref]
-    ideal: Mapping[tuple[str, str], float] = {
-        (ref, name): value for name, value in IDEAL.items()
-        if name in part.parameters and part.parameters[name].typ not in (0.0, np.inf)
-    }  # fmt: skip
-    return worst_cost(review, values=ideal) if ideal else None
-
-
-@dataclass(frozen=True)
-class Disturbance:
-    """Currents that add to the current of a node, limits, over the conditions of `points` [A].
-
-    Attributes
-    ----------
-    points : OperatingPoints
-        At the highest ambient, supplies and potentiometers at typ, inputs above their cutoffs.
-    bias, offset, leakage : ndarray
-        From bias currents of amplifiers, from their offset voltages over the resistance at the node, and from
-        diodes and photodiodes on it.
-    """
-
-    points: OperatingPoints
-    bias: Array
-    offset: Array
-    leakage: Array
-
-
-def disturbance(review: Review, carrier: Carrier) -> Disturbance:
-    """What adds to a junction's current at the hottest, by solving again with bias and offset at their limits.
-
-    Parameters
-    ----------
-    review : Review
-    carrier : Carrier
-    """
-    design, everywhere = review.design, points_in_use(review).conditions
-    fixed = [n for n in everywhere.values if n != "ambient" and n not in design.inputs]
-    hot = (everywhere.values["ambient"] == design.ambient.max) & at_typical(review, fixed)
-    conditions = everywhere.take(hot)
-    points = review.solve(conditions)
-    amplifiers = [r for r in review.structure.amplifiers_of(carrier.node)
-                  if carrier.node in (design.parts[r].pins["IN+"], design.parts[r].pins["IN-"])]  # fmt: skip
-
-    def current(name: str, limits: Mapping[str, Any]) -> Array:
-        changed = review.solve(conditions, overrides={(r, name): limits[r] for r in amplifiers})
-        return forward_current(changed, carrier.part)
-
-    bias = current("bias_current", {r: bias_limit(design.parts[r]) for r in amplifiers})
-    offset = current("offset", {r: _offset_limit(points, r) for r in amplifiers})
-    return Disturbance(
-        points,
-        np.abs(bias - current("bias_current", dict.fromkeys(amplifiers, 0.0))),
-        np.abs(offset - forward_current(points, carrier.part)),
-        _leakage(review, points, carrier),
-    )
-
-
-def bias_limit(amplifier: Any) -> float:  # noqa: ANN401  # a part or the parameters of a model
-    """Largest input current of an amplifier at 25 °C, offset current included [A]."""
-    bias, offset = amplifier.bias_current, amplifier.offset_current
-    largest = 0.0 if bias is None else max(abs(bias.min), abs(bias.max))
-    return float(largest + (0.0 if offset is None else offset.half / 2))
-
-
-def _offset_limit(points: OperatingPoints, ref: str) -> Array:
-    """Offset voltage of an amplifier at its limit; what a single unit states is known, and stays [V]."""
-    part = points.design.parts[ref]
-    known = part.offset
-    if known is not None:
-        return np.full(points.conditions.size, getattr(known, "typ", known), dtype=float)
-    limit = 0.0 if part.offset_voltage is None else part.offset_voltage.half
-    drift = 0.0 if part.offset_drift is None else part.offset_drift.half
-    return limit + drift * np.abs(np.nan_to_num(points.temperature(ref)) - NOMINAL_TEMPERATURE)
-
-
-def _leakage(review: Review, points: OperatingPoints, carrier: Carrier) -> Array:
-    """Currents at a node of diodes that do not carry the signal, and dark currents of photodiodes, at limits."""
-    design = review.design
-    working = {log.part for log in review.structure.log_diodes} | {carrier.part}
-    total = np.zeros(points.conditions.size)
-    for ref, part in design.parts.items():
-        if carrier.node not in part.pins.values() or ref in working:
-            continue
-        if part.kind == "diode":
-            spread = part.reverse_leakage if part.reverse_leakage.typ > 0 else part.saturation_current
-            total = total + np.abs(points.current(ref, "A")) * spread.max / spread.typ
-        elif part.kind == "photodiode":
-            dark = points.current(ref, "A") + points.conditions.values[ref]
-            spread = part.dark_current
-            total = total + np.abs(dark) * (spread.max / spread.typ if spread is not None and spread.typ else 1.0)
-    return total
 
 
 def partner_of(review: Review, ref: str) -> str | None:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Collection, Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from itertools import groupby
 
@@ -79,10 +79,10 @@ def conduction(
     In an amplifier's feedback a transistor takes precedence over diodes and resistors over diodes alone: the
     diodes are clamps then. Of opposite directions that of the current counts; where it is unknown the first,
     but none where resistors make a rectifier of them.
-    Elsewhere a diode is at work if it leads a signal into a summing node, makes the reference of a mirror, or
-    is the only way on for the current of its net.
+    Elsewhere a diode is at work if fixed voltages and sources bias it forward, if it leads a signal into a
+    summing node, makes the reference of a mirror, or is the only way on for the current of its net.
     """
-    known = candidates(wiring)
+    known = dict.fromkeys(candidates(wiring))
     chosen: list[Route] = []
     in_feedback: set[str] = set()
     idle: set[str] = set()
@@ -126,9 +126,9 @@ def _carrying(wiring: Wiring, steps: tuple[Step, ...]) -> Iterator[Step]:
             return
 
 
-def _at_work(wiring: Wiring, routes: list[Route], levels: Mapping[str, float], known: tuple[str, ...]) -> list[Route]:
+def _at_work(wiring: Wiring, routes: list[Route], levels: Mapping[str, float], known: Collection[str]) -> list[Route]:
     """Choose the routes of one amplifier through junctions that conduct."""
-    through = [r for r in routes if set(_junctions(wiring, r)) <= set(known) and _direction(wiring, r)]
+    through = [r for r in routes if all(ref in known for ref in _junctions(wiring, r)) and _direction(wiring, r)]
     with_transistor = [r for r in through if not all(is_diode_like(wiring, ref) for ref in _junctions(wiring, r))]
     if with_transistor:
         through = [route for route in with_transistor if not _has_diode(wiring, route)] or with_transistor

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -12,7 +12,7 @@ from networkx.algorithms.isomorphism import GraphMatcher
 from .wiring import is_ideal, joined_by_sources, voltage_sources
 
 if TYPE_CHECKING:
-    from rulecheck.design.model import Design, Net, Part
+    from rulecheck.design.model import Design, Net, Part, ThermalLink
 
     from .graph import Circuit
 
@@ -109,10 +109,11 @@ def equal_islands(design: Design, graph: Circuit, found: tuple[Island, ...]) -> 
         kind, model, parameters and thermal surroundings; nets inside in role and load; nets of the boundary in
         what drives them, for inputs whatever their names. Fixed nets of the boundary are the same net.
     """
+    links = _links(design)
     groups: dict[str, list[tuple[Labelled, list[Copy]]]] = {}
     order: list[list[Copy]] = []
     for island in found:
-        labelled = _labelled(design, graph, island)
+        labelled = _labelled(design, graph, island, links)
         same_hash = groups.setdefault(
             nx.weisfeiler_lehman_graph_hash(labelled, node_attr="label", edge_attr="label", iterations=ROUNDS), []
         )
@@ -142,30 +143,41 @@ def _match(first: Labelled, second: Labelled) -> dict[Node, Node] | None:
     return dict(matcher.mapping) if matcher.is_isomorphic() else None
 
 
-def _labelled(design: Design, graph: Circuit, island: Island) -> Labelled:
+def _labelled(design: Design, graph: Circuit, island: Island, links: Mapping[str, list[ThermalLink]]) -> Labelled:
     """Simple graph of an island, its packages included, with all that makes two of them the same as labels."""
     labelled: Labelled = nx.Graph()
+    packages = {design.parts[ref].package for ref in island.parts}
     for ref in island.parts:
         part = design.parts[ref]
         labelled.add_node(("part", ref), label=_part_label(part))
-        package = ("package", part.package)
-        if package not in labelled:
-            labelled.add_node(package, label=_package_label(design, part.package))
-        labelled.add_edge(("part", ref), package, label="")
-        for _, net, data in _pins(graph, ref, part):
-            labelled.add_edge(("part", ref), net, label=data)
+        labelled.add_edge(("part", ref), ("package", part.package), label="")
+        for net, pins in _pins(graph, ref, part):
+            labelled.add_edge(("part", ref), net, label=pins)
+    for name in packages:
+        outer = [link for link in links.get(name, ()) if not packages.issuperset(link.between)]
+        labelled.add_node(("package", name), label=_package_label(design, name, outer))
+        for link in links.get(name, ()):
+            if link not in outer:
+                labelled.add_edge(*(("package", end) for end in link.between), label=f"link {link.theta}")
     inside = set(island.nets)
     for name in (*island.nets, *island.boundary):
         labelled.add_node(("net", name), label=_net_label(design.nets[name], inside=name in inside))
     return labelled
 
 
-def _pins(graph: Circuit, ref: str, part: Part) -> Iterator[tuple[Node, Node, str]]:
-    """Edges of a part, several pins on one net as one; the ends of resistors and capacitors are alike."""
-    node = ("part", ref)
-    for net in graph[node]:
-        pins = sorted(graph[node][net])
-        yield node, net, " ".join("end" if part.kind in SYMMETRIC else pin for pin in pins)
+def _links(design: Design) -> dict[str, list[ThermalLink]]:
+    """Thermal links by package."""
+    found: dict[str, list[ThermalLink]] = {}
+    for link in design.thermal_links:
+        for name in link.between:
+            found.setdefault(name, []).append(link)
+    return found
+
+
+def _pins(graph: Circuit, ref: str, part: Part) -> Iterator[tuple[Node, str]]:
+    """Nets of a part with its pins there; the ends of resistors and capacitors are alike."""
+    for net, edges in graph[("part", ref)].items():
+        yield net, " ".join("end" if part.kind in SYMMETRIC else pin for pin in sorted(edges))
 
 
 def _part_label(part: Part) -> str:
@@ -173,12 +185,10 @@ def _part_label(part: Part) -> str:
     return f"{part.kind} {part.model} {values}"
 
 
-def _package_label(design: Design, name: str) -> str:
-    """Thermal surroundings: the package's own figures, how many parts it has, and its links."""
+def _package_label(design: Design, name: str, outer: Iterable[ThermalLink]) -> str:
+    """Thermal surroundings: the package's own figures, how many parts it has, and links out of the island."""
     package = design.packages[name]
-    links = sorted(
-        (link.theta, *sorted(set(link.between) - {name})) for link in design.thermal_links if name in link.between
-    )
+    links = sorted((link.theta, *sorted(set(link.between) - {name})) for link in outer)
     figures = (package.theta_ja, package.die, package.theta_between, package.held_temperature)
     return f"package {figures} {package.ratio_tolerance} {package.ratio_tempco} {len(package.parts)} {links}"
 

@@ -89,7 +89,7 @@ def junction_loops(
     outputs = list(dict.fromkeys(wiring.point_of[net] for net in _output_nets(wiring)))
     reader = _Reader(wiring, rows)
     found: list[JunctionLoop] = []
-    for relation in junction_relations(rows, outputs, junctions, Distances(wiring, graph)):
+    for relation in junction_relations(rows, outputs, junctions, _Distances(wiring, graph)):
         loop = reader.read(relation)
         if loop is not None:
             _add(found, loop)
@@ -143,9 +143,10 @@ class _Reader:
         first = next(iter(weights.values()))
         junctions = tuple(Junction(r, 1 if w * first > 0 else -1, abs(w / first)) for r, w in weights.items())
         inputs = self._named(row, inputs=True)
-        currents = any(kind == "I" for kind, _ in row)
+        references = self._named(row, inputs=False)
         compensated = is_balanced(junctions)
-        if relation.output is None and ((currents and not compensated) or (len(junctions) == 1 and not inputs)):
+        biased = bool(references) or len(junctions) == 1 or any(kind == "I" for kind, _ in row)
+        if relation.output is None and not compensated and not inputs and biased:
             return None
         shifts, drops = self._resistors(row)
         outputs = self._outputs(relation)
@@ -164,7 +165,7 @@ class _Reader:
             drops=drops,
             amplifiers=self._amplifiers(row),
             inputs=inputs,
-            references=self._named(row, inputs=False),
+            references=references,
             outputs=outputs,
             gain=first / scale if outputs else None,
             translinear=compensated and not rest and not outputs,
@@ -219,8 +220,8 @@ class _Reader:
         return float(self.wiring.design.parts[ref].emission_coefficient.typ)
 
 
-class Distances:
-    """Distances between junctions in the graph, without ground, supplies, references and inputs."""
+class _Distances:
+    """_Distances between junctions in the graph, without ground, supplies, references and inputs."""
 
     def __init__(self, wiring: Wiring, graph: Circuit) -> None:
         ways = (

@@ -59,7 +59,7 @@ def junction_relations(
     """
     place = {ref: i for i, ref in enumerate(order)}
     for block in blocks(rows, lambda column: column[0] in "VJIv"):
-        kept = [("V", point) for point in outputs]
+        kept = dict.fromkeys(("V", point) for point in outputs)
         inner = [c for kind in "VJ" for c in _columns(block, kind) if c not in kept]
         _, rest = eliminate(block, inner, _cost)
         reaching, rest = eliminate(rest, kept, _cost)

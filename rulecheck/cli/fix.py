@@ -40,14 +40,14 @@ def command(path: Path, selector: str | None, all_proven: bool, preview: bool, o
     registry, design = installed_registry(), load(path)
     with ProgressBar(str(path)) as progress:
         options = Options(on=on, progress=progress)
-        if all_proven:
-            return _apply(path, design.text, fixing.apply_all_proven(design, registry, options), preview, on)
         review = DesignReview(design, registry, options)
+        if all_proven:
+            return _apply(path, design.text, fixing.apply_all_proven(review), preview, on)
         if selector:
             step = fixing.choose(review, selector)
             if not review.trials.proven(step.finding, step.remedy):
                 narrate(f"{path}: remedy {step.remedy.id} of {step.finding.id} is not proven")
-            fixed = fixing.apply(review, step, registry, options)
+            fixed = fixing.apply(review, step)
             return _apply(path, design.text, fixed, preview, on)
         report = review.report()
     return _list(report, review, preview)

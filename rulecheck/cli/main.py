@@ -10,7 +10,7 @@ import click
 
 from rulecheck import __version__
 from rulecheck.cli.status import Status
-from rulecheck.cli.streams import narrate
+from rulecheck.cli.streams import narrate, prepare_streams
 from rulecheck.errors import AnalysisError, PluginError, RulecheckError
 
 #: Commands with the line that help shows, so that help imports none of them.
@@ -76,6 +76,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     int
         Exit status.
     """
+    prepare_streams()
     try:
         return int(program.main(arguments, prog_name="rulecheck", standalone_mode=False) or Status.CLEAN)
     except click.Abort:

@@ -22,7 +22,7 @@ def design_files(paths: Iterable[Path]) -> list[Path]:
     Raises
     ------
     CommandError
-        A folder holds no design.
+        A folder holds no design, or cannot be read.
     """
     files: dict[Path, Path] = {}
     for path in paths:
@@ -35,7 +35,7 @@ def design_files(paths: Iterable[Path]) -> list[Path]:
 
 
 def _in_folder(folder: Path) -> Iterator[Path]:
-    for here, folders, names in os.walk(folder):
+    for here, folders, names in os.walk(folder, onerror=_refuse):
         folders[:] = sorted(name for name in folders if not name.startswith("."))
         for name in sorted(names):
             if name.endswith(".toml"):
@@ -44,6 +44,10 @@ def _in_folder(folder: Path) -> Iterator[Path]:
                     yield file
                 else:
                     narrate(f"{file}: passed over, it has neither format nor [design]")
+
+
+def _refuse(error: OSError) -> None:
+    raise CommandError(f"{error.filename} cannot be read: {error.strerror}") from error
 
 
 def _is_meant_as_design(file: Path) -> bool:

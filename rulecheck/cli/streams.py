@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 import os
 import shutil
 import sys
@@ -13,7 +14,18 @@ from types import TracebackType
 from rulecheck.errors import CommandError
 
 PLAIN_WIDTH = 80
+#: For signs that the encoding lacks, and for file names that are no text.
+_UNWRITABLE = "backslashreplace"
 _BAR = 20
+
+
+def prepare_streams() -> None:
+    """Make stdout give the same bytes as a file, UTF-8, where it is no terminal; let no sign stop the output."""
+    for stream in (sys.stdout, sys.stderr):
+        if isinstance(stream, io.TextIOWrapper):
+            stream.reconfigure(errors=_UNWRITABLE)
+    if isinstance(sys.stdout, io.TextIOWrapper) and not sys.stdout.isatty():
+        sys.stdout.reconfigure(encoding="utf-8", errors=_UNWRITABLE, newline="\n")
 
 
 def narrate(text: str) -> None:
@@ -60,7 +72,7 @@ def emit(text: str, file: Path | None = None) -> None:
         sys.stdout.flush()
         return
     try:
-        _write(file, text.encode())
+        _write(file, text.encode(errors=_UNWRITABLE))
     except OSError as error:
         raise CommandError(f"{file} cannot be written: {error.strerror or error}") from error
 

@@ -67,15 +67,16 @@ class Layout:
             ) or [margin]  # fmt: skip
         return [line.replace(_KEEP, " ") for line in lines]
 
-    def between(self, left: str, right: str) -> str:
-        """Two texts at the ends of a line, or one behind the other where they do not fit.
+    def between(self, left: str, right: str) -> list[str]:
+        """Two texts at the ends of a line, or of two lines where they do not fit one.
 
         Parameters
         ----------
         left, right : str
         """
-        room = max(self.width, LEAST_WIDTH) - len(left) - len(right)
-        return left + " " * max(room, 2) + right
+        width = max(self.width, LEAST_WIDTH)
+        room = width - len(left) - len(right)
+        return [left + " " * room + right] if room >= 2 else [left, right.rjust(width)]
 
 
 def table(rows: Sequence[Sequence[str]], indent: int = 2) -> list[str]:

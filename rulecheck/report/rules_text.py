@@ -59,7 +59,8 @@ def render_page(entry: Registered, width: int = 80, color: bool = False) -> str:
 
 def _summary(entry: Registered, layout: Layout, with_limits: bool = True) -> Iterator[str]:
     rule = entry.rule
-    yield layout.between(layout.styled(rule.name, "bold"), rule.default_severity.label)
+    for line in layout.between(rule.name, rule.default_severity.label):
+        yield layout.styled(line, "bold")
     yield from layout.wrapped(rule.title, 2)
     yield from layout.labelled("  source", rule.source)
     if with_limits and rule.Settings.model_fields:

@@ -129,8 +129,9 @@ def _conceded(finding: Finding, units: Mapping[str, str], layout: Layout) -> Ite
 
 def _place(finding: Finding, layout: Layout) -> Iterator[str]:
     place = finding.location
-    where = f"{place.file}:{place.line}:{place.column}" if place else ""
-    yield layout.styled(layout.between(" " * LABEL_WIDTH + where, finding.id), "dim")
+    where = f"{' ' * LABEL_WIDTH}{place.file}:{place.line}:{place.column}" if place else ""
+    for line in layout.between(where, finding.id):
+        yield layout.styled(line, "dim")
 
 
 def _failures(failures: tuple[Failure, ...], layout: Layout) -> Iterator[str]:

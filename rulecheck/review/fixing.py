@@ -4,17 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
 
 from rulecheck.errors import CommandError
 from rulecheck.findings import Finding, Remedy
 from rulecheck.review.remedies import edited
-from rulecheck.review.runner import DesignReview, Options
+from rulecheck.review.runner import DesignReview
 from rulecheck.review.words import did_you_mean
-
-if TYPE_CHECKING:
-    from rulecheck.design.model import Design
-    from rulecheck.review.registry import Registry
 
 #: A remedy that is proven again and again without end would be a rule's fault; this ends it.
 MOST_ROUNDS = 200
@@ -76,7 +71,7 @@ def choose(review: DesignReview, selector: str) -> Step:
     return Step(finding, remedies[letter])
 
 
-def apply(review: DesignReview, step: Step, registry: Registry, options: Options) -> Fixed:
+def apply(review: DesignReview, step: Step) -> Fixed:
     """Apply one remedy and review the design again.
 
     Parameters
@@ -84,36 +79,31 @@ def apply(review: DesignReview, step: Step, registry: Registry, options: Options
     review : DesignReview
         Of the design as it is.
     step : Step
-    registry : Registry
-    options : Options
 
     Raises
     ------
     RulecheckError
         The edits do not fit, or what they make is no design.
     """
-    return Fixed(review.findings, (step,), _reviewed_again(review, step, registry, options, {}))
+    return Fixed(review.findings, (step,), review.after(step.remedy))
 
 
-def apply_all_proven(design: Design, registry: Registry, options: Options) -> Fixed:
+def apply_all_proven(review: DesignReview) -> Fixed:
     """Apply one proven remedy after another until none is left; findings with a concession are let be.
 
     Parameters
     ----------
-    design : Design
-    registry : Registry
-    options : Options
+    review : DesignReview
+        Of the design as it is.
     """
-    cache: dict[Any, Any] = {}
-    review = DesignReview(design, registry, options, cache)
     before = review.findings
     steps: list[Step] = []
-    seen = {design.text}
+    seen = {review.design.text}
     while len(steps) < MOST_ROUNDS:
         step = next(_proven(review, seen), None)
         if step is None:
             break
-        review = _reviewed_again(review, step, registry, options, cache)
+        review = review.after(step.remedy)
         seen.add(review.design.text)
         steps.append(step)
     return Fixed(before, tuple(steps), review)
@@ -125,12 +115,3 @@ def _proven(review: DesignReview, seen: set[str]) -> Iterator[Step]:
         for remedy in finding.remedies if finding.concession is None else ():
             if review.trials.proven(finding, remedy) and edited(review.design.text, remedy) not in seen:
                 yield Step(finding, remedy)
-
-
-def _reviewed_again(
-    review: DesignReview, step: Step, registry: Registry, options: Options, cache: dict[Any, Any]
-) -> DesignReview:
-    from rulecheck.design.load import load_text
-
-    text = edited(review.design.text, step.remedy)
-    return DesignReview(load_text(text, review.design.path), registry, options, cache)

@@ -14,13 +14,13 @@ from rulecheck.review.completion import in_order
 from rulecheck.review.concessions import concession_for, findings_about
 from rulecheck.review.judging import Judgement, Judging, Progress
 from rulecheck.review.outcome import ReviewedDesign, condition_units
-from rulecheck.review.remedies import Trials
+from rulecheck.review.remedies import Trials, edited
 from rulecheck.review.settings import read_settings
 
 if TYPE_CHECKING:
     from rulecheck.api import Rule
     from rulecheck.design.model import Design
-    from rulecheck.findings import Finding
+    from rulecheck.findings import Finding, Remedy
     from rulecheck.review.registry import Registry
 
 
@@ -104,6 +104,23 @@ class DesignReview:
             units=condition_units(self.design),
             rules_run=len(self._judgement.ran),
         )
+
+    def after(self, remedy: Remedy) -> DesignReview:
+        """The review of the design with the edits of a remedy made.
+
+        Parameters
+        ----------
+        remedy : Remedy
+
+        Raises
+        ------
+        RulecheckError
+            The edits do not fit, or what they make is no design.
+        """
+        from rulecheck.design.load import load_text
+
+        changed = load_text(edited(self.design.text, remedy), self.design.path)
+        return DesignReview(changed, self._registry, self._options, self._cache)
 
     def _judge(self, design: Design, only: Collection[str], progress: Progress | None) -> Judgement:
         from rulecheck.analysis.review import Review

@@ -40,7 +40,9 @@ def test_the_import_contracts_are_kept():
 SCREENS_AND_PLOTS = {"textual", "rich", "matplotlib", "plotext", "textual_plot"}
 
 
-@pytest.mark.parametrize("module", ["rulecheck.cli.main", "rulecheck.api", "rulecheck.review.runner", "rulecheck_rules"])
+@pytest.mark.parametrize(
+    "module", ["rulecheck.cli.main", "rulecheck.api", "rulecheck.review.runner", "rulecheck_rules"]
+)
 def test_importing_the_checker_loads_no_screens_and_no_plots(module):
     """They cost more than a whole check."""
     assert not loaded_by(f"import {module}") & SCREENS_AND_PLOTS

@@ -339,11 +339,12 @@ def test_the_program_runs_as_a_process(folder):
     assert json.loads(done.stdout)["summary"]["major"] == 1
 
 
-def on_terminal(arguments, columns, **environment):
-    """What the program writes to a terminal of some columns."""
+def on_terminal(arguments, columns, stream="stdout", **environment):
+    """What the program writes to one of its streams that is a terminal of some columns."""
     leader, follower = pty.openpty()
     process = subprocess.Popen(
-        [*PROGRAM, *arguments], stdin=subprocess.DEVNULL, stdout=follower, stderr=subprocess.DEVNULL,
+        [*PROGRAM, *arguments], stdin=subprocess.DEVNULL,
+        **{"stdout": subprocess.DEVNULL, "stderr": subprocess.DEVNULL, stream: follower},
         env={**os.environ, "COLUMNS": str(columns), "TERM": "xterm", **environment},
     )  # fmt: skip
     os.close(follower)
@@ -373,6 +374,50 @@ def test_a_terminal_gets_its_width_and_colour(folder, monkeypatch):
 def test_no_color_holds(folder):
     """Not even on a terminal."""
     assert "\x1b" not in on_terminal(["check", "divider.toml", *ONLY], 80, NO_COLOR="1")
+
+
+def test_a_terminal_sees_progress_which_goes_when_it_is_done(folder):
+    """A bar within the width of the terminal; the last that is written clears the line."""
+    text = on_terminal(["check", "divider.toml", *ONLY], 80, stream="stderr")
+    *bars, last = text.split("\r\x1b[K")
+    assert last == ""
+    assert any("1 of 3  remedy a of divider-ratio" in bar for bar in bars)
+    assert max(map(len, bars)) < 80
+
+
+def test_a_pipe_sees_no_progress(folder):
+    """Neither on stdout nor on stderr."""
+    done = subprocess.run([*PROGRAM, "check", "divider.toml", *ONLY], capture_output=True, check=False)
+    assert done.stderr == b""
+    assert b"remedy a of" not in done.stdout
+
+
+def test_a_pipe_gets_the_bytes_of_a_file_whatever_the_locale(folder):
+    """UTF-8 with plain line ends; a file name that is no text is written legibly."""
+    odd = os.fsdecode(b"odd\xff.toml")
+    (folder / odd).write_text(DIVIDER)
+    environment = {**os.environ, "PYTHONIOENCODING": "ascii"}
+    for name in ("divider.toml", odd):
+        command = [*PROGRAM, "check", name, *ONLY, "--as", "json"]
+        piped = subprocess.run(command, capture_output=True, check=False, env=environment)
+        written = subprocess.run([*command, "--write", "out.json"], capture_output=True, check=False, env=environment)
+        assert (piped.returncode, written.returncode) == (1, 1), piped.stderr
+        assert piped.stdout == (folder / "out.json").read_bytes()
+        assert valid_report(piped.stdout.decode())["designs"][0]["file"] == name
+
+
+def test_a_reader_that_stops_early_sees_no_traceback(folder):
+    """Such as one that wants the first line only."""
+    (folder / "many").mkdir()
+    for i in range(200):
+        (folder / "many" / f"{i}.toml").write_text("format = 2\n" * 3)
+    process = subprocess.Popen([*PROGRAM, "check", "many"], stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True)
+    assert process.stdout is not None
+    assert process.stderr is not None
+    process.stdout.close()
+    assert "Traceback" not in process.stderr.read()
+    process.wait(timeout=20)
+    process.stderr.close()
 
 
 def test_an_interrupt_gives_status_130(folder):

@@ -103,9 +103,7 @@ def test_without_points_the_review_grid_is_used(numbers):
 def test_every_kind_of_part_has_its_figures_with_their_signs(numbers, points):
     """Signs by the circuit: what drives gives current out, what takes takes it in."""
     design = numbers(ALL_KINDS, *points("VIN,IIN,PD1\n5 V,1 mA,1 uA\n"))
-    part = {
-        ref: {name: array[0] for name, array in figures.items()} for ref, figures in design["parts"].items()
-    }
+    part = {ref: {name: array[0] for name, array in figures.items()} for ref, figures in design["parts"].items()}
     assert set(design["points"]) == {"ambient", "VIN", "IIN", "PD1", "VP", "VN", "VREF", "P1"}
     assert part["P1"]["current"] == pytest.approx(5.0 / 10e3, rel=1e-6)  # the wiper takes only a bias current
     assert abs(part["P1"]["wiper_current"]) < 1e-8

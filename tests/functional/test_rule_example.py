@@ -3,8 +3,8 @@
 import pytest
 
 from rulecheck.errors import DesignError
-from rulecheck.findings import Severity
-from rulecheck.testing import assert_clean, assert_finds, design_from, findings_of
+from rulecheck.findings import Remedy, Set, Severity
+from rulecheck.testing import assert_clean, assert_finds, design_from, findings_of, mended
 
 # A log transistor whose base stands at BIAS while its collector is held at ground.
 LOG_STAGE = """\
@@ -100,6 +100,16 @@ def test_helpers_refuse_a_rule_that_fails(team):
 
     with pytest.raises(AssertionError, match="crashing failed: ZeroDivisionError"):
         assert_clean(team_rules.Crashing, SOUND.replace("Log stage", "crash"))
+
+
+def test_a_remedy_can_be_applied_to_a_design_with_its_catalogue():
+    """The changed design reads the same catalogue, however long the first one is kept."""
+    text = SOUND.replace("format = 1\n", 'format = 1\ncatalogues = ["own.toml"]\n')
+    design = design_from(text, '[models.own-diode]\nkind = "diode"\nsaturation_current = "1 fA"\n')
+    changed = mended(design, Remedy("Raise it", [Set("parts.R1.value", "220 kohm")]))
+    del design
+    assert changed.parts["R1"].value.typ == 220e3
+    assert "own-diode" in mended(changed, Remedy("Rename", [Set("design.title", "x")])).models
 
 
 def test_a_catalogue_can_be_given_as_text():

@@ -146,7 +146,11 @@ class Amplifier:
         self.gain = p.open_loop_gain
         self.headroom = (p.end("output_headroom", "low"), p.end("output_headroom", "high"))
         doubling = 2 ** ((temperature - NORMAL) / p.bias_current_doubling) if p.bias_current_doubling else 1.0
-        self.bias = {"IN+": p.bias_current * doubling, "IN-": p.bias_current * doubling}
+        # `bias_difference` is the offset current that one unit has; the format knows only its limit
+        self.bias = {
+            "IN+": (p.bias_current + p.bias_difference / 2) * doubling,
+            "IN-": (p.bias_current - p.bias_difference / 2) * doubling,
+        }
         self.z, self.branch = f"z:{ref}", f"branch:{ref}"
 
     def limits(self, net):

@@ -67,8 +67,12 @@ class Point:
 
 
 def solve(text, point, catalogue_text=None, clamps=False, start=None):
-    """The operating point of a design at one point, with its temperatures."""
-    design = read(text, catalogue_text)
+    """The operating point of a design's text at one point, with its temperatures."""
+    return solve_design(read(text, catalogue_text), point, clamps, start)
+
+
+def solve_design(design, point, clamps=False, start=None):
+    """The operating point of a design that has been read, so that a test may change its numbers."""
     heat = Heat(design, point.get("ambient", ambient_of(design)))
     temperatures = heat.start()
     for _ in range(100):

@@ -196,8 +196,8 @@ class Network(Equations):
                     self.clamp(f"{ref}.{pin}.hi", pins[pin], pins["V+"], ref)
                     self.clamp(f"{ref}.{pin}.lo", pins["V-"], pins[pin], ref)
             if kind in ("differential", "both"):
-                self.clamp(f"{ref}.IN+.differential", pins["IN+"], pins["IN-"], ref)
-                self.clamp(f"{ref}.IN-.differential", pins["IN-"], pins["IN+"], ref)
+                self.clamp(f"{ref}.IN+.across", pins["IN+"], pins["IN-"], ref)
+                self.clamp(f"{ref}.IN-.across", pins["IN-"], pins["IN+"], ref)
 
     def clamp(self, name, anode, cathode, ref):
         """One clamp diode behind its series resistance."""

@@ -37,44 +37,54 @@ USUAL = {name: voltage_input() for name in ("VX", "VY", "VZ")} | {"VREF": VREF, 
 
 
 def resistor(ref: str, value: str, a: str, b: str) -> Part:
+    """Give a resistor."""
     return ref, {"kind": "resistor", "value": value, "pins": [a, b]}
 
 
 def capacitor(ref: str, a: str, b: str) -> Part:
+    """Give a capacitor."""
     return ref, {"kind": "capacitor", "value": "100 pF", "pins": [a, b]}
 
 
 def potentiometer(ref: str, value: str, position: float, end1: str, wiper: str, end2: str) -> Part:
+    """Give a potentiometer at a position."""
     pins = {"END1": end1, "WIPER": wiper, "END2": end2}
     return ref, {"kind": "potentiometer", "value": value, "position": {"typ": position}, "pins": pins}
 
 
 def npn(ref: str, c: str, b: str, e: str) -> Part:
+    """Give an npn transistor."""
     return ref, {"kind": "npn", "model": "test-npn", "pins": {"C": c, "B": b, "E": e}}
 
 
 def pnp(ref: str, c: str, b: str, e: str) -> Part:
+    """Give a pnp transistor."""
     return ref, {"kind": "pnp", "model": "test-pnp", "pins": {"C": c, "B": b, "E": e}}
 
 
 def diode(ref: str, a: str, k: str) -> Part:
+    """Give a diode."""
     return ref, {"kind": "diode", "model": "test-diode", "pins": {"A": a, "K": k}}
 
 
 def amplifier(ref: str, plus: str, minus: str, out: str, rails: tuple[str, str] = ("VP", "VN")) -> Part:
+    """Give an op-amp."""
     pins = {"IN+": plus, "IN-": minus, "OUT": out, "V+": rails[0], "V-": rails[1]}
     return ref, {"kind": "op-amp", "model": "test-amplifier", "pins": pins}
 
 
 def current_source(ref: str, value: str, p: str, n: str) -> Part:
+    """Give a source that drives its current out of `p`."""
     return ref, {"kind": "current-source", "value": value, "pins": {"P": p, "N": n}}
 
 
 def voltage_source(ref: str, value: str, p: str, n: str) -> Part:
+    """Give a voltage source."""
     return ref, {"kind": "voltage-source", "value": value, "pins": {"P": p, "N": n}}
 
 
 def photodiode(ref: str, a: str, k: str) -> Part:
+    """Give a photodiode."""
     return ref, {"kind": "photodiode", "photocurrent": ["1 nA", "100 uA"], "pins": {"A": a, "K": k}}
 
 
@@ -83,7 +93,11 @@ def design_text(nets: Mapping[str, Any], parts: Iterable[Part], **tables: Any) -
     lines = ["format = 1", 'catalogues = ["parts.toml"]', "[design]", 'title = "test"']
     lines += [f"[nets.{json.dumps(n)}]\n{_entries(table)}" for n, table in {**SUPPLIES, **nets}.items()]
     lines += [f"[parts.{json.dumps(ref)}]\n{_entries(table)}" for ref, table in parts]
-    lines += [f"[{name}]\n{_entries(table)}" for name, table in tables.items()]
+    for name, content in tables.items():
+        if isinstance(content, list):
+            lines += [f"[[{name}]]\n{_entries(table)}" for table in content]
+        else:
+            lines.append(f"[{name}]\n{_entries(content)}")
     return "\n".join(lines) + "\n"
 
 
@@ -152,3 +166,23 @@ def antilog(n: int, reference: Part, *, base: str, out: str) -> list[Part]:
 def weights(loop: JunctionLoop) -> dict[str, float]:
     """Signed weights of a loop's junctions by part."""
     return {junction.part: junction.turn * junction.weight for junction in loop.junctions}
+
+
+def inverting(ref, gain, a, out):
+    """Inverting stage of a gain, from net `a` to `out`."""
+    return [
+        resistor(f"RI{ref}", "10 kohm", a, f"M{ref}"),
+        resistor(f"RO{ref}", f"{10 * gain} kohm", f"M{ref}", out),
+        amplifier(ref, "GND", f"M{ref}", out),
+    ]
+
+
+def difference(ref, a, b, out, gain=1, foot="GND"):
+    """Difference stage: `out` is `gain` times `b` less `a`, upon `foot`."""
+    return [
+        resistor(f"RA{ref}", "10 kohm", a, f"N{ref}"),
+        resistor(f"RB{ref}", f"{10 * gain} kohm", f"N{ref}", out),
+        resistor(f"RC{ref}", "10 kohm", b, f"P{ref}"),
+        resistor(f"RD{ref}", f"{10 * gain} kohm", f"P{ref}", foot),
+        amplifier(ref, f"P{ref}", f"N{ref}", out),
+    ]

@@ -26,5 +26,5 @@ def test_nodes_carry_kind_and_role_in_the_order_of_the_file():
 def test_the_graph_cannot_be_changed():
     """Rules share the graph, so it refuses edits."""
     graph = build_graph(design_of(USUAL, [resistor("R1", "1 kohm", "VX", "GND")]))
-    with pytest.raises(nx.NetworkXError, match="[Ff]rozen"):
+    with pytest.raises(nx.NetworkXError, match="Frozen"):
         graph.remove_node(("part", "R1"))

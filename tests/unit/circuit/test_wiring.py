@@ -22,6 +22,7 @@ from rulecheck.circuit.wiring import GROUND, Wiring, build_wiring, exact, hidden
 
 
 def wiring_of(parts, nets=USUAL) -> Wiring:
+    """Wiring of the design of these parts."""
     return build_wiring(design_of(nets, parts))
 
 

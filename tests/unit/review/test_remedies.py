@@ -6,11 +6,8 @@ from rulecheck.api import Add, Finding, Move, Remedy, Remove, Set, Severity
 from rulecheck.errors import CommandError
 from rulecheck.review import fixing
 from rulecheck.review.completion import letters
-from rulecheck.review.registry import registry_of
-from rulecheck.review.runner import Options
-from rulecheck.testing import design_from
 
-from .toys import DAY, DIVIDER, LowResistor, raising, review, rule
+from .toys import DIVIDER, LowResistor, raising, review, rule
 
 
 def mended_at(key, value):
@@ -186,7 +183,7 @@ def test_letters_count_on_beyond_the_alphabet():
 
 def fix(*rules, text=DIVIDER):
     """All that is proven, applied."""
-    return fixing.apply_all_proven(design_from(text), registry_of(rules), Options(on=DAY))
+    return fixing.apply_all_proven(review(rules, text))
 
 
 def test_all_proven_remedies_are_applied_one_after_another():

@@ -1,0 +1,1 @@
+"""Checks of the report formats on reports made for the purpose."""
