@@ -163,6 +163,8 @@ class Finding:
     remedies : sequence of Remedy
     at : str, optional
         Key path in the design; the runner takes the first part or net where None.
+    rule, id, location, concession
+        Filled in by the runner.
     """
 
     message: str

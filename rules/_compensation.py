@@ -39,6 +39,8 @@ def remedies(review: Review, amplifiers: list[str], damping: float, margin: floa
     -------
     list of Remedy
     """
+    if not review.seeks_remedies:
+        return []
     found = review.required_capacitors(amplifiers, damping, margin)
     if found is not None:
         return [Remedy(_title(review, found.capacitors), _capacitor_edits(review, found.capacitors))]

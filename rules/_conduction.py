@@ -64,12 +64,18 @@ def tied_outputs(design: Design, amplifiers: Iterable[str]) -> Iterator[tuple[li
     graph: nx.Graph[str] = nx.Graph()
     graph.add_nodes_from(design.nets)
     graph.add_edges_from((a, b) for _, a, b, _ in stiff_parts(design))
-    outputs = {ref: design.parts[ref].pins["OUT"] for ref in amplifiers if "OUT" in design.parts[ref].pins}
-    for group in nx.connected_components(graph):
-        refs = [ref for ref, net in outputs.items() if net in group]
-        held = [name for name, net in design.nets.items() if name in group and is_ideal(net)]
-        if refs and (held or len(refs) > 1):
-            yield refs, held, list(dict.fromkeys(outputs[ref] for ref in refs))
+    group_of = {net: number for number, group in enumerate(nx.connected_components(graph)) for net in group}
+    held: dict[int, list[str]] = {}
+    for name, net in design.nets.items():
+        if is_ideal(net):
+            held.setdefault(group_of[name], []).append(name)
+    outputs: dict[int, dict[str, str]] = {}
+    for ref in amplifiers:
+        if (output := design.parts[ref].pins.get("OUT")) is not None:
+            outputs.setdefault(group_of[output], {})[ref] = output
+    for number, nets in outputs.items():
+        if number in held or len(nets) > 1:
+            yield list(nets), held.get(number, []), list(dict.fromkeys(nets.values()))
 
 
 def source_loops(design: Design) -> Iterator[tuple[list[str], list[str]]]:

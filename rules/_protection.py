@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import bisect
 import math
 from collections.abc import Callable, Iterator
 from functools import partial
@@ -16,11 +17,8 @@ from ._models import other_models
 
 KNEE = 0.3
 """Volts up to which a diode across a signal carries nothing that matters."""
-LEAST_EFFECT = 1e-3
-"""Share by which a series resistor must lower a current to be its cure."""
-ROOM = 1.05
-LARGEST_SHARE = 1e4
-"""A series resistor is at least this part of what the whole voltage would ask."""
+SEARCHED = 1e3
+"""Factor over which the values of a series resistor are searched."""
 
 
 def against_reversal(review: Review, parts: list[str], causes: list[str], index: int) -> list[Remedy]:
@@ -39,12 +37,14 @@ def against_reversal(review: Review, parts: list[str], causes: list[str], index:
     diode = quietest_diode(review)
     if diode is None:
         return [Remedy("clamp the junction with a diode of low leakage; the catalogues have none")]
-    clamps = [_clamp_in_loop(review, a, index, diode) for a in causes if a in review.design.parts]
     edits: list[Edit] = []
-    for ends in clamps:
-        edits += [add_diode(review.design, diode, *ends, edits)] if ends else []
-    where = ", ".join(f"from {ends[0]} to {ends[1]}" for ends in clamps if ends)
-    remedies = [Remedy(f"clamp {', '.join(causes)} with {diode} {where}", edits)] if clamps and all(clamps) else []
+    words = []
+    for amplifier in causes:
+        ends = _clamp_in_loop(review, amplifier, index) if amplifier in review.design.parts else None
+        if ends is not None:
+            edits.append(add_diode(review.design, diode, *ends, edits))
+            words.append(f"{amplifier} from {ends[0]} to {ends[1]}")
+    remedies = [Remedy(f"clamp {', '.join(words)} with {diode}", edits)] if edits else []
     across: list[Edit] = []
     for ref in parts:
         part = review.design.parts[ref]
@@ -54,7 +54,7 @@ def against_reversal(review: Review, parts: list[str], causes: list[str], index:
     return [*remedies, Remedy(f"{diode} across {', '.join(parts)}, from {way}", across)]
 
 
-def _clamp_in_loop(review: Review, amplifier: str, index: int, diode: str) -> tuple[str, str] | None:
+def _clamp_in_loop(review: Review, amplifier: str, index: int) -> tuple[str, str] | None:
     """Anode and cathode of a diode between output and summing node that takes over when the loop opens."""
     pins = review.design.parts[amplifier].pins
     node = next((n for n in review.structure.summing_nodes if n.amplifier == amplifier), None)
@@ -98,10 +98,10 @@ def _stands(model: Model, volts: float) -> bool:
 def series_resistor(
     review: Review, ref: str, pin: str, limit: float, current: Callable[[Review], float]
 ) -> Iterator[Remedy]:
-    """Resistor between a pin and its net that brings a fault current down to its limit.
+    """Resistor between a pin and its net that brings a fault current down to its limit: the least that does.
 
-    The source is taken as a voltage behind a resistance, both found by solving once more with a resistor so
-    large that no supply or input could drive the limit through it.
+    Amplifiers that leave their limits on the way bend the relation, so the preferred values up to that which
+    takes all the voltage there is are searched by solving the faults again.
 
     Parameters
     ----------
@@ -112,15 +112,16 @@ def series_resistor(
     current : callable
         Greatest fault current of a review [A].
     """
-    trial = _greatest_span(review) / limit
-    before, after = current(review), current(review.edited(add_in_series(review.design, trial, ref, pin)))
-    if not after < before * (1 - LEAST_EFFECT):
-        return
-    own = trial * after / (before - after)
-    least = max((before * own / limit - own) * ROOM, trial / LARGEST_SHARE)
-    value = min(decade_values("E24", least, least * 1.2))
-    title = f"put {format_quantity(value, 'ohm')} in series with {pin} of {ref}"
-    yield Remedy(title, add_in_series(review.design, value, ref, pin))
+    largest = _greatest_span(review) / limit
+    values = decade_values("E24", largest / SEARCHED, largest * 1.2)
+
+    def suffices(ohm: float) -> bool:
+        return current(review.edited(add_in_series(review.design, ohm, ref, pin))) <= limit
+
+    if suffices(values[-1]):
+        value = values[bisect.bisect_left(values, True, key=suffices)]
+        title = f"put {format_quantity(value, 'ohm')} in series with {pin} of {ref}"
+        yield Remedy(title, add_in_series(review.design, value, ref, pin))
 
 
 def _greatest_span(review: Review) -> float:

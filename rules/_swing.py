@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator
 from functools import cached_property
 from typing import Any
@@ -149,13 +150,22 @@ def _split(review: Review, amplifier: str, feedback: str, most: float) -> Iterat
     following = [r for r, p in design.parts.items() if out in p.pins.values() and r not in {amplifier, *own}]
     if design.nets[out].role is not None or not following or not all(_feeds_a_sum(review, r, out) for r in following):
         return
-    resistors = [design.parts[r] for r in (feedback, *following)]
-    candidates = decade_values("E96", most / SPLIT_SEARCH, most)
-    value = min(candidates, key=lambda v: max(_scaled(p, v / resistors[0].value.typ)[1] for p in resistors))
-    scale = value / resistors[0].value.typ
-    changes = [_make(p, _scaled(p, scale)[0]) for p in resistors]
-    words = " and ".join(change.title for change in changes)
-    yield Remedy(f"move gain to the next stage: {words}", [edit for change in changes for edit in change.edits])
+    together = [design.parts[r] for r in (feedback, *following)]
+    change = _scaled_together(together, most / SPLIT_SEARCH, most)
+    yield Remedy(f"move gain to the next stage: {change.title}", change.edits)
+
+
+def _scaled_together(parts: list[Part], low: float, high: float) -> Remedy:
+    """Resistors scaled by one factor that brings the first between two values, to E96 values of the best ratio."""
+    first = parts[0].value.typ
+
+    def off(value: float) -> float:
+        return max(abs(math.log(nearest(p.value.typ * value / first) * first / (p.value.typ * value))) for p in parts)
+
+    value = min(decade_values("E96", low, high), key=off)
+    changes = [_make(part, nearest(part.value.typ * value / first)) for part in parts]
+    title = ", ".join(change.title for change in changes)
+    return Remedy(title, [edit for change in changes for edit in change.edits])
 
 
 def _feeds_a_sum(review: Review, ref: str, out: str) -> bool:
@@ -164,38 +174,59 @@ def _feeds_a_sum(review: Review, ref: str, out: str) -> bool:
     return part.kind == "resistor" and len(far) == 1 and review.structure.summing_node(far[0]) is not None
 
 
-def _scaled(part: Part, scale: float) -> tuple[float, float]:
-    """The E96 value nearest to a resistor scaled, and by what share it is off."""
-    wanted = part.value.typ * scale
-    value = nearest(wanted, "E96")
-    return value, abs(value / wanted - 1)
+def _sharing_a_sum(review: Review, ref: str) -> list[Part]:
+    """A resistor, and where it ends at a summing node those that set the gain with it."""
+    parts = review.design.parts
+    nodes = {net for net in parts[ref].pins.values() if review.structure.summing_node(net) is not None}
+    others = [p for p in parts.values() if p.kind == "resistor" and nodes & set(p.pins.values()) and p.ref != ref]
+    return [parts[ref], *others]
 
 
-def current_remedies(review: Review, amplifier: str, worst: Worst) -> list[Remedy]:
+def current_remedies(review: Review, amplifier: str) -> list[Remedy]:
     """Ways to ask less current of an output: a larger resistor where most of it goes, a stronger model.
+
+    Faults count too: a load that is right in normal operation may be too much with the output at its limit.
 
     Parameters
     ----------
     review : Review
     amplifier : str
-    worst : Worst
-        Of the magnitude of its output current [A].
     """
-    points, parts = review.operating_points, review.design.parts
-    limit, out = parts[amplifier].output_current.max, parts[amplifier].pins["OUT"]
-    flows = {
-        ref: abs(float(points.current(ref, pin)[worst.index]))
-        for ref, part in parts.items() if part.kind == "resistor" and part.value.typ > 0
-        for pin, net in part.pins.items() if net == out
-    }  # fmt: skip
+    parts, limit = review.design.parts, review.design.parts[amplifier].output_current.max
+    usual, in_faults = (_Flows(points, review, amplifier) for points in (review.operating_points, review.faults))
     remedies = []
-    if flows and (ref := max(flows, key=lambda r: flows[r])) and worst.value - flows[ref] < limit:
-        least = parts[ref].value.typ * flows[ref] / (limit - (worst.value - flows[ref]))
-        if least <= parts[ref].value.typ * FURTHEST:
-            remedies.append(_make(parts[ref], min(decade_values(_series(parts[ref]), least, least * 1.2))))
+    if usual.resistors:
+        ref = max(usual.resistors, key=lambda r: usual.resistors[r])
+        scales = usual.scale(ref, limit), in_faults.scale(ref, limit)
+        scale = max((s for s in scales if s <= FURTHEST), default=1.0)
+        if scale > 1:
+            least = parts[ref].value.typ * scale
+            remedies.append(_scaled_together(_sharing_a_sum(review, ref), least, least * SPLIT_SEARCH))
 
     def fits(model: Any) -> bool:  # noqa: ANN401  # an amplifier's parameters
-        return model.output_current is not None and bool(model.output_current.max >= worst.value)
+        needed = max(usual.total, in_faults.total)
+        return model.output_current is not None and bool(model.output_current.max >= needed)
 
     remedies += other_models(review, [amplifier], fits, ("output_current",), "it gives the current")
     return remedies or [Remedy("buffer the output, or ask for a lighter load")]
+
+
+class _Flows:
+    """The greatest output current of an amplifier, and what of it goes through each resistor [A]."""
+
+    def __init__(self, points: OperatingPoints, review: Review, amplifier: str) -> None:
+        out = review.design.parts[amplifier].pins["OUT"]
+        worst = points.worst(np.abs(points.current(amplifier, "OUT")))
+        self.total = worst.value
+        self.resistors = {
+            ref: abs(float(points.current(ref, pin)[worst.index]))
+            for ref, part in review.design.parts.items()
+            if part.kind == "resistor" and part.value.typ > 0
+            for pin, net in part.pins.items()
+            if net == out
+        }
+
+    def scale(self, ref: str, limit: float) -> float:
+        """Factor on a resistor that brings the current down to its limit."""
+        left = limit - (self.total - self.resistors[ref])
+        return self.resistors[ref] / left if left > 0 else math.inf

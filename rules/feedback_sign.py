@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable
 from typing import Any
 
 import numpy as np
@@ -43,10 +43,11 @@ class FeedbackSign(Rule):
         positive = [ref for ref, word in words.items() if word == "positive"]
         for ref, others in _causes(review, positive, settings.least_return_ratio).items():
             yield _positive(review, ref, others)
+        ways = _ways_back(review)
         for ref, word in words.items():
             if word == "absent":
                 yield _absent(review, ref)
-            elif word == "negative" and _is_integrator(review, ref):
+            elif word == "negative" and _is_integrator(ways.get(ref, [])):
                 yield _integrator(review, ref)
 
 
@@ -128,16 +129,16 @@ def _integrator(review: Review, ref: str) -> Finding:
     )  # fmt: skip
 
 
-def _is_integrator(review: Review, ref: str) -> bool:
+def _is_integrator(ways: list[set[str]]) -> bool:
     """Whether there are ways back without another amplifier, and all of them lead through a capacitor."""
-    ways = list(_own_ways(review, ref))
-    return bool(ways) and all("capacitor" in way for way in ways)
+    own = [kinds for kinds in ways if "op-amp" not in kinds]
+    return bool(own) and all("capacitor" in kinds for kinds in own)
 
 
-def _own_ways(review: Review, ref: str) -> Iterator[set[str]]:
-    """Kinds of parts on each way back to the inverting input that leads through no other amplifier."""
+def _ways_back(review: Review) -> dict[str, list[set[str]]]:
+    """Kinds of parts on each way from an amplifier's output to its inverting input, by amplifier."""
+    ways: dict[str, list[set[str]]] = {}
     for loop in review.structure.feedback_loops:
-        if loop.amplifier == ref and loop.input == "IN-":
-            kinds = {review.design.parts[part].kind for part in loop.parts}
-            if "op-amp" not in kinds:
-                yield kinds
+        if loop.input == "IN-":
+            ways.setdefault(loop.amplifier, []).append({review.design.parts[part].kind for part in loop.parts})
+    return ways

@@ -41,7 +41,7 @@ class LoopStability(Rule):
     def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
         """Judge the modes first, then the margins of amplifiers that no ringing mode explains."""
         for island in review.loops.islands:
-            signs = [island.margins(a).dc_return_ratio for a in island.amplifiers]
+            signs = [review.loops.dc_return_ratio(a) for a in island.amplifiers]
             # where feedback is positive at DC, that is the fault to mend first
             judged = island.judged & np.all([~(t < 0) for t in signs], axis=0) if signs else np.zeros(0, bool)
             if judged.any():

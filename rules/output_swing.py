@@ -145,5 +145,5 @@ def _over_current(review: Review, amplifier: str, judged: Mask) -> Iterator[Find
         parts=[amplifier], severity=Severity.MAJOR, conditions=worst.conditions, subject="current",
         consequence="the output sags or limits its current, and its loop holds nothing any more",
         evidence=[Evidence("output current", worst.value, "A", limit, "<=", over=current, basis="limit")],
-        remedies=current_remedies(review, amplifier, worst),
+        remedies=current_remedies(review, amplifier),
     )  # fmt: skip

@@ -141,6 +141,8 @@ def _exponents(review: Review, settings: TransferLaw.Settings, transfer: Transfe
 
 def _scalings(review: Review, transfer: Transfer) -> Iterable[Remedy]:
     """Resistors whose change, by trial, takes most of the error away, with the nearest preferred value."""
+    if not review.seeks_remedies:
+        return
     weight = np.where(transfer.judged & (transfer.allowed > 0), 1 / transfer.allowed, 0.0)
     error = np.where(weight > 0, transfer.error, 0.0) * weight
     options = []

@@ -63,9 +63,12 @@ class IslandLoops:
         return self.circuit.participation[self.placed.index]
 
     def margins(self, amplifier: str) -> Margins:
-        """Margins of one amplifier at the conditions of the design."""
-        found = self.circuit.margins(self.placed.parts[amplifier])
-        return Margins(**{name: getattr(found, name)[self.placed.index] for name in Margins.__dataclass_fields__})
+        """Margins of one amplifier at the conditions of the solution; `at_design` brings them to the design's."""
+        return self.circuit.margins(self.placed.parts[amplifier])
+
+    def at_design(self, figure: Array) -> Array:
+        """A figure over the conditions of the solution, over those of the design."""
+        return figure[self.placed.index]
 
 
 class Loops:
@@ -115,23 +118,27 @@ class Loops:
 
     def dc_return_ratio(self, amplifier: str) -> Array:
         """Return ratio at DC; positive is negative feedback."""
-        return self.island_of(amplifier).margins(amplifier).dc_return_ratio
+        return self._figure(amplifier, "dc_return_ratio")
 
     def phase_margin(self, amplifier: str) -> Array:
         """Least phase margin over unity crossings [deg]."""
-        return self.island_of(amplifier).margins(amplifier).phase_margin
+        return self._figure(amplifier, "phase_margin")
 
     def crossover(self, amplifier: str) -> Array:
         """Unity crossing of least phase margin [Hz]."""
-        return self.island_of(amplifier).margins(amplifier).crossover
+        return self._figure(amplifier, "crossover")
 
     def gain_margin(self, amplifier: str) -> Array:
         """Gain margin at -180° [dB]."""
-        return self.island_of(amplifier).margins(amplifier).gain_margin
+        return self._figure(amplifier, "gain_margin")
 
     def modulus_margin(self, amplifier: str) -> Array:
         """Least ``|1 + T|`` over frequency."""
-        return self.island_of(amplifier).margins(amplifier).modulus_margin
+        return self._figure(amplifier, "modulus_margin")
+
+    def _figure(self, amplifier: str, name: str) -> Array:
+        island = self.island_of(amplifier)
+        return island.at_design(getattr(island.margins(amplifier), name))
 
     def required_capacitors(self, amplifiers: Sequence[str], damping: float, margin: float) -> Compensation | None:
         """Least compensation capacitors of loops of one island searched together; see `compensation`."""

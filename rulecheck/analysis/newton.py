@@ -176,7 +176,7 @@ def solve(equations: Equations, values: Values, start: State | None = None) -> S
     the nearest condition that arrived, a walk through switching-on, sources stepped up and
     conductances to ground stepped down.
     """
-    state = power_off(equations, values.fixed.shape[0]) if start is None else iterate(equations, values, start, 30)
+    state = power_off(equations, values.fixed.shape[0]) if start is None else _hushed(equations, values, start)
     if not state.converged.all():
         _try(_from_conducting, equations, values, state)
     if not state.converged.all() and state.converged.any():
@@ -188,10 +188,16 @@ def solve(equations: Equations, values: Values, start: State | None = None) -> S
     return state
 
 
+def _hushed(equations: Equations, values: Values, start: State) -> State:
+    """Newton's method from a start near by; a wild iterate is left to the other ways, not warned of."""
+    with np.errstate(over="ignore", invalid="ignore"):
+        return iterate(equations, values, start, 30)
+
+
 def _try(way: Callable[[Equations, Values], State], equations: Equations, values: Values, state: State) -> None:
     """Put into `state` what one way reaches of the conditions that are left."""
     left = np.flatnonzero(~state.converged)
-    with np.errstate(over="ignore", invalid="ignore"):  # a wild iterate is dropped, not warned of
+    with np.errstate(over="ignore", invalid="ignore"):
         found = way(equations, take(values, left))
     improved = np.flatnonzero(found.converged)
     state.put(left[improved], found.take(improved))

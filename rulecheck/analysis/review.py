@@ -42,12 +42,21 @@ class Review:
     cache : dict, optional
         Solutions shared between reviews of nearly equal designs, such as those of a design and of its
         remedies; they are found by what they depend on.
+    seeks_remedies : bool
+        False where a remedy is being tried: whether a finding stays is asked, not how to cure it, and
+        rules spare themselves the search for remedies.
     """
 
     def __init__(
-        self, design: Design, conditions: Conditions | None = None, cache: dict[Any, Any] | None = None
+        self,
+        design: Design,
+        conditions: Conditions | None = None,
+        cache: dict[Any, Any] | None = None,
+        *,
+        seeks_remedies: bool = True,
     ) -> None:
         self.design = design
+        self.seeks_remedies = seeks_remedies
         self._given = conditions
         self._cache: dict[Any, Any] = {} if cache is None else cache
 

@@ -12,7 +12,7 @@ from functools import cached_property
 import numpy as np
 
 from ..devices.constants import AnyArray, Array, BoolArray, ComplexArray, Index, IntArray
-from .margins import Margins, margins
+from .margins import Margins
 from .small_signal import SmallSignal
 
 FASTEST = 1e14
@@ -164,7 +164,7 @@ class CircuitLoops:
             index = self.system.amplifiers.index(amplifier)
             ratio = return_ratio(self.system, self.modes, index)
             judged = self.system.linear[:, index] & self.system.converged
-            self._margins[amplifier] = margins(ratio, self.modes.frequency, judged)
+            self._margins[amplifier] = Margins(ratio, self.modes.frequency, judged, self.system.widest)
         return self._margins[amplifier]
 
     @cached_property

@@ -18,6 +18,7 @@ from rulecheck.review.remedies import Trials, edited
 from rulecheck.review.settings import read_settings
 
 if TYPE_CHECKING:
+    from rulecheck.analysis.review import Review
     from rulecheck.api import Rule
     from rulecheck.design.model import Design
     from rulecheck.findings import Finding, Remedy
@@ -66,11 +67,13 @@ class DesignReview:
     def __init__(
         self, design: Design, registry: Registry, options: Options, cache: dict[Any, Any] | None = None
     ) -> None:
+        from rulecheck.analysis.review import Review
+
         self.design = design
         self._registry = registry
         self._options = options
         self._cache: dict[Any, Any] = {} if cache is None else cache
-        judgement = self._judge(design, options.only, options.progress)
+        judgement = self._judge(Review(design, cache=self._cache), options.only, options.progress)
         self._judgement = judgement
         self.trials = Trials(design, judgement, self._judge_again)
 
@@ -122,22 +125,22 @@ class DesignReview:
         changed = load_text(edited(self.design.text, remedy), self.design.path)
         return DesignReview(changed, self._registry, self._options, self._cache)
 
-    def _judge(self, design: Design, only: Collection[str], progress: Progress | None) -> Judgement:
-        from rulecheck.analysis.review import Review
-
+    def _judge(self, review: Review, only: Collection[str], progress: Progress | None) -> Judgement:
         def is_wanted(rule: Rule) -> bool:
             named = not only or rule.name in only or rule.blocks_analysis
             return named and rule.name not in self._options.without and settings[rule.name].enabled
 
-        settings = read_settings(design, self._registry)
+        settings = read_settings(review.design, self._registry)
         rules = [rule for rule in self._registry.rules if is_wanted(rule)]
-        covering = partial(concession_for, concessions=design.concessions, on=self._options.on)
-        return Judging(Review(design, cache=self._cache), settings, covering).run(rules, progress)
+        covering = partial(concession_for, concessions=review.design.concessions, on=self._options.on)
+        return Judging(review, settings, covering).run(rules, progress)
 
     def _judge_again(self, text: str) -> Judgement:
+        from rulecheck.analysis.review import Review
         from rulecheck.design.load import load_text
 
-        return self._judge(load_text(text, self.design.path), self._judgement.ran, None)
+        changed = Review(load_text(text, self.design.path), cache=self._cache, seeks_remedies=False)
+        return self._judge(changed, self._judgement.ran, None)
 
     def _names(self, rule: str) -> bool:
         return not self._options.only or rule in self._options.only

@@ -74,7 +74,7 @@ def test_contribution(parameter):
     for k in range(len(POINTS)):
         high, low = (output(k, [(ref, key, centre + sign * step)]) for sign in (1, -1))
         wanted = abs(high - low) / (2 * step) * half
-        assert abs(found[k]) == pytest.approx(wanted, rel=2e-3, abs=2e-7)
+        assert abs(found[k]) == pytest.approx(wanted, rel=2e-3, abs=1e-10)
 
 
 def test_totals():

@@ -13,7 +13,7 @@ from rulecheck.testing import findings_of, mended
 
 DESIGNS = Path(__file__).parent / "designs"
 Board = Callable[..., Design]
-Cures = Callable[[Design, type[Rule]], dict[str, list[str]]]
+Cures = Callable[..., dict[str, list[str]]]
 
 
 @pytest.fixture
@@ -33,13 +33,13 @@ def board() -> Board:
 
 @pytest.fixture
 def cures() -> Cures:
-    """Make the edits of each remedy of a rule and review again with every rule in force.
+    """Make the edits of each remedy of a rule, or of that with a title, and review again with every rule in force.
 
     Gives, by the remedy's title, what is wrong after it: the finding that is still there, and majors and minors
     that were not there before.
     """
 
-    def after(design: Design, rule: type[Rule]) -> dict[str, list[str]]:
+    def after(design: Design, rule: type[Rule], title: str = "") -> dict[str, list[str]]:
         before = findings_of(design)
         known = {finding.id for finding in before}
         return {
@@ -51,7 +51,7 @@ def cures() -> Cures:
             for finding in before
             if finding.rule == rule.name
             for remedy in finding.remedies
-            if remedy.edits
+            if remedy.edits and title in (remedy.title, "")
         }
 
     return after

@@ -158,11 +158,10 @@ def test_smaller_feedback_resistor_cures(board, cures, name, ref):
 FIVE_VOLTS = ('voltage = "15 V"', 'voltage = "5 V"'), ('voltage = "-15 V"', 'voltage = "-5 V"')
 
 
-@pytest.mark.parametrize("name", ["vapour", "turbidity"])
-def test_supply_and_model_cure_a_short_swing(board, cures, name):
-    """At 5 V an output that stays 2 V away from the rails is short of swing: a supply of 6 V, or another model."""
-    gain = ("16.9 kohm", "49.9 kohm") if name == "vapour" else ("34 kohm", "93.1 kohm")
-    left = cures(board(name, ONE_AMBIENT, *FIVE_VOLTS, model("U3", "short-swing"), gain), OutputSwing)
+def test_supplies_and_model_cure_a_short_swing(board, cures):
+    """At 5 V an output that stays 2 V away from the rails is short of swing: supplies of 6 V, or another model."""
+    gain = ("34 kohm", "93.1 kohm")
+    left = cures(board("turbidity", ONE_AMBIENT, *FIVE_VOLTS, model("U3", "short-swing"), gain), OutputSwing)
     assert left["make VP 6 V and VN -6 V"] == []
     assert left["take both-rails for U3: its output comes nearer to the rails"] == []
 
@@ -175,17 +174,58 @@ def test_supply_and_model_cure_a_follower(board, cures):
     assert left["take both-rails for U1: its output comes nearer to the rails"] == []
 
 
-TWO_STAGES = """[parts]
-R8 = { kind = "resistor", value = "10 kohm", tolerance = "0.1 %", pins = ["VIN", "W"] }
-R9 = { kind = "resistor", value = "47 kohm", tolerance = "0.1 %", pins = ["W", "BUF"] }
-U9 = { kind = "op-amp", model = "both-rails", pins = { "IN+" = "MID", IN- = "W", OUT = "BUF", "V+" = "VP", V- = "GND" } }
-C9 = { kind = "capacitor", value = "22 pF", tolerance = "5 %", pins = ["W", "BUF"] }
-"""
+INVERTING = (
+    ('pins = ["VIN", "IN"] }', """pins = ["VIN", "W"] }
+R9 = { kind = "resistor", value = "93.1 kohm", pins = ["W", "BUF"] }"""),
+    ('"IN+" = "IN", IN- = "BUF"', '"IN+" = "MID", IN- = "W"'),
+    ('C1 = {', 'C9 = { kind = "capacitor", value = "22 pF", pins = ["W", "BUF"] }\nC1 = {'),
+    ('pins = ["BUF", "S"]', 'pins = ["BUF", "S"], package = "N1"'),
+    ('["4 V", "8 V"]', '["4.2 V", "5.8 V"]'),
+    ('R1 = { kind = "resistor", value = "10 kohm"', 'R1 = { kind = "resistor", value = "20 kohm"'),
+)
+ATTENUATED = (
+    ('"16.9 kohm", tolerance = "0.1 %", pins = ["M", "VOUT"]', '"301 kohm", tolerance = "0.1 %", pins = ["M", "Y"]'),
+    ('IN- = "M", OUT = "VOUT"', 'IN- = "M", OUT = "Y"'),
+    (
+        'pins = ["M", "VOUT"] }',
+        """pins = ["M", "Y"] }
+R9 = { kind = "resistor", value = "100 kohm", tolerance = "0.1 %", pins = ["Y", "X"] }
+R10 = { kind = "resistor", value = "5.62 kohm", tolerance = "0.1 %", pins = ["X", "VOUT"] }
+U9 = { kind = "op-amp", model = "both-rails",
+  pins = { "IN+" = "GND", IN- = "X", OUT = "VOUT", "V+" = "VP", V- = "VN" } }
+C10 = { kind = "capacitor", value = "100 nF", pins = ["VP", "GND"] }
+C11 = { kind = "capacitor", value = "100 nF", pins = ["VN", "GND"] }""",
+    ),
+)
 
 
-@pytest.mark.parametrize("ground", ["MID", "GND"])
-def test_gain_moved_to_the_next_stage_cures(board, cures, ground):
-    """A gain of -4.7 before one of -1: the same gain in all with less in the first."""
-    design = board("column", ("[parts]\n", TWO_STAGES))
-    left = cures(design, OutputSwing)
+@pytest.mark.parametrize(("name", "changes"), [("column", INVERTING), ("vapour", (ONE_AMBIENT, *ATTENUATED))])
+def test_gain_moved_to_the_next_stage_cures(board, cures, name, changes):
+    """A stage of much gain before one of little: the same gain in all with less in the first."""
+    left = cures(board(name, *changes), OutputSwing)
     assert any(title.startswith("move gain to the next stage") and not wrong for title, wrong in left.items())
+
+
+LOW_RESISTANCES = (
+    model("U2", "short-swing"),
+    ('["4 V", "8 V"]', '["4 V", "7.5 V"]'),
+    ('"10 kohm", tolerance = "0.1 %"', '"200 ohm", tolerance = "0.1 %"'),
+)
+LOW_BURDEN = (
+    ONE_AMBIENT,
+    model("U3", "short-swing"),
+    ('survives = ["-15 V", "15 V"]', 'survives = ["0.1 V", "10 V"]'),
+    ("C3 = {", 'R6 = { kind = "resistor", value = "100 ohm", tolerance = "1 %", pins = ["VOUT", "GND"] }\nC3 = {'),
+)
+
+
+@pytest.mark.parametrize(
+    ("name", "changes", "resistors"),
+    [("column", LOW_RESISTANCES, ("R1", "R2")), ("vapour", LOW_BURDEN, ("R6",))],
+)
+def test_resistor_and_model_cure_too_much_current(board, cures, name, changes, resistors):
+    """Resistors at a summing node are scaled together, a burden alone; or the amplifier is made stronger."""
+    left = cures(board(name, *changes), OutputSwing)
+    scaled = next(title for title in left if all(f"make {ref} " in title for ref in resistors))
+    assert left[scaled] == []
+    assert next(wrong for title, wrong in left.items() if title.startswith("take both-rails")) == []

@@ -90,5 +90,5 @@ def test_no_model_takes_it(board):
 )
 def test_remedies_cure(board, cures, name, changes):
     """With the supplies set right, no rule has a new major or minor."""
-    after = cures(board(name, *changes), SupplyRating)
-    assert after["make V15P 15 V and V15N -15 V"] == []
+    title = "make V15P 15 V and V15N -15 V"
+    assert cures(board(name, *changes), SupplyRating, title) == {title: []}

@@ -1,0 +1,146 @@
+"""Junctions reversed and ratings exceeded in faults. The circuits are invented."""
+
+from pathlib import Path
+
+import pytest
+from rulecheck_rules.junction_reverse import JunctionReverse
+
+from rulecheck.api import Severity
+from rulecheck.testing import assert_clean, assert_finds, design_from, findings_of
+
+ONE_AMBIENT = ('{ min = "0 degC", typ = "25 degC", max = "50 degC" }', '"25 degC"')
+CLAMPS = {
+    "vapour": (
+        ('D1 = { kind = "diode", model = "low-leakage-diode", pins = { A = "O1", K = "S1" } }\n', ""),
+        ('D2 = { kind = "diode", model = "low-leakage-diode", pins = { A = "S2", K = "L" } }\n', ""),
+    ),
+    "turbidity": (('D1 = { kind = "diode", model = "low-leakage-diode", pins = { A = "S1", K = "O1" } }\n', ""),),
+}
+
+
+@pytest.mark.parametrize("name", ["vapour", "turbidity", "column", "beam"])
+def test_sound_designs(board, name):
+    """Clamped npn and pnp stages survive a reversed input and absent supplies, as do stages without junctions."""
+    assert_clean(JunctionReverse, board(name))
+
+
+@pytest.mark.parametrize(("name", "parts"), [("vapour", ["Q1", "Q2"]), ("turbidity", ["Q1"])])
+def test_reversed_input_without_clamps(board, name, parts):
+    """The amplifier runs to its rail and takes the emitter along, in the second against the load on it."""
+    finding = assert_finds(JunctionReverse, board(name, *CLAMPS[name]), parts=parts)
+    assert finding.severity is Severity.MAJOR
+    assert "VIN at" in finding.scenario
+    breakdown, reverse = {"vapour": (6.5, 29.96), "turbidity": (6.0, 7.73)}[name]
+    assert finding.evidence[0].limit == pytest.approx(0.8 * breakdown)
+    assert finding.evidence[0].value == pytest.approx(reverse, abs=0.01)
+
+
+def test_figures_of_an_independent_solution():
+    """A cube root with its input reversed: figures of an independent solver of the same equations.
+
+    Base-emitter voltages of case `cube_root` at X = -12 V, 25 degC, in `tests/published/cases`.
+    """
+    cases = Path(__file__).parents[1] / "published" / "cases"
+    text = (cases / "cube_root.toml").read_text(encoding="utf-8")
+    text = text.replace('range = ["50 mV", "5 V"]', 'range = ["50 mV", "5 V"]\nsurvives = ["-12 V", "5 V"]')
+    text = text.replace("[nets.GND]", '[environment]\nambient = "25 degC"\n\n[nets.GND]')
+    design = design_from(text, (cases / "case_parts.toml").read_text(encoding="utf-8"))
+    finding = assert_finds(JunctionReverse, design, parts=["Q1", "Q2", "Q4"])
+    figures = [evidence.value for evidence in finding.evidence]
+    assert figures == pytest.approx([27.552607659840564, 13.799999999943926, 12.462408475325391], abs=1e-3)
+
+
+def test_breakdown_that_the_model_does_not_say(board):
+    """5 V are assumed, the least that makers of small transistors state, and the message says so."""
+    unknown = board("turbidity", *CLAMPS["turbidity"], ('"close-pnp", package = "M1"', '"quiet-pnp", package = "M1"'))
+    finding = assert_finds(JunctionReverse, unknown, parts=["Q1"])
+    assert finding.evidence[0].limit == pytest.approx(4.0)
+    assert "assumed" in finding.message
+
+
+def test_input_that_does_not_say_what_it_survives(board):
+    """Without `survives` the rule observes that it cannot know, and judges the range alone."""
+    finding = assert_finds(JunctionReverse, board("vapour", *CLAMPS["vapour"], (', survives = ["-15 V", "15 V"]', "")))
+    assert finding.severity is Severity.OBSERVATION
+    assert finding.nets == ("VIN",)
+    assert "nets.VIN.survives" in finding.remedies[0].title
+
+
+def test_photodiode_that_does_not_say_what_it_survives(board):
+    """A photodiode is an input too."""
+    finding = assert_finds(JunctionReverse, board("beam", (', survives = ["0 A", "1 mA"]', "")), parts=["PD1"])
+    assert finding.severity is Severity.OBSERVATION
+
+
+@pytest.mark.parametrize("name", ["vapour", "turbidity"])
+def test_clamps_and_diodes_cure(board, cures, name):
+    """Clamps from output to summing node, and diodes across the junctions turned for npn or pnp, each cure it."""
+    left = cures(board(name, ONE_AMBIENT, *CLAMPS[name]), JunctionReverse)
+    assert next(wrong for title, wrong in left.items() if title.startswith("clamp U1")) == []
+    way = "emitter to base" if name == "vapour" else "base to emitter"
+    assert next(wrong for title, wrong in left.items() if way in title) == []
+
+
+def low_input(name):
+    """Changes to 1 kohm at the input of 1 to 100 mV, and 330 ohm at the emitter: faults drive much current."""
+    ends = '["1 mV", "100 mV"]' if name == "vapour" else '["-100 mV", "-1 mV"]'
+    usual = '["0.1 V", "10 V"]' if name == "vapour" else '["-10 V", "-0.1 V"]'
+    return (
+        ONE_AMBIENT,
+        (usual, ends),
+        ('"100 kohm", tolerance = "0.1 %", pins = ["VIN"', '"1 kohm", tolerance = "0.1 %", pins = ["VIN"'),
+        ('"10 kohm", tolerance = "1 %", pins = ["O1"', '"330 ohm", tolerance = "1 %", pins = ["O1"'),
+    )
+
+
+@pytest.mark.parametrize("name", ["vapour", "turbidity"])
+def test_collector_current(board, cures, name):
+    """24 V at 1 kohm drive 24 mA through a transistor of 20 mA; a resistor at the amplifier's output limits it."""
+    design = board(name, *low_input(name), ('survives = ["-15 V", "15 V"]', 'survives = ["-24 V", "24 V"]'))
+    finding = assert_finds(JunctionReverse, design, parts=["Q1"])
+    assert finding.evidence[0].value == pytest.approx(24e-3, rel=0.02)
+    assert finding.evidence[0].limit == pytest.approx(20e-3)
+    left = cures(design, JunctionReverse)
+    assert next(wrong for title, wrong in left.items() if "in series with OUT of U1" in title) == []
+
+
+@pytest.mark.parametrize("name", ["vapour", "turbidity"])
+def test_output_current(board, cures, name):
+    """15 V at 1 kohm ask 15 mA of an output of 10 mA; a resistor in series or a stronger amplifier cures it."""
+    weak = 'U1 = { kind = "op-amp", model = "both-rails"', 'U1 = { kind = "op-amp", model = "short-swing"'
+    design = board(name, *low_input(name), weak)
+    finding = assert_finds(JunctionReverse, design, parts=["U1"])
+    assert finding.evidence[0].value == pytest.approx(15e-3, rel=0.05)
+    left = cures(design, JunctionReverse)
+    assert next(wrong for title, wrong in left.items() if "in series with OUT of U1" in title) == []
+    assert next(wrong for title, wrong in left.items() if title.startswith("take both-rails for U1")) == []
+
+
+@pytest.mark.parametrize("name", ["vapour", "turbidity"])
+def test_forward_current_of_a_clamp(board, cures, name):
+    """The clamp carries the 15 mA of the reversed input, and is rated for 10 mA."""
+    design = board(name, *low_input(name), ("low-leakage-diode", "weak-diode"))
+    finding = next(f for f in findings_of(design, JunctionReverse) if f.subject == "forward current")
+    assert finding.parts == ("D1",)
+    assert cures(design, JunctionReverse)["take low-leakage-diode for D1"] == []
+
+
+@pytest.mark.parametrize("name", ["vapour", "turbidity"])
+def test_voltage_ratings(board, cures, name):
+    """With a supply absent the summing node follows the input to 10 V: too much for an 8 V transistor, a 5 V diode."""
+    models = ("monolithic-pair-npn-tight", "low-voltage-npn"), ("low-leakage-diode", "weak-diode")
+    design = board(name, ONE_AMBIENT, *(models if name == "vapour" else models[1:]))
+    found = {(f.parts, f.subject): f for f in findings_of(design, JunctionReverse)}
+    assert found[("D1",), "reverse voltage"].evidence[0].value == pytest.approx(10, abs=0.2)
+    left = cures(design, JunctionReverse)
+    assert left["take low-leakage-diode for D1"] == []
+    if name == "vapour":
+        assert found[("Q1",), "collector-emitter voltage"].evidence[0].value == pytest.approx(10, abs=0.2)
+        assert next(wrong for title, wrong in left.items() if title.startswith("take monolithic-pair-npn")) == []
+
+
+def test_what_is_usual_is_another_matter(board):
+    """A current that is over its rating in normal operation too is left to the rules about that."""
+    heavy = ('load = "10 kohm"', 'load = "100 ohm"'), ("both-rails", "short-swing")
+    found = findings_of(board("column", *heavy, ('["4 V", "8 V"]', '["4 V", "7.5 V"]')), JunctionReverse)
+    assert not [f for f in found if f.parts == ("U2",)]
