@@ -30,13 +30,15 @@ from rulecheck.api import (
 )
 
 from ._edits import add_diode, add_in_series, set_parameter
+from ._leakage import Leakage, leakages
 from ._models import other_models
 from ._protection import KNEE, leakage_bound, quietest_diode, rated, series_resistor
-from ._saturation import Floats, asked_everywhere
 
 INPUTS = ("IN+", "IN-")
 CLAMPED = 1e-3
 """Amperes that a clamp of an input is given to carry."""
+CLAMP_DROP = 0.8
+"""Volts across a clamp that conducts."""
 
 
 class InputProtection(Rule):
@@ -98,53 +100,21 @@ def _clamp_current(review: Review, settings: InputProtection.Settings, part: Par
 
 
 def _leaky(review: Review, settings: InputProtection.Settings) -> Iterator[Finding]:
-    points, nodes = review.operating_points, {n.net: n.amplifier for n in review.structure.summing_nodes}
-    clamps = [p for p in review.design.parts.values() if p.kind == "diode" and p.ref not in _at_work(review)]
-    at_nodes = [(part, pin, net) for part in clamps for pin, net in part.pins.items() if net in nodes]
-    if not at_nodes:
-        return
-    names = ("saturation_current", "reverse_leakage")
-    leaking = review.re_solve(values={(p.ref, name): getattr(p, name).max for p, _, _ in at_nodes for name in names})
-    hot = asked_everywhere(review) & (review.conditions.values["ambient"] == review.design.ambient.max)
-    for part, pin, net in at_nodes:
-        leakage = np.where(hot & points.linear(nodes[net]), np.abs(leaking.current(part.ref, pin)), np.nan)
-        with np.errstate(all="ignore"):
-            ratio = leakage / _signal(review, net)
-        if np.isfinite(ratio).any() and np.nanmax(ratio) > settings.leakage:
-            yield _leakage_finding(review, settings, part, net, ratio, leakage)
+    for leak in leakages(review):
+        if np.isfinite(leak.ratio).any() and np.nanmax(leak.ratio) > settings.leakage:
+            yield _leakage_finding(review, settings, leak)
 
 
-def _at_work(review: Review) -> set[str]:
-    """Diodes that carry a signal."""
-    loops = review.structure.junction_loops
-    return {log.part for log in review.structure.log_diodes} | {ref for loop in loops for ref in loop.parts}
-
-
-def _signal(review: Review, net: str) -> Floats:
-    """Largest current that a part other than a clamp brings to a net or takes from it, at each condition [A]."""
-    points, at_work = review.operating_points, _at_work(review)
-    currents = [
-        np.abs(points.current(part.ref, pin))
-        for part in review.design.parts.values()
-        if part.kind != "diode" or part.ref in at_work
-        for pin, other in part.pins.items()
-        if other == net
-    ]
-    return np.max(currents, axis=0)
-
-
-def _leakage_finding(
-    review: Review, settings: InputProtection.Settings, part: Part, net: str, ratio: Floats, leakage: Floats
-) -> Finding:
-    worst = review.operating_points.worst(ratio)
-    amps = float(leakage[worst.index])
+def _leakage_finding(review: Review, settings: InputProtection.Settings, leak: Leakage) -> Finding:
+    part, net, worst = leak.part, leak.net, review.operating_points.worst(leak.ratio)
+    amps = float(leak.current[worst.index])
     signal = amps / worst.value
     return Finding(
         f"{part.ref}: leaks {format_quantity(amps, 'A', 3)} into {net} at the hottest, {worst.value * 100:.2g} % of a "
         f"signal of {format_quantity(signal, 'A', 3)}, limit {settings.leakage * 100:.2g} %",
         parts=[part.ref], nets=[net], severity=Severity.MINOR, conditions=worst.conditions, subject="leakage",
         consequence=f"the signal read is off by {worst.value * 100:.2g} % there, changing with temperature",
-        evidence=[Evidence("leakage over signal current", worst.value, "1", settings.leakage, "<=", over=ratio,
+        evidence=[Evidence("leakage over signal current", worst.value, "1", settings.leakage, "<=", over=leak.ratio,
                            basis="limit")],
         remedies=_quieter(review, part),
     )  # fmt: skip
@@ -190,16 +160,25 @@ def _is_usual(review: Review, part: Part) -> bool:
 
 def _against_reversal(review: Review, part: Part, pin: str, worst: Worst) -> Iterator[Remedy]:
     design, net = review.design, part.pins[pin]
-    diode = quietest_diode(review)
-    ground = next((name for name, entry in design.nets.items() if entry.role == "ground"), None)
-    if diode is not None and ground is not None and np.nanmin(review.operating_points.voltage(net)) > -KNEE:
+    diode, level = quietest_diode(review), _clamping_level(review, part, pin)
+    if diode is not None and level is not None:
         edits: list[Edit] = []
         if review.structure.summing_node(net) is None:
             # What drives the net may be as stiff as a source: a resistor takes the voltage off the clamp.
             ohm = nearest(abs(float(review.faults.voltage(net)[worst.index])) / CLAMPED, "E24")
             edits = add_in_series(design, ohm, part.ref, pin)
             net = next(edit.to for edit in edits if isinstance(edit, Move))
-        title = f"clamp {pin} of {part.ref} with {diode} from {ground}{' behind a resistor' if edits else ''}"
-        yield Remedy(title, [*edits, add_diode(design, diode, ground, net, edits)])
+        title = f"clamp {pin} of {part.ref} with {diode} from {level}{' behind a resistor' if edits else ''}"
+        yield Remedy(title, [*edits, add_diode(design, diode, level, net, edits)])
     why = "its output does not reverse"
     yield from other_models(review, [part.ref], lambda model: not model.phase_reversal, ("phase_reversal",), why)
+
+
+def _clamping_level(review: Review, part: Part, pin: str) -> str | None:
+    """Ground or reference from which a diode holds an input in its range without conducting in normal use."""
+    points = review.operating_points
+    floor = float(np.nanmax(points.voltage(part.pins["V-"]))) + part.input_headroom.low.max
+    ceiling = float(np.nanmin(points.voltage(part.pins[pin]))) + KNEE
+    fixed = {n: points.voltage(n) for n, net in review.design.nets.items() if net.role in ("ground", "reference")}
+    fitting = [n for n, v in fixed.items() if np.nanmin(v) - CLAMP_DROP >= floor and np.nanmax(v) <= ceiling]
+    return min(fitting, key=lambda n: float(np.nanmin(fixed[n])), default=None)

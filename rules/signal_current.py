@@ -34,6 +34,7 @@ from ._currents import better_amplifiers, input_magnitude, narrowed, offset_limi
 
 Array = npt.NDArray[np.float64]
 Mask = npt.NDArray[np.bool_]
+USUAL_RANGE = 100.0  # of a log stage: where the range is free, two decades are easily had
 RATINGS = ("collector_current", "forward_current")
 
 
@@ -134,12 +135,13 @@ def _positive(
         yield Remedy(f"turn the signal round, or log it with a junction of the other kind than {kind}")
         return
     found = disturbance(review, first)
-    ratio = _over_errors(review, found, group)
-    x = input_magnitude(found.points, first)
-    usable = (ratio > 0) & (np.asarray(x) > 0)
-    needed = settings.over_errors * MARGIN * np.asarray(x)[usable] / ratio[usable]
-    least = float(inputs[good].min())
-    yield from narrowed(review, first, least=min(least, float(needed.max())) if needed.size else least)
+    ratio, x = _over_errors(review, found, group), input_magnitude(found.points, first)
+    assert x is not None
+    usable = (ratio > 0) & (x > 0)
+    floors = settings.over_errors * MARGIN * x[usable] / ratio[usable]
+    ends = {float(inputs[good].max()) / USUAL_RANGE, float(floors.max(initial=0.0))} - {0.0}
+    for least in sorted(ends):
+        yield from narrowed(review, first, least=least)
 
 
 def _over_errors(review: Review, found: Disturbance, group: Sequence[Carrier]) -> Array:

@@ -132,9 +132,11 @@ def _excitation(points: Solution, source: str) -> Array:
     network = points.network
     size = points.equations.size + len(network.amplifiers)
     out = np.zeros((len(points.converged), size, 2))
-    driving = [i for i, e in enumerate(network.sources) if e.key in ((source, "drive"), (source, "photocurrent"))]
+    driving = [e for e in network.sources if e.key in ((source, "drive"), (source, "photocurrent"))]
     if driving:
-        out[:, : points.equations.size, 0] = -points.equations.incidence[driving[0], :-1]
+        for node, into in ((driving[0].a, -1.0), (driving[0].b, 1.0)):
+            if node < network.free:
+                out[:, node, 0] += into
         return out
     name = f"{source}.source"
     opened = _freed(points, network.nodes[name if name in network.nodes else source])

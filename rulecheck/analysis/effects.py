@@ -13,7 +13,6 @@ from .conditions import Conditions
 from .operating_points import OperatingPoints
 from .queries import Carrier, at_typical, forward_current, in_use, is_regulated, points_in_use
 from .review import Cost
-from .transfer import law_values
 
 if TYPE_CHECKING:
     from .review import Review
@@ -209,8 +208,6 @@ class SupplyEffect:
 def supply_effect(review: Review, ref: str, supply: str) -> SupplyEffect | None:
     """What the tolerance of a supply does to the outputs through the current of a junction, by solving again.
 
-    What the law of an output itself has of the supply is no effect.
-
     Parameters
     ----------
     review : Review
@@ -231,8 +228,9 @@ def supply_effect(review: Review, ref: str, supply: str) -> SupplyEffect | None:
     for end in (net.voltage.min, net.voltage.max):
         moved = Conditions({**before.conditions.values, supply: np.full(before.conditions.size, end)})
         after = review.solve(moved)
-        followed = np.abs(forward_current(after, ref) / forward_current(before, ref) - 1)
-        if np.nanmax(followed, initial=0.0) > FOLLOWS * abs(end / net.voltage.typ - 1):
+        with np.errstate(all="ignore"):
+            followed = np.abs(forward_current(after, ref) / forward_current(before, ref) - 1)
+        if np.nanmax(followed, initial=0.0, where=np.isfinite(followed)) > FOLLOWS * abs(end / net.voltage.typ - 1):
             found += [e for output in outputs(review) if (e := _effect(review, output, before, after, rows))]
     return max(found, key=lambda effect: effect.share, default=None)
 
@@ -240,9 +238,7 @@ def supply_effect(review: Review, ref: str, supply: str) -> SupplyEffect | None:
 def _effect(
     review: Review, output: str, before: OperatingPoints, after: OperatingPoints, rows: BoolArray
 ) -> SupplyEffect | None:
-    laws = [r for r in review.design.requirements.values() if r.output == output and r.law is not None]
-    lawful = law_values(laws[0], after) - law_values(laws[0], before) if laws else 0.0
-    moved = after.voltage(output) - before.voltage(output) - lawful
+    moved = after.voltage(output) - before.voltage(output)
     steady = is_regulated(review, before, output) & is_regulated(review, after, output)
     with np.errstate(all="ignore"):
         share = np.where(steady, np.abs(moved) / _scale(review, output, before.voltage(output), rows), np.nan)
@@ -253,8 +249,8 @@ def _effect(
 
 
 def _scale(review: Review, output: str, voltage: Array, rows: BoolArray) -> Array:
-    """Reading of an output; of one that crosses zero, its change for a whole change of an input's logarithm."""
-    if np.nanmin(voltage) * np.nanmax(voltage) > 0:
+    """Reading of an output; of one that crosses zero, or is not known somewhere, its change for a whole change of an input's logarithm."""
+    if (voltage > 0).all() or (voltage < 0).all():
         return np.abs(voltage)
     slopes = [np.abs(review.log_slope(output, name)[rows]) for name in review.design.inputs]
     return np.fmax.reduce(slopes) if slopes else np.abs(voltage)

@@ -121,7 +121,7 @@ def build_network(design: Design, with_clamps: bool = False) -> Network:
     _check_pins(design)
     network = Network(design, with_clamps)
     _number_nodes(network)
-    for ref, part in design.parts.items():
+    for ref, part in _in_circuit(design).items():
         _add_part(network, ref, part)
     _add_inputs(network)
     network.terminals = np.array(
@@ -142,8 +142,21 @@ REQUIRED_PINS = {
 TWO_PINS = ("resistor", "capacitor", "voltage-source", "current-source")
 
 
+def _in_circuit(design: Design) -> dict[str, Part]:
+    """Parts that the equations hold: spare ones with a pin or an input left open are not."""
+    pins = [net for part in design.parts.values() for net in part.pins.values()]
+
+    def is_open(part: Part) -> bool:
+        missing = [p for p in REQUIRED_PINS.get(part.kind, ()) if p not in part.pins]
+        inputs = [part.pins[p] for p in ("IN+", "IN-") if p in part.pins]
+        floating = [n for n in inputs if pins.count(n) == 1 and design.nets[n].role is None]
+        return bool(missing or floating or (part.kind in TWO_PINS and len(part.pins) != 2))
+
+    return {ref: part for ref, part in design.parts.items() if not (part.spare and is_open(part))}
+
+
 def _check_pins(design: Design) -> None:
-    for ref, part in design.parts.items():
+    for ref, part in _in_circuit(design).items():
         missing = [p for p in REQUIRED_PINS.get(part.kind, ()) if p not in part.pins]
         if missing or (part.kind in TWO_PINS and len(part.pins) != 2):
             names = ", ".join(missing) or "one of two"
@@ -200,8 +213,11 @@ def _internal(network: Network, part: Part, pin: str) -> int:
 
 def _add_part(network: Network, ref: str, part: Part) -> None:
     pins = {pin: network.nodes[net] for pin, net in part.pins.items()}
+    # In faults whole chains of junctions are off, and nodes hang on picosiemens or less. A bulk resistance as a
+    # conductance of siemens would drown these in rounding; as a branch with its own current it does not.
+    terminals = network.branches if network.with_clamps else network.resistors
     for pin, name in _resistive_terminals(part):
-        network.resistors.append(Element((ref, name), pins[pin], network.nodes[f"{ref}.{pin}"]))
+        terminals.append(Element((ref, name), pins[pin], network.nodes[f"{ref}.{pin}"]))
     adders = {
         "resistor": _add_resistor, "potentiometer": _add_potentiometer, "diode": _add_diode,
         "photodiode": _add_photodiode, "voltage-source": _add_voltage_source,

@@ -257,15 +257,27 @@ def _step_conductances(equations: Equations, values: Values) -> State:
 
 NODE_CAPACITANCE = 10e-12
 AMPLIFIER_LAG = 1e-7
-FIRST_STEP, LAST_STEP, STEPS = 1e-9, 1e4, 90
+FIRST_STEP, LAST_STEP, MOST_STEPS = 1e-9, 1e4, 240
+GROWTH, RETREAT = 2.0, 0.1
 
 
 def _switch_on(equations: Equations, values: Values) -> State:
-    """Pseudo-transient from power-off: implicit steps in time that grow until nothing moves any more."""
+    """Pseudo-transient from power-off: implicit steps in time that grow until nothing moves any more.
+
+    Every condition has a step of its own, which grows where a step succeeded and falls back where not.
+    """
     size = values.fixed.shape[0]
     state = power_off(equations, size)
     matrix = _diagonal(equations, NODE_CAPACITANCE, -AMPLIFIER_LAG)
-    for step in np.geomspace(FIRST_STEP, LAST_STEP, STEPS):
-        aid = Aid(np.full(size, 1 / step), matrix, state.x.copy())
-        state = iterate(equations, values, state, 25, aid, loose=1e5)
+    step = np.full(size, FIRST_STEP)
+    for _ in range(MOST_STEPS):
+        walking = np.flatnonzero((step < LAST_STEP) & (step > FIRST_STEP * 1e-6))
+        if not walking.size:
+            break
+        here = state.take(walking)
+        aid = Aid(1 / step[walking], matrix, here.x.copy())
+        there = iterate(equations, take(values, walking), here, 15, aid, loose=1e3)
+        went = np.flatnonzero(there.converged)
+        state.put(walking[went], there.take(went))
+        step[walking] *= np.where(there.converged, GROWTH, RETREAT)
     return iterate(equations, values, state, 60)

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any, TypeVar
 import numpy as np
 
 from ..devices import amplifier, diode, passive, transistor
-from ..devices.constants import Array, Index
+from ..devices.constants import NOMINAL_TEMPERATURE, Array, Index
 from ..devices.diode import HotDiode
 from ..devices.transistor import HotTransistor
 from .network import Element
@@ -22,6 +22,8 @@ if TYPE_CHECKING:
 Overrides = Mapping[tuple[str, str], Any]
 T = TypeVar("T")
 INDEFINITE = 1e30  # ohm: what an infinite resistance is taken as
+LINK = 1e-9
+"""Resistance of a link [ohm]: a milliampere drops a picovolt in it, and links in parallel have an answer."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -153,7 +155,7 @@ def compute_values(
     amps = network.amplifiers
     hot = columns([temperature(r) for r in network.transistors], size)
     table = p.table(network.transistors, TRANSISTOR_NAMES, size)
-    table["mismatch"] = columns([p.of(r, "vbe_offset") + p.change(r, "mismatch") for r in network.transistors], size)
+    table["mismatch"] = columns([context.mismatch(r) for r in network.transistors], size)
     return Values(
         fixed=columns([context.fixed(name) for name in network.fixed], size),
         conductance=columns([1 / np.minimum(context.resistance(e), INDEFINITE) for e in network.resistors], size),
@@ -165,7 +167,7 @@ def compute_values(
         diode=_hot_diodes(context),
         clamp=diode.heat_clamps(columns([context.temperature(e.key[0]) for e in network.clamps], size)),
         gain=columns([p.of(r, "open_loop_gain") for r in amps], size),
-        offset=columns([p.of(r, "offset") for r in amps], size),
+        offset=columns([context.offset(r) for r in amps], size),
         low_headroom=columns([context.headroom(r, "low") for r in amps], size),
         high_headroom=columns([context.headroom(r, "high") for r in amps], size),
         output_resistance=columns([p.of(r, "output_resistance") for r in amps], size),
@@ -212,7 +214,20 @@ class _Context:
         value = self.conditions.values[node]
         if net.role == "input":
             return np.asarray(value)
-        return value * passive.scale(self.ambient, net.tempco or 0.0) * self.present(node)
+        tempco = net.tempco + self.parameters.change(node, "voltage_tempco")
+        return value * passive.scale(self.ambient, tempco) * self.present(node)
+
+    def mismatch(self, ref: str) -> Array:
+        """What adds to the base-emitter voltage of a transistor."""
+        p = self.parameters
+        return p.of(ref, "vbe_offset") + p.change(ref, "mismatch") + self._drift(ref, "mismatch_drift")
+
+    def offset(self, ref: str) -> Array:
+        """Offset voltage of an amplifier."""
+        return self.parameters.of(ref, "offset") + self._drift(ref, "offset_drift")
+
+    def _drift(self, ref: str, name: str) -> Array:
+        return self.parameters.change(ref, name) * (self.temperature(ref) - NOMINAL_TEMPERATURE)
 
     def resistance(self, element: Element) -> Array:
         ref, name = element.key
@@ -224,9 +239,9 @@ class _Context:
             return np.zeros(1)
         value = p.of(ref, "value") * passive.scale(self.temperature(ref), p.of(ref, "tempco"))
         if part.kind == "resistor":
-            return value
+            return np.maximum(value, LINK)
         position = self.conditions.values[ref]
-        return value * (position if name == "lower" else 1 - position)
+        return np.maximum(value * (position if name == "lower" else 1 - position), LINK)
 
     def branch_voltage(self, element: Element) -> Array:
         ref, name = element.key

@@ -140,7 +140,8 @@ class DesignReview:
         from rulecheck.design.load import load_text
 
         changed = Review(load_text(text, self.design.path), cache=self._cache, seeks_remedies=False)
-        return self._judge(changed, self._judgement.ran, None)
+        wanted = {*self._judgement.ran, *(rule.rule for rule in self._judgement.not_run)}
+        return self._judge(changed, wanted, None)
 
     def _names(self, rule: str) -> bool:
         return not self._options.only or rule in self._options.only
