@@ -106,7 +106,7 @@ def _registry(rule: type[Rule] | str | None) -> tuple[Registry, tuple[str, ...]]
     if isinstance(rule, str):
         registry = installed_registry()
         registry.check_names([rule])
-        return registry_of([type(registry.entries[rule].rule)]), (rule,)
+        return registry, (rule,)
     return registry_of([rule]), (rule.name,)
 
 

@@ -187,15 +187,11 @@ class Unit:
             return core_schema.nullable_schema(schema, metadata=schema["metadata"])
         return schema
 
-    def __get_pydantic_json_schema__(
-        self, schema: CoreSchema, handler: GetJsonSchemaHandler
-    ) -> dict[str, Any]:
+    def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> dict[str, Any]:
         taken = [self._quantity_schema()]
         if schema.get("metadata", {}).get("spread"):
             ends = dict.fromkeys(_ENDS, self._quantity_schema())
-            taken += [
-                {"type": "object", "properties": ends, "additionalProperties": False, "minProperties": 1}
-            ]
+            taken += [{"type": "object", "properties": ends, "additionalProperties": False, "minProperties": 1}]
         if schema["type"] == "nullable":
             taken += [{"type": "null"}]
         return taken[0] if len(taken) == 1 else {"anyOf": taken}

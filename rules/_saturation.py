@@ -121,8 +121,7 @@ def first_at_limit(
                 causes[group] = causes.get(group, np.zeros_like(there)) | there
     least = [g for g in causes if not any(other < g for other in causes)]
     return [
-        ([n for n in names if n in g], np.any([m for other, m in causes.items() if g <= other], axis=0))
-        for g in least
+        ([n for n in names if n in g], np.any([m for other, m in causes.items() if g <= other], axis=0)) for g in least
     ]
 
 

@@ -110,9 +110,7 @@ def swing_remedies(review: Review, demand: Demand, amplifier: str, margin: Float
     return remedies or [Remedy("split the gain between this stage and the next, or narrow the range")]
 
 
-def _distances(
-    review: Review, demand: Demand, amplifier: str, margin: Floats, judged: Mask
-) -> tuple[Floats, Floats]:
+def _distances(review: Review, demand: Demand, amplifier: str, margin: Floats, judged: Mask) -> tuple[Floats, Floats]:
     """Headroom that would leave the margin to the low and to the high limit, at each condition [V]."""
     points, pins = review.operating_points, review.design.parts[amplifier].pins
     volts = np.where(judged, demand.output(amplifier), np.nan)

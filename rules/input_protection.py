@@ -125,7 +125,10 @@ def _quieter(review: Review, part: Part) -> list[Remedy]:
     if quiet is None or leakage_bound(review.design.models[quiet].parameters) >= leakage_bound(part):
         return [Remedy("take a clamp of less leakage, or hold its other end at the level of the summing node")]
     return [Remedy(f"take {quiet} for {part.ref}", [set_parameter(part.ref, "model", quiet)])]
-'''+'''
+
+
+"""+"""
+
 
 def _reversal(review: Review, part: Part) -> Iterator[Finding]:
     points = review.faults

@@ -67,8 +67,11 @@ class JunctionReverse(Rule):
                     groups.setdefault((stress.rating, *_cause(review, flow, stress)), []).append(stress)
         for (_, *causes), stresses in groups.items():
             yield _finding(review, stresses, causes)
-        yield from (_survival_unknown(name, name in review.design.nets)
-                    for name, source in review.design.inputs.items() if source.survives is None)
+        yield from (
+            _survival_unknown(name, name in review.design.nets)
+            for name, source in review.design.inputs.items()
+            if source.survives is None
+        )
 
 
 @dataclass(frozen=True)

@@ -15,15 +15,15 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from ..devices.constants import Array, BoolArray, Index, IntArray
+from ..devices.constants import Array, BoolArray, IntArray
 from .conditions import Conditions, Row, from_rows
+from .latching_starts import Batch, all_starts
 from .newton import State, iterate
 from .settling import STRAY, settle
 from .small_signal import linearise
 from .solution import LEAST_TEMPERATURE, MOST_TEMPERATURE, Solution
 from .stability import analyse_loops
 from .thermal import build_thermal
-from .values import Values, compute_values
 
 if TYPE_CHECKING:
     from ..design.model import Design
@@ -34,8 +34,6 @@ if TYPE_CHECKING:
 MOST_CONDITIONS = 48
 DIFFERS, DIFFERS_BY_SHARE = 1e-3, 1e-3
 """A solution is another one where some net is off by more than this many volts and this share of its voltage."""
-PUSH = 1e3  # V at the input of an amplifier: beyond what any feedback brings
-CUT = 5.0  # V off the base-emitter voltage of a transistor
 ITERATIONS = 80
 THERMAL_ROUNDS, TEMPERATURE_STEP = 30, 1e-4
 
@@ -150,52 +148,6 @@ def search(points: OperatingPoints, faults: OperatingPoints) -> Latching:
     return Latching(points, tuple(found), starts, lost)
 
 
-@dataclass(frozen=True)
-class _Origin:
-    """Where a start comes from: a part held somewhere, or a row of the fault scenarios."""
-
-    part: str = ""
-    words: str = ""
-    amplifier: int = -1
-    transistor: int = -1
-    volts: float = 0.0
-    fault: int = -1
-
-
-@dataclass
-class _Batch:
-    """Starts of one circuit: to which rows of its nominal solution they belong, at which temperatures."""
-
-    points: Solution
-    rows: IntArray
-    heat: dict[str, Array]
-
-    @classmethod
-    def at(cls, points: Solution, rows: IntArray) -> _Batch:
-        """At the temperatures of the nominal solution."""
-        return cls(points, rows, {ref: points.temperature(ref)[rows] for ref in points.network.design.parts})
-
-    def take(self, index: Index) -> _Batch:
-        """The chosen starts."""
-        return _Batch(self.points, self.rows[index], {ref: t[index] for ref, t in self.heat.items()})
-
-    @property
-    def conditions(self) -> Conditions:
-        return self.points.conditions.take(self.rows)
-
-    @property
-    def values(self) -> Values:
-        points = self.points
-        return compute_values(points.network, self.conditions, self.heat.__getitem__, points.parameters)
-
-    def solution(self, state: State) -> Solution:
-        """The batch with a state as if it were its solution."""
-        points = self.points
-        return Solution(
-            points.network, points.equations, self.conditions, self.values, state, self.heat, points.parameters
-        )
-
-
 class _Search:
     """Second solutions of one circuit.
 
@@ -204,25 +156,22 @@ class _Search:
     starts, lost : int
     rows : ndarray of int
         Row of the nominal solution of each that was found.
-    origins : list of _Origin
+    origins : list of Origin
     found : Solution
     """
 
     def __init__(self, points: Solution, faults: Solution) -> None:
-        pushed = _pushed(points)
-        faulty = _from_faults(points, faults)
-        rows = np.concatenate([pushed[0], faulty[0]])
-        origins = [*pushed[2], *faulty[2]]
-        batch, state = _Batch.at(points, rows), _joined(pushed[1], faulty[1])
-        state = settle(points, batch.values, state)
-        self.starts, self.lost = len(rows), int((~state.converged).sum())
-        others = np.flatnonzero(state.converged & _differs(points, rows, state.x))
-        others = others[_first_of_each(points, rows[others], state.x[others])]
+        starts = all_starts(points, faults)
+        batch = Batch.at(points, starts.rows)
+        state = settle(points, batch.values(), starts.state)
+        self.starts, self.lost = len(starts.rows), int((~state.converged).sum())
+        others = np.flatnonzero(state.converged & _differs(points, starts.rows, state.x))
+        others = others[_first_of_each(points, starts.rows[others], state.x[others])]
         batch, state = _warmed(batch.take(others), state.take(others))
-        solution = batch.solution(state)
-        keep = np.flatnonzero(state.converged & _differs(points, batch.rows, state.x) & _is_stable(solution))
+        stable = _is_stable(batch.solution(state))
+        keep = np.flatnonzero(state.converged & stable & _differs(points, batch.rows, state.x))
         self.rows = batch.rows[keep]
-        self.origins = [origins[i] for i in others[keep]]
+        self.origins = [starts.origins[i] for i in others[keep]]
         self.found = batch.take(keep).solution(state.take(keep))
 
     def records(self, placed: Placed, fault: Placed, scenarios: Sequence[str]) -> list[SecondPoint]:
@@ -232,17 +181,72 @@ class _Search:
         voltages = {name: self.found.voltage(solved) for name, solved in placed.nets.items()}
         records = []
         for i, (row, origin) in enumerate(zip(self.rows, self.origins, strict=True)):
-            if origin.fault < 0:
-                words = f"{here[origin.part]} {origin.words}"
-            else:
-                words = scenarios[int(np.flatnonzero(fault.index == origin.fault)[0])]
+            index = _first(placed.index == row)
+            if index is None:  # a condition that another place of the same circuit meets
+                continue
+            scenario = _first(fault.index == origin.fault)
+            start = f"{here[origin.part]} {origin.words}" if origin.part else "a fault scenario"
             records.append(
                 SecondPoint(
-                    index=int(np.flatnonzero(placed.index == row)[0]),
-                    start=words,
+                    index=index,
+                    start=start if scenario is None else scenarios[scenario],
                     part=here.get(origin.part),
                     states={ref: str(state[i]) for ref, state in states.items()},
                     voltages={net: float(v[i]) for net, v in voltages.items()},
                 )
             )
         return records
+
+
+def _first(mask: BoolArray) -> int | None:
+    where = np.flatnonzero(mask)
+    return int(where[0]) if where.size else None
+
+
+def _same(one: Array, other: Array) -> BoolArray:
+    """Whether node voltages are those of one solution; nodes last."""
+    return np.all(np.abs(one - other) <= DIFFERS + DIFFERS_BY_SHARE * np.abs(other), axis=-1)
+
+
+def _differs(points: Solution, rows: IntArray, x: Array) -> BoolArray:
+    """Where a state is not the nominal solution of its row."""
+    free = points.network.free
+    return ~_same(x[:, :free], points.state_vector.x[rows, :free])
+
+
+def _first_of_each(points: Solution, rows: IntArray, x: Array) -> IntArray:
+    """Indices of states that are none of those before them at the same row."""
+    free = points.network.free
+    alike = _same(x[:, None, :free], x[None, :, :free]) & (rows[:, None] == rows)
+    return np.flatnonzero(~np.tril(alike, -1).any(axis=1))
+
+
+def _is_stable(solution: Solution) -> BoolArray:
+    """Where all natural frequencies lie left of the axis, with stray capacitance at every node."""
+    system = linearise(solution)
+    strays = np.zeros(system.capacitance.shape[-1])
+    strays[: solution.network.free] = STRAY
+    rightmost = analyse_loops(replace(system, capacitance=system.capacitance + np.diag(strays))).rightmost
+    return np.less(rightmost, 0, where=np.isfinite(rightmost), out=np.zeros(rightmost.shape, bool))
+
+
+def _warmed(batch: Batch, state: State) -> tuple[Batch, State]:
+    """Bring temperatures in line with the dissipations of these states; what runs away has not converged."""
+    network = batch.points.network
+    thermal = build_thermal(network.design)
+    change = np.zeros(len(batch.rows))
+    for _ in range(THERMAL_ROUNDS if thermal.rise.any() and len(batch.rows) else 0):
+        solution = batch.solution(state)
+        power = np.zeros((len(batch.rows), len(thermal.held)))
+        for ref in thermal.heated:
+            power[:, thermal.node[ref]] += np.nan_to_num(solution.dissipation(ref))
+        nodes = thermal.temperatures(batch.conditions.values["ambient"], power)
+        nodes = np.clip(nodes, LEAST_TEMPERATURE, MOST_TEMPERATURE)
+        heat = {**batch.heat, **{ref: nodes[:, i] for ref, i in thermal.node.items()}}
+        change = np.max([np.abs(heat[ref] - batch.heat[ref]) for ref in thermal.node], axis=0)
+        batch = replace(batch, heat=heat)
+        state = iterate(batch.points.equations, batch.values(), state, ITERATIONS)
+        if not change.max() > TEMPERATURE_STEP:
+            break
+    state.converged = state.converged & ~(change > TEMPERATURE_STEP)
+    return batch, state

@@ -110,9 +110,7 @@ class Margins:
             out[self._where] = _modulus(self._ratio, self._grid, self._where, self._sampled)
         return out
 
-    def _crossings(
-        self, sampled: Array, measure: Callable[[ComplexArray], Array]
-    ) -> tuple[IntArray, IntArray, Array]:
+    def _crossings(self, sampled: Array, measure: Callable[[ComplexArray], Array]) -> tuple[IntArray, IntArray, Array]:
         """Sign changes of `sampled`, refined: rows, grid cells and frequencies [Hz].
 
         Bisection alternates with the secant of the bracket's ends, so that either kind of curve is fast.

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, replace
+from functools import partial
 
 import numpy as np
 
@@ -172,20 +173,42 @@ def _move_amplifiers(equations: Equations, values: Values, now: State, old: Arra
 def solve(equations: Equations, values: Values, start: State | None = None) -> State:
     """Operating points of a batch, by the shortest way that arrives.
 
-    A given `start` is tried first; then Newton's method from conducting junctions, from the solution of
-    the nearest condition that arrived, a walk through switching-on, sources stepped up and
-    conductances to ground stepped down.
+    A given `start` is tried first; then Newton's method from conducting junctions, a walk through
+    switching-on, sources stepped up and conductances to ground stepped down; between them, conditions
+    that are left start from the nearest one that arrived.
     """
     state = power_off(equations, values.fixed.shape[0]) if start is None else _hushed(equations, values, start)
-    if not state.converged.all():
-        _try(_from_conducting, equations, values, state)
-    if not state.converged.all() and state.converged.any():
-        near = state.take(_nearest(values, state.converged)[~state.converged])
-        _try(lambda e, v: iterate(e, v, near, 40), equations, values, state)
-    for way in (_switch_on, _step_sources, _step_conductances):
-        if not state.converged.all():
-            _try(way, equations, values, state)
+    everything = np.ones(len(state.x), bool)
+    for way, where in (
+        (_from_conducting, everything),
+        (_switch_on, _scouts(everything.size)),
+        (_switch_on, everything),
+        (_step_sources, everything),
+        (_step_conductances, everything),
+    ):
+        _try(way, equations, values, state, where)
+        _spread(equations, values, state)
     return state
+
+
+SCOUTS = 8
+
+
+def _scouts(size: int) -> BoolArray:
+    """Choose a few conditions, evenly spread, that show the way to the others."""
+    chosen = np.zeros(size, bool)
+    chosen[np.linspace(0, size - 1, min(SCOUTS, size)).astype(int)] = True
+    return chosen
+
+
+def _spread(equations: Equations, values: Values, state: State) -> None:
+    """Start each condition that is left from the solution nearest to it, as long as that gains any."""
+    gained = True
+    while gained and state.converged.any() and not state.converged.all():
+        before = int(state.converged.sum())
+        near = state.take(_nearest(values, state.converged)[~state.converged])
+        _try(partial(iterate, start=near, iterations=40), equations, values, state, ~state.converged)
+        gained = int(state.converged.sum()) > before
 
 
 def _hushed(equations: Equations, values: Values, start: State) -> State:
@@ -194,9 +217,13 @@ def _hushed(equations: Equations, values: Values, start: State) -> State:
         return iterate(equations, values, start, 30)
 
 
-def _try(way: Callable[[Equations, Values], State], equations: Equations, values: Values, state: State) -> None:
-    """Put into `state` what one way reaches of the conditions that are left."""
-    left = np.flatnonzero(~state.converged)
+def _try(
+    way: Callable[[Equations, Values], State], equations: Equations, values: Values, state: State, where: BoolArray
+) -> None:
+    """Put into `state` what one way reaches of the conditions that are left among `where`."""
+    left = np.flatnonzero(~state.converged & where)
+    if not left.size:
+        return
     with np.errstate(over="ignore", invalid="ignore"):
         found = way(equations, take(values, left))
     improved = np.flatnonzero(found.converged)

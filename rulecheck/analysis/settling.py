@@ -44,7 +44,7 @@ def settle(points: Solution, values: Values, start: State) -> State:
     State
         `converged` where one was reached.
     """
-    equations, state = points.equations, start.take(slice(None))
+    equations, state = points.equations, start.take(np.arange(len(start.x)))
     storage = _storage(points)
     step, active = np.full(len(state.x), FIRST_STEP), np.arange(len(state.x))
     with np.errstate(all="ignore"):  # a wild iterate is a step that was too long, and is taken back

@@ -70,9 +70,7 @@ class Law:
         """
         return evaluate(self.tree, values)
 
-    def dimension(
-        self, dimensions: Mapping[str, Dimension], constants: Mapping[str, float] | None = None
-    ) -> Dimension:
+    def dimension(self, dimensions: Mapping[str, Dimension], constants: Mapping[str, float] | None = None) -> Dimension:
         """Dimension of the law's value.
 
         Parameters
