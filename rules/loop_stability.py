@@ -67,10 +67,12 @@ class LoopStability(Rule):
         unstable = ringing & (island.rightmost > 0)
         worst = loops.points.least(np.where(unstable, -island.rightmost, np.nan) if unstable.any() else damping)
         ratio, frequency = float(island.least_damping[worst.index]), float(island.damping_frequency[worst.index])
-        at = f" near {format_quantity(frequency, 'Hz', 3)}" if np.isfinite(frequency) else ""
+        rings = ratio < settings.damping  # else a real mode grows, without ringing
+        at = f" near {format_quantity(frequency, 'Hz', 3)}" if rings else ""
         who = ", ".join(parts)
         evidence = [
-            Evidence("damping ratio", ratio, "1", settings.damping, ">=", over=island.least_damping),
+            Evidence("damping ratio", ratio if rings else np.nan, "1", settings.damping, ">=",
+                     over=island.least_damping),
             Evidence("rightmost natural frequency", float(island.rightmost[worst.index]), "1/s", 0.0, "<",
                      over=island.rightmost),
             *(Evidence(f"phase margin of {a}", float(loops.phase_margin(a)[worst.index]), "deg",

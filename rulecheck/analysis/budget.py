@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -10,12 +10,13 @@ import numpy as np
 
 from ..devices.constants import Array, BoolArray
 from .operating_points import OperatingPoints
-from .sensitivity import Sensitivity, placing
-from .spreads import Deviation, deviations, in_force, of_supply
-from .transfer import judged, law_values, trim_error
+from .sensitivity import Sensitivity, touches
+from .spreads import deviations, in_force
+from .transfer import judged, law_values
+from .trims import Trims
 
 if TYPE_CHECKING:
-    from ..design.model import Design, Requirement
+    from ..design.model import Requirement
     from .conditions import Conditions
     from .review import Review
 
@@ -124,7 +125,7 @@ def budget(review: Review, requirement: Requirement, points: OperatingPoints | N
     trims = Trims(review, sensitivity)
     found = []
     for deviation in deviations(review.design):
-        if sensitivity.touches(deviation):
+        if touches(requirement, points, deviation):
             slope = sensitivity.of(deviation) + trims.following(deviation)
             half = deviation.half * in_force(review.design, deviation, points.conditions)
             found.append(Contribution(deviation.name, slope, half, slope * half))
@@ -156,87 +157,3 @@ def _worst(total: Array, allowed: Array, asked: BoolArray) -> int | None:
         ratio = total / allowed if (allowed > 0).any() else total
     ratio = np.where(asked & np.isfinite(ratio), ratio, np.nan)
     return int(np.nanargmax(ratio)) if np.isfinite(ratio).any() else None
-
-
-@dataclass(frozen=True)
-class _Answer:
-    """A trim's answer to deviations.
-
-    Attributes
-    ----------
-    own : Sensitivity
-        Of the requirement that it adjusts, where it is trimmed.
-    own_slope : float
-        Of that requirement's error in its position.
-    of_earlier : tuple of float
-        The same in the positions of the trims that are set before.
-    slope : ndarray
-        Of the judged error in its position.
-    """
-
-    own: Sensitivity
-    own_slope: float
-    of_earlier: tuple[float, ...]
-    slope: Array
-
-
-class Trims:
-    """Trims of a circuit, which answer a deviation by nulling the error of their own requirement.
-
-    They are set one after the other at typical supplies, and do not follow these. A trim that stands at an end of
-    its travel has nothing left to answer with.
-
-    Parameters
-    ----------
-    review : Review
-    sensitivity : Sensitivity
-        Of the requirement that is judged.
-    """
-
-    def __init__(self, review: Review, sensitivity: Sensitivity) -> None:
-        self._design = review.design
-        self._answers: list[_Answer] = []
-        placed = placing(sensitivity.points, sensitivity.requirement.output)
-        positions: dict[str, float] = {}
-        able: list[str] = []
-        for ref in trims_among(review.design, placed.parts if placed is not None else ()):
-            positions[ref] = review.typical[ref]
-            spread = review.design.parts[ref].position
-            if spread.min < positions[ref] < spread.max or spread.min == spread.max:
-                own = _where_trimmed(review, review.design.parts[ref].adjusts, positions)
-                earlier = tuple(float(own.of_position(other)[0]) for other in able)
-                slope = sensitivity.of_position(ref)
-                self._answers.append(_Answer(own, float(own.of_position(ref)[0]), earlier, slope))
-                able.append(ref)
-
-    def following(self, deviation: Deviation) -> Array | float:
-        """What the trims add to the slope of the judged error in a deviation."""
-        total: Array | float = 0.0
-        turns: list[float] = []
-        if of_supply(self._design, deviation):
-            return total
-        for answer in self._answers:
-            left = answer.own.of(deviation)[0] + np.dot(answer.of_earlier, turns)
-            turns.append(-float(left) / answer.own_slope if answer.own_slope else 0.0)
-            total = total + answer.slope * turns[-1]
-        return total
-
-
-def _where_trimmed(review: Review, name: str, positions: Mapping[str, float]) -> Sensitivity:
-    """Sensitivity of a trimmed requirement at the one condition at which it is trimmed."""
-    requirement = review.design.requirements[name]
-    found: list[OperatingPoints] = []
-
-    def solver(conditions: Conditions) -> OperatingPoints:
-        found.append(review.solve(conditions))
-        return found[-1]
-
-    trim_error(review.design, requirement, dict(positions), solver)
-    return Sensitivity(requirement, found[0])
-
-
-def trims_among(design: Design, parts: Iterable[str]) -> list[str]:
-    """Potentiometers among some parts that adjust a requirement with a law, in the order they are set."""
-    laws = {name for name, requirement in design.requirements.items() if requirement.law is not None}
-    among = set(parts)
-    return [r for r, p in design.parts.items() if p.kind == "potentiometer" and r in among and p.adjusts in laws]

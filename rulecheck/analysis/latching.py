@@ -72,7 +72,7 @@ class Latching:
     points : OperatingPoints
         The nominal solution at the conditions of the search.
     found : tuple of SecondPoint
-        By island and condition; several at one condition where there are several.
+        By condition; several at one where there are several, or in several islands.
     starts, lost : int
         How many there were, and how many of them settled nowhere.
     """
@@ -145,7 +145,7 @@ def search(points: OperatingPoints, faults: OperatingPoints) -> Latching:
         words = faults.conditions.scenario or ()
         found += searches[id(solution)].records(placed, fault, words)
     starts, lost = (sum(getattr(s, name) for s in searches.values()) for name in ("starts", "lost"))
-    return Latching(points, tuple(found), starts, lost)
+    return Latching(points, tuple(sorted(found, key=lambda second: second.index)), starts, lost)
 
 
 class _Search:

@@ -7,6 +7,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from ..devices.constants import Array, Index, IntArray
+from ..devices.junction import critical_voltage
 from .conditions import Conditions
 from .network import Network
 from .newton import State, iterate
@@ -151,6 +152,9 @@ def _let_go(points: Solution, values: Values, state: State, push: Array) -> Stat
     u = state.x[:, rows] - push
     u = np.where(push > 0, np.maximum(u, high), np.where(push < 0, np.minimum(u, low), u))
     state.x[:, rows] = u
+    # a transistor that was cut off may have volts on its base: linearised there its current would be without bound
+    hot = values.transistor
+    state.tangents.v_be = np.minimum(state.tangents.v_be, critical_voltage(hot.saturation, hot.slope))
     return state
 
 

@@ -2,33 +2,35 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from ..circuit.islands import ideal_nets
 from ..devices.constants import Array, BoolArray, IntArray
 from ..errors import AnalysisError
-from .batches import Batch
-from .budget import trims_among
+from .conditions import Conditions
+from .islands import Piece, cut, solve_pieces
+from .operating_points import OperatingPoints
 from .queries import at_typical
-from .sensitivity import Sensitivity
-from .spreads import Deviation, deviations, in_force, of_supply
-from .transfer import judged, law_values
-from .trims import null
+from .sensitivity import touches
+from .spreads import Deviation, deviations, in_force, moved, of_supply
+from .transfer import judged, law_values, trim_error
+from .trims import null, trims_among
 
 if TYPE_CHECKING:
-    from ..design.model import Requirement
-    from .conditions import Conditions
+    from ..design.model import Design, Requirement
     from .review import Review
+    from .values import Overrides
 
 MOST_BYTES = 32 * 2**20
-"""Bound of the matrices that a batch of samples works on; the outputs of all samples are kept beside them."""
+"""Bound of the matrices that a batch of samples works on; outputs and laws of all samples are kept beside them."""
 MATRICES = 6
 """Matrices of the nodal equations that Newton's method holds for each condition at a time."""
 CONFIDENCE = 1.959963984540054
-"""Standard deviations of a normal distribution that hold 95 % of it."""
+"""Standard deviations to either side that hold 95 % of a normal distribution."""
 
 
 @dataclass(frozen=True)
@@ -79,7 +81,7 @@ class Samples:
     @property
     def failed(self) -> IntArray:
         """Number of samples without an operating point, by condition."""
-        return np.isnan(self.error).sum(axis=0)
+        return np.isnan(self.output).sum(axis=0)
 
     def mean(self, values: Array | None = None) -> Array:
         """Mean by condition, of the error or of `values` of its shape."""
@@ -113,7 +115,7 @@ class Samples:
         return np.array([figure(column) if column.size else np.nan for column in known], dtype=float)
 
 
-def wilson(hits: Array | IntArray | int, count: int) -> Share:
+def wilson(hits: Any, count: int) -> Share:  # noqa: ANN401  # a number or an array of them
     """Share of `hits` in `count` trials with its 95 % confidence interval.
 
     Parameters
@@ -141,11 +143,11 @@ def sampled_rows(review: Review, requirement: Requirement) -> IntArray:
         Where the requirement asks its law at no condition.
     """
     points = review.operating_points
-    asked = judged(requirement, points, review.typical)
     law = law_values(requirement, points)
     error = np.abs(points.voltage(requirement.output) - law)
     with np.errstate(all="ignore"):
         ratio = error / (requirement.absolute + requirement.reading * np.abs(law))
+    asked = judged(requirement, points, review.typical)
     ratio = np.where(asked, ratio if requirement.has_accuracy else error, np.nan)
     if not np.isfinite(ratio).any():
         raise AnalysisError(f"requirement {requirement.name} is judged at no condition", "there is nothing to sample")
@@ -161,8 +163,8 @@ def draw(
     """Draw parameters within their spreads and solve the circuit of a requirement's output with them.
 
     Deviations are uniform between their limits, each by itself; what parts share (see `spreads.deviations`) is drawn
-    once. Trims are set anew in every sample, at typical supplies. All samples start from the nominal solution, in
-    batches of a fixed size, so that a seed gives the same figures however the work is shared out.
+    once. Trims are set anew in every sample, at typical supplies. A seed gives the same draws whatever the batches,
+    and all samples start from the nominal solution.
 
     Parameters
     ----------
@@ -183,32 +185,114 @@ def draw(
     Samples
     """
     rows = sampled_rows(review, requirement) if rows is None else rows
-    sampler = _Sampler(review, requirement, rows, count, most_bytes)
-    outputs, laws = [], []
-    done = 0
-    for output, law in sampler.run(np.random.default_rng(seed)):
-        outputs.append(output)
-        laws.append(law)
-        done = min(done + len(output), count)
+    conditions = review.conditions.take(rows)
+    sampler = _Sampler(review, requirement, conditions, count, most_bytes)
+    output, law = np.empty((2, count, len(rows)))
+    random, done = np.random.default_rng(seed), 0
+    for found, asked in sampler.run(random):
+        new = min(len(found), count - done)
+        output[done : done + new], law[done : done + new] = found[:new], asked[:new]
+        done += new
         if progress is not None:
             progress(done)
-    output, law = np.concatenate(outputs)[:count], np.concatenate(laws)[:count]
     error = output - law
     with np.errstate(invalid="ignore"):
         inside = np.abs(error) <= requirement.absolute + requirement.reading * np.abs(law)
-    return Samples(requirement, sampler.conditions, rows, seed, output, error, inside)
+    return Samples(requirement, conditions, rows, seed, output, error, inside)
+
+
+class _Batch:
+    """One piece at conditions near nominal ones, from whose solution every solve starts."""
+
+    def __init__(self, design: Design, piece: Piece, nominal: Conditions) -> None:
+        self.design, self.piece = design, piece
+        self.cache: dict[Any, Any] = {}
+        self._solve(nominal, {}, self.cache)
+
+    def solve(self, overrides: Overrides, conditions: Conditions) -> OperatingPoints:
+        return self._solve(conditions, overrides, dict(self.cache))
+
+    def _solve(self, conditions: Conditions, overrides: Overrides, cache: dict[Any, Any]) -> OperatingPoints:
+        placed = solve_pieces(
+            (self.piece,), conditions, with_clamps=False, overrides=overrides, temperatures={}, cache=cache
+        )
+        return OperatingPoints(self.design, conditions, placed)
 
 
 class _Sampler:
-    """Batches of samples of one requirement."""
+    """Batches of samples of one requirement, all of one size."""
 
-    def __init__(self, review: Review, requirement: Requirement, rows: IntArray, count: int, most_bytes: int) -> None:
-        self.review, self.requirement = review, requirement
-        self.conditions = review.conditions.take(rows)
-        sensitivity_free = Sensitivity.reach(requirement, review.operating_points)
-        self.deviations = [d for d in deviations(review.design) if sensitivity_free(d)]
-        batch = Batch(review, requirement.output)
-        size = MATRICES * 8 * (batch.unknowns + 1) ** 2 * len(rows)
-        batches = -(-count // max(1, most_bytes // size))
-        self.in_batch = -(-count // batches)  # of equal size, so that all start from one nominal solution
-        self.batches = batches
+    def __init__(
+        self, review: Review, requirement: Requirement, conditions: Conditions, count: int, most_bytes: int
+    ) -> None:  # fmt: skip
+        self.review, self.design, self.requirement = review, review.design, requirement
+        self.points_each = conditions.size
+        self.piece = _piece_of(review, requirement.output)
+        self.deviations = [
+            d for d in deviations(self.design) if touches(requirement, review.operating_points, d)
+        ]  # fmt: skip
+        unknowns = max(p.solution.network.unknowns for p in review.operating_points.placed)
+        each = MATRICES * 8 * (unknowns + 1) ** 2 * self.points_each
+        self.batches = -(-count // max(1, most_bytes // each))
+        self.size = -(-count // self.batches)
+        self.conditions = conditions.take(np.tile(np.arange(self.points_each), self.size))
+        self.force = [in_force(self.design, d, self.conditions) for d in self.deviations]
+        self.trims = trims_among(self.design, self.piece.design.parts)
+        self.trim_batches: dict[str, _Batch] = {}
+
+    def run(self, random: np.random.Generator) -> Iterator[tuple[Array, Array]]:
+        """Outputs and laws of batch after batch, shape (samples, conditions)."""
+        batch = _Batch(self.design, self.piece, self.conditions)
+        low = np.array([d.low for d in self.deviations])
+        high = np.array([d.high for d in self.deviations])
+        for _ in range(self.batches):
+            amounts = low + (high - low) * random.random((self.size, len(low)))
+            positions = self._set_trims(amounts)
+            everywhere = np.repeat(amounts, self.points_each, axis=0).T
+            moves = [(d.moves, a * f) for d, a, f in zip(self.deviations, everywhere, self.force, strict=True)]
+            overrides, conditions = moved(self.design, self.conditions, moves)
+            points = batch.solve(overrides, _with(conditions, positions, self.points_each))
+            shape = (self.size, self.points_each)
+            law = law_values(self.requirement, points)
+            yield points.voltage(self.requirement.output).reshape(shape), law.reshape(shape)
+
+    def _set_trims(self, amounts: Array) -> dict[str, Array]:
+        """Positions of the trims in each sample, set one after the other."""
+        steady = [(d, a) for d, a in zip(self.deviations, amounts.T, strict=True) if not of_supply(self.design, d)]
+        positions: dict[str, Array] = {}
+        for ref in self.trims:
+            spread = self.design.parts[ref].position
+            low, high = (spread.min, spread.max) if spread.min < spread.max else (0.0, 1.0)
+            start = np.full(self.size, self.review.typical[ref])
+            positions[ref] = null(self._trim_error(ref, steady, positions), start, low, high)
+        return positions
+
+    def _trim_error(
+        self, ref: str, amounts: list[tuple[Deviation, Array]], others: dict[str, Array]
+    ) -> Callable[[Array], Array]:
+        """Error that a trim nulls, as a function of its positions in the samples."""
+        requirement = self.design.requirements[self.design.parts[ref].adjusts]
+
+        def solver(conditions: Conditions) -> OperatingPoints:
+            if ref not in self.trim_batches:
+                self.trim_batches[ref] = _Batch(self.design, self.piece, conditions)
+            overrides, changed = moved(self.design, conditions, [(d.moves, a) for d, a in amounts])
+            return self.trim_batches[ref].solve(overrides, changed)
+
+        return lambda here: trim_error(self.design, requirement, {**others, ref: here}, solver)
+
+
+def _with(conditions: Conditions, positions: dict[str, Array], repeats: int) -> Conditions:
+    repeated = {ref: np.repeat(values, repeats) for ref, values in positions.items()}
+    return Conditions({**conditions.values, **repeated}, conditions.scenario, conditions.absent)
+
+
+def _piece_of(review: Review, net: str) -> Piece:
+    """The piece in which a net is free to move, at its own place in the design."""
+    if net in ideal_nets(review.design):
+        raise AnalysisError(f"net {net} is held by an ideal source", "there is nothing to sample")
+    pieces = cut(review.design, review.circuit, frozenset(review.design.parts))
+    found = [piece for piece in pieces if net in piece.copies[0].island.nets]
+    if not found:
+        raise AnalysisError(f"no part stands on net {net}", "there is nothing to sample")
+    return found[0]

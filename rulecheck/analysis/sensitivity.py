@@ -57,34 +57,14 @@ class Sensitivity:
         source = self.points.design.inputs[name]
         return self._of_output((Move(name, "input"),), INPUT_STEP * max(abs(source.low), abs(source.high)))
 
-    def touches(self, deviation: Deviation) -> bool:
-        """Whether anything that a deviation moves is in the circuit of the output, or named in the law."""
-        return bool(self._here(deviation.moves)) or any(self._in_law(move) for move in deviation.moves)
-
-    def _here(self, moves: tuple[Move, ...]) -> tuple[Move, ...]:
-        """Moves within the circuit of the output, named as in its solution."""
-        if self._placed is None:
-            return ()
-        found = []
-        for owner, key, per in moves:
-            is_net = key in NET_KEYS or (key == "input" and owner in self.points.design.nets)
-            names = self._placed.nets if is_net else self._placed.parts
-            if owner in names:
-                found.append(Move(names[owner], key, per))
-        return tuple(found)
-
     def _of_output(self, moves: tuple[Move, ...], step: float) -> Array:
-        here = self._here(moves)
+        here = () if self._placed is None else _within(self._placed, self.points, moves)
         if self._adjoint is None or self._placed is None or not here:
             return np.where(self.points.converged, 0.0, np.nan)
         return self._adjoint.slope(here, step)[self._placed.index]
 
-    def _in_law(self, move: Move) -> bool:
-        law = self.requirement.law
-        return law is not None and move.owner in law.names and move.key in ("voltage", "voltage_tempco", "position")
-
     def _of_law(self, moves: tuple[Move, ...], step: float) -> Array:
-        named = tuple(move for move in moves if self._in_law(move))
+        named = tuple(move for move in moves if _in_law(self.requirement, move))
         if not named:
             return np.zeros(self.points.conditions.size)
         design, conditions = self.points.design, self.points.conditions
@@ -101,6 +81,29 @@ class Sensitivity:
                 tempco = net.tempco + overrides.get((name, "voltage_tempco"), 0.0)
                 values[name] = values[name] * (1 + tempco * (values["ambient"] - NOMINAL_TEMPERATURE))
         return law_values(self.requirement, OperatingPoints(design, Conditions(values), ()))
+
+
+def touches(requirement: Requirement, points: OperatingPoints, deviation: Deviation) -> bool:
+    """Whether anything that a deviation moves is in the circuit of a requirement's output, or named in its law."""
+    placed = placing(points, requirement.output)
+    inside = placed is not None and bool(_within(placed, points, deviation.moves))
+    return inside or any(_in_law(requirement, move) for move in deviation.moves)
+
+
+def _within(placed: Placed, points: OperatingPoints, moves: tuple[Move, ...]) -> tuple[Move, ...]:
+    """Moves within one piece, named as in its solution."""
+    found = []
+    for owner, key, per in moves:
+        is_net = key in NET_KEYS or (key == "input" and owner in points.design.nets)
+        names = placed.nets if is_net else placed.parts
+        if owner in names:
+            found.append(Move(names[owner], key, per))
+    return tuple(found)
+
+
+def _in_law(requirement: Requirement, move: Move) -> bool:
+    named = requirement.law is not None and move.owner in requirement.law.names
+    return named and move.key in ("voltage", "voltage_tempco", "position")
 
 
 def placing(points: OperatingPoints, net: str) -> Placed | None:

@@ -40,24 +40,29 @@ def _in_folder(folder: Path) -> Iterator[Path]:
         for name in sorted(names):
             if name.endswith(".toml"):
                 file = Path(here) / name
-                if _is_meant_as_design(file):
-                    yield file
+                reason = _why_not(file)
+                if reason:
+                    narrate(f"{file}: passed over, {reason}")
                 else:
-                    narrate(f"{file}: passed over, it has neither format nor [design]")
+                    yield file
 
 
 def _refuse(error: OSError) -> None:
     raise CommandError(f"{error.filename} cannot be read: {error.strerror}") from error
 
 
-def _is_meant_as_design(file: Path) -> bool:
-    """Whether a file has a mark of a design; one that cannot be read is left to the loader, which says why."""
+def _why_not(file: Path) -> str:
+    """Why a file is not meant as a design, if so; one that cannot be read is left to the loader, which says why."""
     import tomli
 
     try:
         if file.stat().st_size > LARGEST_FILE:
-            return True
+            return ""
         data = tomli.loads(file.read_text(encoding="utf-8-sig"))
     except (OSError, ValueError, RecursionError):
-        return True
-    return "format" in data or "design" in data
+        return ""
+    if "design" in data:
+        return ""
+    if "models" in data:
+        return "it is a catalogue of models"
+    return "" if "format" in data else "it has neither format nor [design]"
