@@ -11,6 +11,7 @@ import numpy.typing as npt
 from rulecheck.api import (
     Carrier,
     Cost,
+    Disturbance,
     Evidence,
     Finding,
     OperatingPoints,
@@ -28,6 +29,7 @@ from ._pairs import cost_evidence, cost_words
 
 Array = npt.NDArray[np.float64]
 MARGIN = 1.1
+LEAKY_CLAMP = 0.01  # of the current: above it a clamp is a finding of its own
 SLACK_DECADES = 0.005  # 1 %: the end of a log range is not known more closely
 
 
@@ -37,6 +39,12 @@ def working_current(review: Review, carrier: Carrier, partner: Carrier | None = 
     nodes = [c.node for c in (carrier, partner) if c is not None]
     judged = in_use(review) & is_regulated(review, points, *nodes)
     return np.where(judged, forward_current(points, carrier.part), np.nan)
+
+
+def leakage(found: Disturbance, current: Array) -> Array:
+    """Leakage at a node, without that of clamps where it is large enough alone to be the concern of another rule."""
+    own: Array = np.where(found.clamps > LEAKY_CLAMP * np.abs(current), 0.0, found.clamps)
+    return found.dark + own
 
 
 def middle_of(current: Array) -> float | None:

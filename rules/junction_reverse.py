@@ -33,6 +33,8 @@ from ._protection import against_current, against_reversal, rated, sturdier
 from ._saturation import Floats, SignalFlow, causes_of
 
 REVERSAL = "emitter_base_breakdown"
+SLACK = 1e-3
+"""Share by which a rating is not known more closely."""
 
 
 class JunctionReverse(Rule):
@@ -41,7 +43,7 @@ class JunctionReverse(Rule):
     An absent supply is a net held at 0 V; that a rail can be fed through clamps and float up is not modelled.
     Small transistors break down at 5 to 7 V from emitter to base; where the model does not say, the least of
     these is taken. Junctions that the same saturated amplifiers reverse are
-    one finding. Currents that are over their rating in normal
+    one finding, with the ratings exceeded through that. Currents that are over their rating in normal
     operation too are other rules' matter.
     """
 
@@ -58,15 +60,23 @@ class JunctionReverse(Rule):
         assumed_breakdown: Annotated[float, Unit("V")] = 5.0
 
     def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
-        """One finding for the junctions that the same amplifiers reverse, one a part for other stresses."""
+        """One finding for what the same amplifiers do to junctions, one a part for stresses without that."""
         flow = SignalFlow(review)
-        groups: dict[tuple[str, ...], list[_Stress]] = {}
-        for part in review.design.parts.values():
-            for stress in _stresses(part, review.faults, settings):
-                if stress.is_exceeded and (stress.unit == "V" or not _is_usual(review, settings, stress)):
-                    groups.setdefault((stress.rating, *_cause(review, flow, stress)), []).append(stress)
-        for (_, *causes), stresses in groups.items():
-            yield _finding(review, stresses, causes)
+        found = [
+            stress
+            for part in review.design.parts.values()
+            for stress in _stresses(part, review.faults, settings)
+            if stress.is_exceeded and (stress.unit == "V" or not _is_usual(review, settings, stress))
+        ]
+        reversals = [(_causes(review, flow, s), s) for s in found if s.rating == REVERSAL]
+        groups = {causes: [s for own, s in reversals if own == causes] for causes, _ in reversals}
+        alone: list[_Stress] = []
+        for stress in (s for s in found if s.rating != REVERSAL):
+            groups.get(_causes(review, flow, stress), alone).append(stress)
+        for causes, stresses in groups.items():
+            yield _finding(review, stresses, list(causes))
+        for stress in alone:
+            yield _finding(review, [stress], [])
         yield from (
             _survival_unknown(name, name in review.design.nets)
             for name, source in review.design.inputs.items()
@@ -74,7 +84,7 @@ class JunctionReverse(Rule):
         )
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class _Stress:
     """A figure of a part over conditions against what the part stands."""
 
@@ -90,8 +100,12 @@ class _Stress:
         return "A" if self.rating.endswith("current") else "V"
 
     @property
+    def worst(self) -> float:
+        return float(np.nanmax(self.over)) if np.isfinite(self.over).any() else 0.0
+
+    @property
     def is_exceeded(self) -> bool:
-        return bool(np.isfinite(self.over).any() and np.nanmax(self.over) > self.limit)
+        return self.worst > self.limit * (1 + SLACK)
 
 
 def _stresses(part: Part, points: OperatingPoints, settings: JunctionReverse.Settings) -> Iterator[_Stress]:
@@ -136,30 +150,33 @@ def _is_usual(review: Review, settings: JunctionReverse.Settings, stress: _Stres
     return any(s.is_exceeded for s in usual if s.rating == stress.rating)
 
 
-def _cause(review: Review, flow: SignalFlow, stress: _Stress) -> list[str]:
-    """What joins stresses in one finding: the amplifiers that reverse junctions, else the part."""
-    if stress.rating != REVERSAL:
-        return [stress.part]
+def _causes(review: Review, flow: SignalFlow, stress: _Stress) -> tuple[str, ...]:
+    """What joins stresses in one finding: the amplifiers at a limit that come first, else the part's emitter net."""
     pins = review.design.parts[stress.part].pins
+    moved = {pins["B"], pins["E"]} if stress.rating == REVERSAL else set(pins.values())
     index = review.faults.worst(stress.over).index
-    return causes_of(flow, review.faults, index, {pins["B"], pins["E"]}) or [pins["E"]]
+    return tuple(causes_of(flow, review.faults, index, moved)) or (pins.get("E", stress.part),)
 
 
 def _finding(review: Review, stresses: list[_Stress], causes: list[str]) -> Finding:
+    """A finding of the first kind of stress; others that come with it are evidence."""
     points, design = review.faults, review.design
-    stress = max(stresses, key=lambda s: float(np.nanmax(s.over)) / s.limit)
+    main = [s for s in stresses if s.rating == stresses[0].rating]
+    stress = max(main, key=lambda s: s.worst / s.limit)
     worst = points.worst(stress.over)
-    parts = [s.part for s in stresses]
+    parts = [s.part for s in main]
     reversal = stress.rating == REVERSAL
+    beside = "".join(f"; {s.quantity} of {s.part} {format_quantity(s.worst, s.unit, 3)}, allowed "
+                     f"{format_quantity(s.limit, s.unit, 3)}" for s in stresses if s not in main)  # fmt: skip
     return Finding(
         f"{', '.join(parts)}: {stress.quantity} {format_quantity(worst.value, stress.unit, 3)}, allowed "
-        f"{format_quantity(stress.limit, stress.unit, 3)}{stress.remark}",
+        f"{format_quantity(stress.limit, stress.unit, 3)}{stress.remark}{beside}",
         parts=parts, nets=list(dict.fromkeys(design.parts[p].pins["E"] for p in parts)) if reversal else [],
         subject=stress.quantity, conditions=worst.conditions,
         scenario=points.conditions.scenario[worst.index] if points.conditions.scenario else None,
         consequence=_CONSEQUENCES[stress.rating],
-        evidence=[Evidence(f"{s.quantity} of {s.part}", float(s.over[worst.index]), s.unit, s.limit, "<=", over=s.over,
-                           basis="limit") for s in stresses],
+        evidence=[Evidence(f"{s.quantity} of {s.part}", s.worst, s.unit, s.limit, "<=", over=s.over, basis="limit")
+                  for s in stresses],
         remedies=against_reversal(review, parts, causes, worst.index) if reversal else _remedies(review, stress),
     )  # fmt: skip
 
@@ -177,7 +194,7 @@ _CONSEQUENCES = {
 def _remedies(review: Review, stress: _Stress) -> list[Remedy]:
     if stress.unit == "A":
         return against_current(review, stress.part, stress.rating, stress.limit)
-    return sturdier(review, stress.part, stress.rating, float(np.nanmax(stress.over)))
+    return sturdier(review, stress.part, stress.rating, stress.worst)
 
 
 def _survival_unknown(name: str, is_net: bool) -> Finding:

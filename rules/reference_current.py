@@ -33,7 +33,7 @@ from rulecheck.api import (
     supply_effect,
 )
 
-from ._carried import MARGIN, conformity, middle_of, outside_log_range, working_current
+from ._carried import MARGIN, conformity, leakage, middle_of, outside_log_range, working_current
 from ._currents import better_amplifiers, compared_with, feeds, scaled
 from ._edits import move, new_net, quantity, set_parameter
 
@@ -87,14 +87,16 @@ def _logarithm(review: Review, settings: ReferenceCurrent.Settings, carrier: Car
 
 def _bias(review: Review, settings: ReferenceCurrent.Settings, carrier: Carrier) -> Iterator[Finding]:
     found = disturbance(review, carrier)
-    current, added = np.abs(forward_current(found.points, carrier.part)), found.bias + found.leakage
+    current = np.abs(forward_current(found.points, carrier.part))
+    leaking = leakage(found, current)
+    added = found.bias + leaking
     judged = is_regulated(review, found.points, carrier.node) & (added > 0)
     ratio = np.where(judged, current / np.where(judged, added, 1.0), np.nan)
     if not np.isfinite(ratio).any() or np.nanmin(ratio) >= settings.over_bias:
         return
     worst = found.points.least(ratio)
     at = worst.index
-    budget = float(current[at] / settings.over_bias - found.leakage[at]) / MARGIN
+    budget = float(current[at] / settings.over_bias - leaking[at]) / MARGIN
     yield Finding(
         f"{carrier.part} carries a fixed {format_quantity(float(current[at]), 'A', 3)}, only {worst.value:.3g} times "
         f"bias and leakage at {carrier.node} ({format_quantity(float(added[at]), 'A', 3)} at the hottest), "

@@ -29,7 +29,7 @@ from rulecheck.api import (
     points_in_use,
 )
 
-from ._carried import MARGIN, conformity, middle_of, outside_log_range, working_current
+from ._carried import MARGIN, conformity, leakage, middle_of, outside_log_range, working_current
 from ._currents import better_amplifiers, input_magnitude, narrowed, offset_limit, scaled
 
 Array = npt.NDArray[np.float64]
@@ -146,9 +146,10 @@ def _positive(
 
 def _over_errors(review: Review, found: Disturbance, group: Sequence[Carrier]) -> Array:
     """Signal current over all that disturbs it, NaN where an amplifier is at a limit or nothing disturbs."""
-    errors = found.bias + found.offset + found.leakage
+    current = _carried(found.points, group)
+    errors = found.bias + found.offset + leakage(found, current)
     judged = is_regulated(review, found.points, group[0].node) & (errors > 0)
-    return np.where(judged, _carried(found.points, group) / np.where(judged, errors, 1.0), np.nan)
+    return np.where(judged, current / np.where(judged, errors, 1.0), np.nan)
 
 
 def _floor(review: Review, settings: SignalCurrent.Settings, group: Sequence[Carrier]) -> Iterator[Finding]:
@@ -158,8 +159,9 @@ def _floor(review: Review, settings: SignalCurrent.Settings, group: Sequence[Car
         return
     worst = found.points.least(ratio)
     at = worst.index
-    shown = [format_quantity(float(a[at]), "A", 3) for a in (found.bias, found.offset, found.leakage)]
-    level = format_quantity(float(_carried(found.points, group)[at]), "A", 3)
+    current = _carried(found.points, group)
+    errors = [float(a[at]) for a in (found.bias, found.offset, leakage(found, current))]
+    level, *shown = (format_quantity(i, "A", 3) for i in (float(current[at]), *errors))
     yield Finding(
         f"the least signal current of {', '.join(parts)}, {level}, is {worst.value:.3g} times the errors at "
         f"{first.node} (bias {shown[0]}, offset {shown[1]}, leakage {shown[2]} at the hottest), "
@@ -172,26 +174,33 @@ def _floor(review: Review, settings: SignalCurrent.Settings, group: Sequence[Car
         evidence=[
             Evidence("least signal current over errors", worst.value, "1", settings.over_errors, ">=", basis="limit")
         ],
-        remedies=list(_above_floor(review, settings.over_errors * MARGIN, first, found, at, worst.value)),
+        remedies=list(
+            _above_floor(review, settings.over_errors * MARGIN, first, found, at, float(current[at]), errors)
+        ),
     )
 
 
 def _above_floor(
-    review: Review, wanted: float, carrier: Carrier, found: Disturbance, at: int, ratio: float
+    review: Review,
+    wanted: float,
+    carrier: Carrier,
+    found: Disturbance,
+    at: int,
+    level: float,
+    errors: Sequence[float],
 ) -> Iterator[Remedy]:
     """Smaller input resistor, where bias and leakage are the cause; better amplifier; narrower range."""
-    bias, offset, leakage = (float(a[at]) for a in (found.bias, found.offset, found.leakage))
-    level = ratio * (bias + offset + leakage)
+    bias, offset, leaking = errors
     left = level - wanted * offset  # the current of an offset grows as the resistor shrinks
     if left > 0:
-        yield from scaled(review, carrier, wanted * (bias + leakage) / left)
+        yield from scaled(review, carrier, wanted * (bias + leaking) / left)
     hottest = float(found.points.conditions.values["ambient"][at])
     amplifiers = [review.design.parts[ref] for ref in review.structure.amplifiers_of(carrier.node)]
     volts = max((offset_limit(amplifier, hottest) for amplifier in amplifiers), default=0.0)
-    yield from better_amplifiers(review, carrier.node, level / wanted - leakage, offset / volts if volts else 0.0)
+    yield from better_amplifiers(review, carrier.node, level / wanted - leaking, offset / volts if volts else 0.0)
     inputs = input_magnitude(found.points, carrier)
     if inputs is not None:
-        yield from narrowed(review, carrier, least=float(inputs[at]) * wanted / ratio)
+        yield from narrowed(review, carrier, least=float(inputs[at]) * wanted * sum(errors) / level)
 
 
 def _rating(review: Review, group: Sequence[Carrier]) -> Iterator[Finding]:

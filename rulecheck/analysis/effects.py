@@ -108,15 +108,16 @@ class Disturbance:
     ----------
     points : OperatingPoints
         At the highest ambient, supplies and potentiometers at typ, inputs above their cutoffs.
-    bias, offset, leakage : ndarray
-        From bias currents of amplifiers, from their offset voltages over the resistance at the node, and from
-        diodes and photodiodes on it.
+    bias, offset, dark, clamps : ndarray
+        From bias currents of amplifiers, from their offset voltages over the resistance at the node, from
+        photodiodes on it without light, and from diodes on it that stand by.
     """
 
     points: OperatingPoints
     bias: Array
     offset: Array
-    leakage: Array
+    dark: Array
+    clamps: Array
 
 
 def disturbance(review: Review, carrier: Carrier) -> Disturbance:
@@ -145,7 +146,7 @@ def disturbance(review: Review, carrier: Carrier) -> Disturbance:
         points,
         np.abs(bias - current("bias_current", dict.fromkeys(amplifiers, 0.0))),
         np.abs(offset - forward_current(points, carrier.part)),
-        _leakage(review, points, carrier),
+        *_leakages(review, points, carrier),
     )
 
 
@@ -167,22 +168,21 @@ def _offset_limit(points: OperatingPoints, ref: str) -> Array:
     return limit + drift * np.abs(np.nan_to_num(points.temperature(ref)) - NOMINAL_TEMPERATURE)
 
 
-def _leakage(review: Review, points: OperatingPoints, carrier: Carrier) -> Array:
-    """Currents at a node of diodes that do not carry the signal, and dark currents of photodiodes, at limits."""
-    design = review.design
+def _leakages(review: Review, points: OperatingPoints, carrier: Carrier) -> tuple[Array, Array]:
+    """Currents at a node of photodiodes without light, and of diodes that carry no signal, at their limits."""
     working = {log.part for log in review.structure.log_diodes} | {carrier.part}
-    total = np.zeros(points.conditions.size)
-    for ref, part in design.parts.items():
+    dark, clamps = np.zeros(points.conditions.size), np.zeros(points.conditions.size)
+    for ref, part in review.design.parts.items():
         if carrier.node not in part.pins.values() or ref in working:
             continue
         if part.kind == "diode":
             spread = part.reverse_leakage if part.reverse_leakage.typ > 0 else part.saturation_current
-            total = total + np.abs(points.current(ref, "A")) * spread.max / spread.typ
+            clamps = clamps + np.abs(points.current(ref, "A")) * spread.max / spread.typ
         elif part.kind == "photodiode":
-            dark = points.current(ref, "A") + points.conditions.values[ref]
             spread = part.dark_current
-            total = total + np.abs(dark) * (spread.max / spread.typ if spread is not None and spread.typ else 1.0)
-    return total
+            rise = spread.max / spread.typ if spread is not None and spread.typ else 1.0
+            dark = dark + np.abs(points.current(ref, "A") + points.conditions.values[ref]) * rise
+    return dark, clamps
 
 
 @dataclass(frozen=True, slots=True)
@@ -249,7 +249,7 @@ def _effect(
 
 
 def _scale(review: Review, output: str, voltage: Array, rows: BoolArray) -> Array:
-    """Reading of an output; of one that crosses zero, or is not known somewhere, its change for a whole change of an input's logarithm."""
+    """Reading of an output; unless it has one sign, its change for a whole change of an input's logarithm."""
     if (voltage > 0).all() or (voltage < 0).all():
         return np.abs(voltage)
     slopes = [np.abs(review.log_slope(output, name)[rows]) for name in review.design.inputs]

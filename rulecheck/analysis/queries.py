@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from ..circuit.structure import CurrentSources
+from ..circuit.structure import CurrentSources, LogDiode
 from ..devices.constants import Array, BoolArray
 from .conditions import Conditions
 from .operating_points import OperatingPoints
@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from .review import Review
 
 STEADY = 0.05  # of a current: base currents and Early voltages of the others move a fixed one by less
+CARRYING = 0.1  # of the largest current at a node
 FOLLOWING = 0.1  # of the inputs' own relative change
 
 
@@ -60,7 +61,7 @@ def carriers(review: Review) -> tuple[Carrier, ...]:
     """
     structure, parts = review.structure, review.design.parts
     nodes = {log.part: log.summing_node for log in structure.log_transistors}
-    nodes |= {log.part: log.summing_node for log in structure.log_diodes}
+    nodes |= {log.part: log.summing_node for log in structure.log_diodes if _carries(review, log)}
     others = {antilog.part for antilog in structure.antilog_transistors}
     others.update(ref for loop in structure.junction_loops for ref in loop.parts)
     found = []
@@ -73,6 +74,18 @@ def carriers(review: Review) -> tuple[Carrier, ...]:
         is_fixed = not sources.inputs if ref in nodes else not _follows_inputs(review, ref)
         found.append(Carrier(ref, node, structure.amplifier_of(node), ref in nodes, is_fixed, sources))
     return tuple(found)
+
+
+def _carries(review: Review, log: LogDiode) -> bool:
+    """Whether a log diode ever carries its part of what flows at its node; one that never does is a clamp."""
+    points, design, node = review.operating_points, review.design, log.summing_node
+    working = points.linear(log.amplifier)
+    pins = [(ref, pin) for ref, part in design.parts.items() for pin, net in part.pins.items() if net == node]
+    flows = [np.abs(points.current(ref, pin))[working].max(initial=0.0) for ref, pin in pins if ref != log.part]
+    if node in design.inputs:
+        flows.append(np.abs(review.conditions.values[node]).max(initial=0.0))
+    own = forward_current(points, log.part)[working].max(initial=0.0)
+    return not working.any() or bool(own > CARRYING * max(flows, default=0.0))
 
 
 def _follows_inputs(review: Review, ref: str) -> bool:

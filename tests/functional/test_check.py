@@ -267,7 +267,7 @@ def test_a_folder_is_searched_to_all_depths(run, tree):
     status, out, err = run("check", "boards", *ONLY, "--as", "json")
     assert status == 0
     assert files_of(out) == ["boards/b.toml", "boards/deep/a.toml"]
-    assert err == "boards/parts.toml: passed over, it has neither format nor [design]\n"
+    assert err == "boards/parts.toml: passed over, it is a catalogue of models\n"
 
 
 def test_a_file_in_a_folder_and_by_name_is_reviewed_once(run, tree):
