@@ -78,6 +78,7 @@ def _signal(review: Review, amplifier: str, judged: Mask) -> Floats:
     carrier = max((np.where(judged, c, np.nan) for c in currents), key=lambda c: float(np.nanmax(np.abs(c))))
     most = float(np.nanmax(np.abs(carrier)))
     crosses = np.nanmin(carrier) * np.nanmax(carrier) <= 0 or np.nanmin(np.abs(carrier)) < NEARLY_NOTHING * most
-    logs = [*structure.log_transistors] + [*structure.log_diodes]
-    is_logged = any(log.amplifier == amplifier for log in logs)
+    is_logged = amplifier in {log.amplifier for log in structure.log_transistors} | {
+        log.amplifier for log in structure.log_diodes
+    }
     return np.full(signal.shape, most) if crosses and not is_logged else signal

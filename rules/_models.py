@@ -40,13 +40,18 @@ def other_models(
     found = [
         (_strangeness(model.parameters, present), name)
         for name, model in review.design.models.items()
-        if model.kind == "op-amp" and name != present.model and fits(model.parameters)
+        if model.kind == "op-amp" and name != present.model and _says(model.parameters, "gain_bandwidth", *parameters)
+        and fits(model.parameters)
         and all(_takes_supply(review, r, model.parameters) for r in together)
     ]  # fmt: skip
     return [
         Remedy(f"take {name} for {', '.join(together)}: {why}", [set_parameter(r, "model", name) for r in together])
         for _, name in sorted(found)[:MOST_MODELS]
     ]
+
+
+def _says(model: Any, *parameters: str) -> bool:  # noqa: ANN401  # an amplifier's parameters
+    return all(getattr(model, name) is not None for name in parameters)
 
 
 def in_packages_of(review: Review, amplifiers: Sequence[str]) -> list[str]:

@@ -86,7 +86,8 @@ def quietest_diode(review: Review) -> str | None:
     nets = review.design.nets.values()
     rails = [v for net in nets if net.role == "supply" and net.voltage for v in (net.voltage.min, net.voltage.max)]
     span = max([0.0, *rails]) - min([0.0, *rails])
-    fitting = [m for m in review.design.models.values() if m.kind == "diode" and _stands(m, span)]
+    diodes = (m for m in review.design.models.values() if m.kind == "diode")
+    fitting = [m for m in diodes if m.parameters.saturation_current is not None and _stands(m, span)]
     return min(fitting, key=lambda m: (leakage_bound(m.parameters), m.name)).name if fitting else None
 
 
@@ -177,7 +178,8 @@ def sturdier(review: Review, ref: str, rating: str, needed: float) -> list[Remed
     found = [
         (abs(math.log(m.parameters.saturation_current.typ / part.saturation_current.typ)), m.name)
         for m in review.design.models.values()
-        if part.model and m.kind == part.kind and m.name != part.model and _has(rating, needed, m.parameters)
+        if part.model and m.kind == part.kind and m.name != part.model and m.parameters.saturation_current is not None
+        and _has(rating, needed, m.parameters)
         and (part.kind == "diode" or m.parameters.monolithic == part.monolithic)
     ]  # fmt: skip
     together = _alike(review, ref)

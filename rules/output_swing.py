@@ -84,8 +84,8 @@ def _at_limit(review: Review, settings: OutputSwing.Settings, group: list[str], 
     worst = points.worst(np.where(np.isnan(excess) & where, 0.0, excess))
     upper = str(points.state(first)[worst.index]) == "high"
     limit = float((high if upper else low)[worst.index])
-    wanted = float(needed[worst.index])
-    within_reach = worst.value < BOUNDLESS / 2
+    wanted = float(np.nan_to_num(needed[worst.index], nan=np.copysign(BOUNDLESS, limit)))
+    within_reach = abs(wanted) < BOUNDLESS / 2
     needs = format_quantity(wanted, "V", 3)
     words = f"it would need {needs}" if within_reach else f"not even {needs} would balance its loop"
     side = "high" if upper else "low"

@@ -50,7 +50,7 @@ class Carrier:
 
 
 def carriers(review: Review) -> tuple[Carrier, ...]:
-    """Junctions of log, antilog and junction loops with their currents, in the order of the file.
+    """Log and antilog junctions, and those that stand against them, with their currents, in the order of the file.
 
     The current of a log transistor is fixed where no input reaches its summing node; that of another where it
     does not vary with the inputs over the review conditions.
@@ -63,7 +63,9 @@ def carriers(review: Review) -> tuple[Carrier, ...]:
     nodes = {log.part: log.summing_node for log in structure.log_transistors}
     nodes |= {log.part: log.summing_node for log in structure.log_diodes if _carries(review, log)}
     others = {antilog.part for antilog in structure.antilog_transistors}
-    others.update(ref for loop in structure.junction_loops for ref in loop.parts)
+    # A mirror compares junctions too, but takes no logarithm.
+    loops = [loop for loop in structure.junction_loops if others.union(nodes) & set(loop.parts)]
+    others.update(ref for loop in loops for ref in loop.parts)
     found = []
     for ref in parts:
         if ref not in nodes and ref not in others:

@@ -2,33 +2,23 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from ..circuit.islands import ideal_nets
 from ..devices.constants import Array, BoolArray, IntArray
 from ..errors import AnalysisError
 from .conditions import Conditions
-from .islands import Piece, cut, solve_pieces
-from .operating_points import OperatingPoints
 from .queries import at_typical
-from .sensitivity import touches
-from .spreads import Deviation, deviations, in_force, moved, of_supply
-from .transfer import judged, law_values, trim_error
-from .trims import null, trims_among
+from .sampling import MOST_BYTES, Sampler
+from .transfer import judged, law_values
 
 if TYPE_CHECKING:
-    from ..design.model import Design, Requirement
+    from ..design.model import Requirement
     from .review import Review
-    from .values import Overrides
 
-MOST_BYTES = 32 * 2**20
-"""Bound of the matrices that a batch of samples works on; outputs and laws of all samples are kept beside them."""
-MATRICES = 6
-"""Matrices of the nodal equations that Newton's method holds for each condition at a time."""
 CONFIDENCE = 1.959963984540054
 """Standard deviations to either side that hold 95 % of a normal distribution."""
 
@@ -178,7 +168,7 @@ def draw(
     progress : callable, optional
         Told the number of samples done after each batch; what it raises ends the work.
     most_bytes : int
-        Bound of the matrices of a batch.
+        Bound of the matrices of a batch; output and law of every sample are kept beside them.
 
     Returns
     -------
@@ -186,10 +176,10 @@ def draw(
     """
     rows = sampled_rows(review, requirement) if rows is None else rows
     conditions = review.conditions.take(rows)
-    sampler = _Sampler(review, requirement, conditions, count, most_bytes)
+    sampler = Sampler(review, requirement, conditions, count, most_bytes)
     output, law = np.empty((2, count, len(rows)))
-    random, done = np.random.default_rng(seed), 0
-    for found, asked in sampler.run(random):
+    done = 0
+    for found, asked in sampler.run(np.random.default_rng(seed)):
         new = min(len(found), count - done)
         output[done : done + new], law[done : done + new] = found[:new], asked[:new]
         done += new
@@ -199,100 +189,3 @@ def draw(
     with np.errstate(invalid="ignore"):
         inside = np.abs(error) <= requirement.absolute + requirement.reading * np.abs(law)
     return Samples(requirement, conditions, rows, seed, output, error, inside)
-
-
-class _Batch:
-    """One piece at conditions near nominal ones, from whose solution every solve starts."""
-
-    def __init__(self, design: Design, piece: Piece, nominal: Conditions) -> None:
-        self.design, self.piece = design, piece
-        self.cache: dict[Any, Any] = {}
-        self._solve(nominal, {}, self.cache)
-
-    def solve(self, overrides: Overrides, conditions: Conditions) -> OperatingPoints:
-        return self._solve(conditions, overrides, dict(self.cache))
-
-    def _solve(self, conditions: Conditions, overrides: Overrides, cache: dict[Any, Any]) -> OperatingPoints:
-        placed = solve_pieces(
-            (self.piece,), conditions, with_clamps=False, overrides=overrides, temperatures={}, cache=cache
-        )
-        return OperatingPoints(self.design, conditions, placed)
-
-
-class _Sampler:
-    """Batches of samples of one requirement, all of one size."""
-
-    def __init__(
-        self, review: Review, requirement: Requirement, conditions: Conditions, count: int, most_bytes: int
-    ) -> None:  # fmt: skip
-        self.review, self.design, self.requirement = review, review.design, requirement
-        self.points_each = conditions.size
-        self.piece = _piece_of(review, requirement.output)
-        self.deviations = [
-            d for d in deviations(self.design) if touches(requirement, review.operating_points, d)
-        ]  # fmt: skip
-        unknowns = max(p.solution.network.unknowns for p in review.operating_points.placed)
-        each = MATRICES * 8 * (unknowns + 1) ** 2 * self.points_each
-        self.batches = -(-count // max(1, most_bytes // each))
-        self.size = -(-count // self.batches)
-        self.conditions = conditions.take(np.tile(np.arange(self.points_each), self.size))
-        self.force = [in_force(self.design, d, self.conditions) for d in self.deviations]
-        self.trims = trims_among(self.design, self.piece.design.parts)
-        self.trim_batches: dict[str, _Batch] = {}
-
-    def run(self, random: np.random.Generator) -> Iterator[tuple[Array, Array]]:
-        """Outputs and laws of batch after batch, shape (samples, conditions)."""
-        batch = _Batch(self.design, self.piece, self.conditions)
-        low = np.array([d.low for d in self.deviations])
-        high = np.array([d.high for d in self.deviations])
-        for _ in range(self.batches):
-            amounts = low + (high - low) * random.random((self.size, len(low)))
-            positions = self._set_trims(amounts)
-            everywhere = np.repeat(amounts, self.points_each, axis=0).T
-            moves = [(d.moves, a * f) for d, a, f in zip(self.deviations, everywhere, self.force, strict=True)]
-            overrides, conditions = moved(self.design, self.conditions, moves)
-            points = batch.solve(overrides, _with(conditions, positions, self.points_each))
-            shape = (self.size, self.points_each)
-            law = law_values(self.requirement, points)
-            yield points.voltage(self.requirement.output).reshape(shape), law.reshape(shape)
-
-    def _set_trims(self, amounts: Array) -> dict[str, Array]:
-        """Positions of the trims in each sample, set one after the other."""
-        steady = [(d, a) for d, a in zip(self.deviations, amounts.T, strict=True) if not of_supply(self.design, d)]
-        positions: dict[str, Array] = {}
-        for ref in self.trims:
-            spread = self.design.parts[ref].position
-            low, high = (spread.min, spread.max) if spread.min < spread.max else (0.0, 1.0)
-            start = np.full(self.size, self.review.typical[ref])
-            positions[ref] = null(self._trim_error(ref, steady, positions), start, low, high)
-        return positions
-
-    def _trim_error(
-        self, ref: str, amounts: list[tuple[Deviation, Array]], others: dict[str, Array]
-    ) -> Callable[[Array], Array]:
-        """Error that a trim nulls, as a function of its positions in the samples."""
-        requirement = self.design.requirements[self.design.parts[ref].adjusts]
-
-        def solver(conditions: Conditions) -> OperatingPoints:
-            if ref not in self.trim_batches:
-                self.trim_batches[ref] = _Batch(self.design, self.piece, conditions)
-            overrides, changed = moved(self.design, conditions, [(d.moves, a) for d, a in amounts])
-            return self.trim_batches[ref].solve(overrides, changed)
-
-        return lambda here: trim_error(self.design, requirement, {**others, ref: here}, solver)
-
-
-def _with(conditions: Conditions, positions: dict[str, Array], repeats: int) -> Conditions:
-    repeated = {ref: np.repeat(values, repeats) for ref, values in positions.items()}
-    return Conditions({**conditions.values, **repeated}, conditions.scenario, conditions.absent)
-
-
-def _piece_of(review: Review, net: str) -> Piece:
-    """The piece in which a net is free to move, at its own place in the design."""
-    if net in ideal_nets(review.design):
-        raise AnalysisError(f"net {net} is held by an ideal source", "there is nothing to sample")
-    pieces = cut(review.design, review.circuit, frozenset(review.design.parts))
-    found = [piece for piece in pieces if net in piece.copies[0].island.nets]
-    if not found:
-        raise AnalysisError(f"no part stands on net {net}", "there is nothing to sample")
-    return found[0]

@@ -108,8 +108,10 @@ def test_clamp_behind_a_stopper(board, name):
 
 def test_log_diode_is_no_clamp(board):
     """A diode that carries the signal itself does not leak into it."""
-    diode = ('Q1 = { kind = "pnp", model = "close-pnp", pins = { C = "S", B = "S", E = "VOUT" } }',
-             'D9 = { kind = "diode", model = "small-signal-diode", pins = { A = "VOUT", K = "S" } }')
+    diode = (
+        'Q1 = { kind = "pnp", model = "close-pnp", pins = { C = "S", B = "S", E = "VOUT" } }',
+        'D9 = { kind = "diode", model = "small-signal-diode", pins = { A = "VOUT", K = "S" } }',
+    )
     assert_clean(InputProtection, board("strip", diode))
 
 

@@ -132,9 +132,19 @@ def test_voltage_ratings(board, cures):
 
 def test_reverse_voltage_in_another_loop(board, cures):
     """The clamps of a pair on one emitter line see the same, and are given a better model."""
-    design = board("vapour", ONE_AMBIENT, ("D1 = { kind = \"diode\", model = \"low-leakage-diode\"", "D1 = { kind = \"diode\", model = \"weak-diode\""))
+    weak = ('D1 = { kind = "diode", model = "low-leakage-diode"', 'D1 = { kind = "diode", model = "weak-diode"')
+    design = board("vapour", ONE_AMBIENT, weak)
     assert_finds(JunctionReverse, design, parts=["D1"])
     assert cures(design, JunctionReverse)["take low-leakage-diode for D1"] == []
+
+
+def test_what_comes_with_a_reversal_is_one_finding(board):
+    """The output current that a saturated amplifier drives into the emitter line is told of with the reversal."""
+    small = ('"10 kohm", tolerance = "1 %", pins = ["O1"', '"47 ohm", tolerance = "1 %", pins = ["O1"')
+    drain = ("D2 = {", 'R9 = { kind = "resistor", value = "330 ohm", pins = ["T1", "GND"] }\nD2 = {')
+    found = findings_of(board("vapour", small, drain, *CLAMPS["vapour"]), JunctionReverse)
+    assert [f.parts for f in found if f.severity is Severity.MAJOR] == [("Q1", "Q2")]
+    assert {"emitter-base reverse voltage of Q1", "output current of U1"} <= {e.quantity for e in found[0].evidence}
 
 
 def test_what_is_usual_is_another_matter(board):

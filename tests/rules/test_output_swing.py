@@ -175,10 +175,13 @@ def test_supply_and_model_cure_a_follower(board, cures):
 
 
 INVERTING = (
-    ('pins = ["VIN", "IN"] }', """pins = ["VIN", "W"] }
-R9 = { kind = "resistor", value = "93.1 kohm", pins = ["W", "BUF"] }"""),
+    (
+        'pins = ["VIN", "IN"] }',
+        """pins = ["VIN", "W"] }
+R9 = { kind = "resistor", value = "93.1 kohm", pins = ["W", "BUF"] }""",
+    ),
     ('"IN+" = "IN", IN- = "BUF"', '"IN+" = "MID", IN- = "W"'),
-    ('C1 = {', 'C9 = { kind = "capacitor", value = "22 pF", pins = ["W", "BUF"] }\nC1 = {'),
+    ("C1 = {", 'C9 = { kind = "capacitor", value = "22 pF", pins = ["W", "BUF"] }\nC1 = {'),
     ('pins = ["BUF", "S"]', 'pins = ["BUF", "S"], package = "N1"'),
     ('["4 V", "8 V"]', '["4.2 V", "5.8 V"]'),
     ('R1 = { kind = "resistor", value = "10 kohm"', 'R1 = { kind = "resistor", value = "20 kohm"'),

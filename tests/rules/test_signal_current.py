@@ -100,8 +100,8 @@ def test_leakage_counts(board, leakage, is_found):
     finding = found(board, "floor", "light_ratio", *changes)
     assert (finding is not None) == is_found
     assert (
-        finding is None or "leakage 115 pA" in finding.message
-    )  # 20 pA doubled every 10 K from 25 to 50 degC, and 2 fA
+        finding is None or "leakage 113 pA" in finding.message
+    )  # 20 pA doubled every 10 K from 25 to 50 degC
 
 
 @pytest.mark.parametrize(
