@@ -32,7 +32,7 @@ from rulecheck.units import ZERO_CELSIUS, Dimension, Spread, dimension_of, forma
 from rulecheck.units import Unit as _Unit
 
 if TYPE_CHECKING:
-    from rulecheck.analysis.conditions import Conditions
+    from rulecheck.analysis.conditions import Conditions, above_cutoff
     from rulecheck.analysis.effects import (
         Disturbance,
         SupplyEffect,
@@ -77,7 +77,7 @@ if TYPE_CHECKING:
 _LAZY = {
     name: module
     for module, names in {
-        "rulecheck.analysis.conditions": ("Conditions",),
+        "rulecheck.analysis.conditions": ("Conditions", "above_cutoff"),
         "rulecheck.analysis.operating_points": ("OperatingPoints", "Worst"),
         "rulecheck.analysis.loops": ("IslandLoops", "Loops"),
         "rulecheck.analysis.effects": (
@@ -168,6 +168,7 @@ __all__ = [
     "Transfer",
     "Unit",
     "Worst",
+    "above_cutoff",
     "at_typical",
     "bias_limit",
     "carriers",

@@ -9,7 +9,7 @@ import numpy as np
 
 from rulecheck.api import Part, Review
 
-from ._saturation import Floats, Mask, asked_everywhere
+from ._saturation import Floats, Mask, asked_everywhere, working
 
 NEARLY_NOTHING = 1e-4
 """Share of its largest value below which a signal is taken to go through zero."""
@@ -39,7 +39,7 @@ def leakages(review: Review) -> Iterator[Leakage]:
     """Leakages of all diodes at summing nodes that carry no signal themselves."""
     points, nodes = review.operating_points, {n.net: n.amplifier for n in review.structure.summing_nodes}
     at_work = _at_work(review)
-    clamps = [p for p in review.design.parts.values() if p.kind == "diode" and p.ref not in at_work]
+    clamps = [p for p in working(review.design).values() if p.kind == "diode" and p.ref not in at_work]
     at_nodes = [(part, pin, net) for part in clamps for pin, net in part.pins.items() if net in nodes]
     if not at_nodes:
         return
@@ -68,7 +68,7 @@ def _signal(review: Review, amplifier: str, judged: Mask) -> Floats:
     """
     points, structure, at_work = review.operating_points, review.structure, _at_work(review)
     nets = {node.net for node in structure.summing_nodes if node.amplifier == amplifier}
-    parts = [p for p in review.design.parts.values() if p.kind != "diode" or p.ref in at_work]
+    parts = [p for p in working(review.design).values() if p.kind != "diode" or p.ref in at_work]
     # Behind a stopper there is nothing but the input and clamps: the signal is on its other side.
     brought = [p for p in parts if p.kind != "op-amp" and nets & set(p.pins.values())]
     if len(brought) == 1 and brought[0].kind == "resistor":

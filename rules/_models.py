@@ -42,7 +42,7 @@ def other_models(
         for name, model in review.design.models.items()
         if model.kind == "op-amp" and name != present.model and _says(model.parameters, "gain_bandwidth", *parameters)
         and fits(model.parameters)
-        and all(_takes_supply(review, r, model.parameters) for r in together)
+        and all(_takes_supply(review, r, model.parameters) for r in together if not parts[r].spare)
     ]  # fmt: skip
     return [
         Remedy(f"take {name} for {', '.join(together)}: {why}", [set_parameter(r, "model", name) for r in together])
@@ -113,7 +113,7 @@ def higher_supplies(review: Review, ref: str, missing: Mapping[str, float]) -> l
         words.append(f"{net.name} {format_quantity(volts, 'V')}")
         added[net.name] = _largest(net) * (volts / _typ(net) - 1)
     for other, part in review.design.parts.items():
-        if part.kind == "op-amp" and part.supply is not None:
+        if part.kind == "op-amp" and part.supply is not None and not part.spare:
             more = sum(added[source] for source in _sources(rails, part))
             if more and total_supply(review, other)[1] + more > part.supply.max:
                 return []

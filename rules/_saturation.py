@@ -9,7 +9,7 @@ import networkx as nx
 import numpy as np
 import numpy.typing as npt
 
-from rulecheck.api import OperatingPoints, Part, Requirement, Review
+from rulecheck.api import Design, OperatingPoints, Part, Requirement, Review, above_cutoff
 
 Mask = npt.NDArray[np.bool_]
 Floats = npt.NDArray[np.floating[Any]]
@@ -17,6 +17,11 @@ Node = tuple[str, str]
 TWO_TERMINAL = ("resistor", "diode", "voltage-source", "potentiometer")
 OFF = 0.1
 """V_BE [V] below which a junction carries nothing that matters."""
+
+
+def working(design: Design) -> dict[str, Part]:
+    """Parts that are not spare: these have their pins connected, and are there to be judged."""
+    return {ref: part for ref, part in design.parts.items() if not part.spare}
 
 
 class SignalFlow:
@@ -32,11 +37,11 @@ class SignalFlow:
     """
 
     def __init__(self, review: Review) -> None:
-        self._design, self._circuit = review.design, review.circuit
+        self._design, self._circuit, self._working = review.design, review.circuit, working(review.design)
         nodes = review.structure.summing_nodes
         self._following = [n for n in nodes if review.structure.held_at(n.level_net) is None]
         self._held = {n.net for n in nodes if n not in self._following}
-        self.amplifiers = [r for r, p in review.design.parts.items() if p.kind == "op-amp"]
+        self.amplifiers = [r for r, p in self._working.items() if p.kind == "op-amp"]
         self._driven = {review.design.parts[a].pins["OUT"] for a in self.amplifiers}
         self._graph: nx.DiGraph[Node] = nx.DiGraph(self._edges())
         self._graph.add_nodes_from(("part", a) for a in self.amplifiers)
@@ -66,8 +71,10 @@ class SignalFlow:
     def _beside(self, net: str) -> Iterator[str]:
         """Nets that a signal on a net reaches through one part."""
         for _, (_, ref), pin in self._circuit.edges(("net", net), keys=True):
-            part = self._design.parts[ref]
-            yield from (part.pins[out] for out in _exits(part, pin) if not self._is_fixed(part.pins[out]))
+            if ref in self._working:
+                pins = self._working[ref].pins
+                exits = _exits(self._working[ref], pin)
+                yield from (pins[out] for out in exits if not self._is_fixed(pins[out]))
 
     def _is_fixed(self, name: str) -> bool:
         net = self._design.nets[name]
@@ -181,10 +188,7 @@ def _inside(review: Review, ranges: Mapping[str, tuple[float, float]]) -> Mask:
         low, high = ranges.get(name, (source.low, source.high))
         slack = 1e-9 * max(abs(low), abs(high))
         inside &= (x >= low - slack) & (x <= high + slack)
-        if source.cutoff is not None:
-            # Of a range that just reaches across zero the far side is below the cutoff too.
-            side = 1.0 if source.high > -source.low else -1.0 if source.high < -source.low else np.sign(x)
-            inside &= side * x >= source.cutoff * (1 - 1e-9)
+        inside &= above_cutoff(source, x)
     for ref, part in review.design.parts.items():
         if part.kind == "potentiometer" and part.adjusts is not None:
             inside &= review.conditions.values[ref] == review.typical[ref]

@@ -22,7 +22,7 @@ from rulecheck.api import (
 
 from ._edits import quantity, set_parameter
 from ._models import higher_supplies, in_packages_of, other_models
-from ._saturation import Floats, Mask, is_at_limit
+from ._saturation import Floats, Mask, is_at_limit, working
 
 BOUNDLESS = 1000.0
 """Volts beyond its rails to which an output is let go to see what it would need."""
@@ -56,7 +56,7 @@ class Demand:
     def points(self) -> OperatingPoints:
         """Operating points with limits far out; those of the circuit itself where no output is at one."""
         review, points = self._review, self._review.operating_points
-        amplifiers = [ref for ref, part in review.design.parts.items() if part.kind == "op-amp"]
+        amplifiers = [ref for ref, part in working(review.design).items() if part.kind == "op-amp"]
         if not any(is_at_limit(points, a).any() for a in amplifiers):
             return points
         sides = [f"output_headroom.{side}" for side in ("low", "high")]
@@ -98,7 +98,11 @@ def swing_remedies(review: Review, demand: Demand, amplifier: str, margin: Float
     either = np.fmax(*short.values())
     if not np.isfinite(either).any() or np.nanmax(either) > BOUNDLESS / 2:
         return [Remedy("no swing would do: look at the gain, and at the sign of the currents into its summing node")]
-    together = [_distances(review, demand, a, margin, judged) for a in in_packages_of(review, [amplifier])]
+    together = [
+        _distances(review, demand, a, margin, judged)
+        for a in in_packages_of(review, [amplifier])
+        if a in working(review.design)
+    ]
 
     def fits(model: Any) -> bool:  # noqa: ANN401  # an amplifier's parameters
         ends = (model.output_headroom.low.max, model.output_headroom.high.max)
@@ -218,7 +222,7 @@ class _Flows:
         self.total = worst.value
         self.resistors = {
             ref: abs(float(points.current(ref, pin)[worst.index]))
-            for ref, part in review.design.parts.items()
+            for ref, part in working(review.design).items()
             if part.kind == "resistor" and part.value.typ > 0
             for pin, net in part.pins.items()
             if net == out

@@ -153,7 +153,7 @@ def _remedies(
     review: Review, settings: InputHeadroom.Settings, amplifiers: list[str], rooms: dict[str, list[_Room]], worst: _Room
 ) -> list[Remedy]:
     rail = "V-" if worst.side == "low" else "V+"
-    together = [room for a in in_packages_of(review, amplifiers) for room in rooms[a]]
+    together = [room for a in in_packages_of(review, amplifiers) for room in rooms.get(a, ())]
 
     def fits(model: Any) -> bool:  # noqa: ANN401  # an amplifier's parameters
         others = (replace(room, headroom=getattr(model.input_headroom, room.side).max) for room in together)

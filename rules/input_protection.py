@@ -33,6 +33,7 @@ from ._edits import add_diode, add_in_series, set_parameter
 from ._leakage import Leakage, leakages
 from ._models import other_models
 from ._protection import KNEE, leakage_bound, quietest_diode, rated, series_resistor
+from ._saturation import working
 
 INPUTS = ("IN+", "IN-")
 CLAMPED = 1e-3
@@ -63,7 +64,7 @@ class InputProtection(Rule):
 
     def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
         """Judge currents, then reversal, then leakage."""
-        for part in review.design.parts.values():
+        for part in working(review.design).values():
             if part.kind == "op-amp":
                 yield from _clamp_current(review, settings, part)
                 if part.phase_reversal:

@@ -30,7 +30,7 @@ from rulecheck.api import (
 )
 
 from ._protection import against_current, against_reversal, rated, sturdier
-from ._saturation import Floats, SignalFlow, causes_of
+from ._saturation import Floats, SignalFlow, causes_of, working
 
 REVERSAL = "emitter_base_breakdown"
 SLACK = 1e-3
@@ -64,7 +64,7 @@ class JunctionReverse(Rule):
         flow = SignalFlow(review)
         found = [
             stress
-            for part in review.design.parts.values()
+            for part in working(review.design).values()
             for stress in _stresses(part, review.faults, settings)
             if stress.is_exceeded and (stress.unit == "V" or not _is_usual(review, settings, stress))
         ]

@@ -43,7 +43,7 @@ class TransferLaw(Rule):
     title = "Output that does not follow its law"
     source = "limits: the requirement's own accuracy; exponent: common practice, no source"
     default_severity = Severity.MAJOR
-    needs = ("operating_points",)
+    needs = ("operating_points", "loops")
 
     class Settings(BaseModel):
         """Limits."""
@@ -93,7 +93,7 @@ def _names(review: Review, requirement: Requirement) -> dict[str, Dimension]:
 
 def _nominal(review: Review, transfer: Transfer) -> Iterable[Finding]:
     requirement, points = transfer.requirement, review.operating_points
-    allowed = np.where(transfer.judged, transfer.allowed, np.nan)
+    allowed = np.where(transfer.judged & _at_work(review), transfer.allowed, np.nan)
     with np.errstate(all="ignore"):
         ratio = np.abs(transfer.error) / allowed
     if not np.isfinite(ratio).any():
@@ -115,9 +115,19 @@ def _nominal(review: Review, transfer: Transfer) -> Iterable[Finding]:
     )  # fmt: skip
 
 
+def _at_work(review: Review) -> np.ndarray:
+    """Conditions at which no amplifier has left its range or its sign of feedback: that is another rule's fault."""
+    points = review.operating_points
+    mask = np.ones(review.conditions.size, bool)
+    for amplifier in review.loops.amplifiers:
+        linear = points.linear(amplifier)
+        mask &= (linear | ~linear.any()) & ~(review.loops.dc_return_ratio(amplifier) < 0)
+    return mask
+
+
 def _exponents(review: Review, settings: TransferLaw.Settings, transfer: Transfer) -> Iterable[Finding]:
     requirement, points = transfer.requirement, review.operating_points
-    large = transfer.judged & (np.abs(transfer.law) > settings.above_absolute * requirement.absolute)
+    large = transfer.judged & _at_work(review) & (np.abs(transfer.law) > settings.above_absolute * requirement.absolute)
     for name, exponent in transfer.exponent.items():
         asked = np.where(large, transfer.law_exponent[name], np.nan)
         if not np.isfinite(asked).any() or np.nanmax(asked) - np.nanmin(asked) > 1e-6:

@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from ..devices.constants import Array, Index
+from ..devices.constants import Array, BoolArray, Index
 from ..errors import CommandError
 from ..units import format_quantity
 
@@ -89,6 +89,19 @@ def spaced(source: Input, count: int = POINTS_PER_INPUT) -> Array:
         points = np.linspace(source.low, source.high, count)
     points[0], points[-1] = source.low, source.high
     return points
+
+
+def above_cutoff(source: Input, x: Array) -> BoolArray:
+    """Whether source values are such that a law is asked of them.
+
+    Of a range that just reaches across zero the far side is below the cutoff; of one that reaches as far
+    on both sides the magnitude counts.
+    """
+    if source.cutoff is None:
+        return np.ones(np.shape(x), bool)
+    side = np.sign(x) if source.high == -source.low else 1.0 if source.high > -source.low else -1.0
+    above: BoolArray = side * x >= source.cutoff * (1 - 1e-9)
+    return above
 
 
 def review_grid(design: Design, typical: Row | None = None) -> Conditions:

@@ -17,7 +17,7 @@ import numpy as np
 
 from ..devices.constants import Array, BoolArray, IntArray
 from .conditions import Conditions, Row, from_rows
-from .latching_starts import Batch, all_starts
+from .latching_starts import Batch, from_faults, from_pushes, joined, pushes_of
 from .newton import State, iterate
 from .settling import STRAY, settle
 from .small_signal import linearise
@@ -154,24 +154,25 @@ class _Search:
     Attributes
     ----------
     starts, lost : int
-    rows : ndarray of int
-        Row of the nominal solution of each that was found.
-    origins : list of Origin
+    rows, cause : ndarray of int
+        Of each that was found: row of the nominal solution; which push, or beyond those which row of the faults.
     found : Solution
     """
 
     def __init__(self, points: Solution, faults: Solution) -> None:
-        starts = all_starts(points, faults)
-        batch = Batch.at(points, starts.rows)
-        state = settle(points, batch.values(), starts.state)
-        self.starts, self.lost = len(starts.rows), int((~state.converged).sum())
-        others = np.flatnonzero(state.converged & _differs(points, starts.rows, state.x))
-        others = others[_first_of_each(points, starts.rows[others], state.x[others])]
+        self.pushes = pushes_of(points.network)
+        pushed, faulty = from_pushes(points, self.pushes), from_faults(points, faults)
+        rows = np.concatenate([pushed.rows, faulty.rows])
+        cause = np.concatenate([pushed.cause, len(self.pushes) + faulty.cause])
+        batch = Batch.at(points, rows)
+        state = settle(points, batch.values(), joined(pushed.state, faulty.state))
+        self.starts, self.lost = len(rows), int((~state.converged).sum())
+        others = np.flatnonzero(state.converged & _differs(points, rows, state.x))
+        others = others[_first_of_each(points, rows[others], state.x[others])]
         batch, state = _warmed(batch.take(others), state.take(others))
         stable = _is_stable(batch.solution(state))
         keep = np.flatnonzero(state.converged & stable & _differs(points, batch.rows, state.x))
-        self.rows = batch.rows[keep]
-        self.origins = [starts.origins[i] for i in others[keep]]
+        self.rows, self.cause = batch.rows[keep], cause[others[keep]]
         self.found = batch.take(keep).solution(state.take(keep))
 
     def records(self, placed: Placed, fault: Placed, scenarios: Sequence[str]) -> list[SecondPoint]:
@@ -180,17 +181,18 @@ class _Search:
         states = {here[ref]: self.found.state(ref) for ref in self.found.network.amplifiers}
         voltages = {name: self.found.voltage(solved) for name, solved in placed.nets.items()}
         records = []
-        for i, (row, origin) in enumerate(zip(self.rows, self.origins, strict=True)):
+        for i, (row, cause) in enumerate(zip(self.rows, self.cause, strict=True)):
             index = _first(placed.index == row)
             if index is None:  # a condition that another place of the same circuit meets
                 continue
-            scenario = _first(fault.index == origin.fault)
-            start = f"{here[origin.part]} {origin.words}" if origin.part else "a fault scenario"
+            push = self.pushes[cause] if cause < len(self.pushes) else None
+            scenario = _first(fault.index == cause - len(self.pushes))
+            of_fault = "a fault scenario" if scenario is None else scenarios[scenario]
             records.append(
                 SecondPoint(
                     index=index,
-                    start=start if scenario is None else scenarios[scenario],
-                    part=here.get(origin.part),
+                    start=f"{here[push.part]} {push.words}" if push else of_fault,
+                    part=here[push.part] if push else None,
                     states={ref: str(state[i]) for ref, state in states.items()},
                     voltages={net: float(v[i]) for net, v in voltages.items()},
                 )

@@ -21,25 +21,22 @@ ITERATIONS = 80
 
 
 @dataclass(frozen=True)
-class Origin:
-    """Where a start comes from.
+class Push:
+    """A part that is held aside while the rest of its circuit settles.
 
     Attributes
     ----------
     part : str
-        Amplifier or transistor that was held aside; empty for a fault scenario.
+        Amplifier or transistor.
     words : str
-        How it was held.
+        How it is held.
     volts : float
         Added to the input of the amplifier, or to the base-emitter voltage of the transistor.
-    fault : int
-        Row of the fault scenarios; -1 for a part.
     """
 
-    part: str = ""
-    words: str = ""
-    volts: float = 0.0
-    fault: int = -1
+    part: str
+    words: str
+    volts: float
 
 
 @dataclass(frozen=True)
@@ -79,52 +76,55 @@ class Batch:
 
 @dataclass(frozen=True)
 class Starts:
-    """States to settle from: the row of the nominal solution that each belongs to, and where it comes from."""
+    """States to settle from.
+
+    Attributes
+    ----------
+    rows : ndarray of int, shape (starts,)
+        Row of the nominal solution that each belongs to.
+    state : State
+    cause : ndarray of int, shape (starts,)
+        Which push or which row of the fault scenarios it comes from.
+    """
 
     rows: IntArray
     state: State
-    origins: tuple[Origin, ...]
+    cause: IntArray
 
 
-def all_starts(points: Solution, faults: Solution) -> Starts:
-    """Starts of one circuit.
+def pushes_of(network: Network) -> tuple[Push, ...]:
+    """What is pushed in a circuit: each amplifier to each limit, each transistor off."""
+    ends = (("high", PUSH), ("low", -PUSH))
+    pushes = [Push(ref, f"pushed to its {end} limit", volts) for ref in network.amplifiers for end, volts in ends]
+    return (*pushes, *(Push(ref, "cut off", CUT) for ref in network.transistors))
+
+
+def from_pushes(points: Solution, pushes: tuple[Push, ...]) -> Starts:
+    """Each part pushed aside, the rest settled about it, then let go.
 
     Parameters
     ----------
     points : Solution
         Nominal.
-    faults : Solution
-        The same circuit in fault scenarios.
+    pushes : tuple of Push
 
     Returns
     -------
     Starts
     """
-    one, other = pushed(points), from_faults(points, faults)
-    return Starts(
-        np.concatenate([one.rows, other.rows]), joined(one.state, other.state), (*one.origins, *other.origins)
-    )
-
-
-def pushed(points: Solution) -> Starts:
-    """Each amplifier at each limit and each transistor cut off, the rest settled about it, then let go."""
     network = points.network
-    held = [Origin(ref, f"pushed to its {end} limit", volts) for ref in network.amplifiers
-            for end, volts in (("high", PUSH), ("low", -PUSH))]  # fmt: skip
-    held += [Origin(ref, "cut off", CUT) for ref in network.transistors]
     base = np.flatnonzero(points.converged)
-    rows, which = np.tile(base, len(held)), np.repeat(np.arange(len(held)), len(base))
-    batch = Batch.at(points, rows)
-    values = batch.values()
-    onto_amplifier = np.array([[o.volts * (o.part == ref) for ref in network.amplifiers] for o in held])[which]
-    onto_transistor = np.array([[o.volts * (o.part == ref) for ref in network.transistors] for o in held])[which]
+    rows, cause = np.tile(base, len(pushes)), np.repeat(np.arange(len(pushes)), len(base))
+    values = Batch.at(points, rows).values()
+    onto_amplifier = np.array([[p.volts * (p.part == ref) for ref in network.amplifiers] for p in pushes])[cause]
+    onto_transistor = np.array([[p.volts * (p.part == ref) for ref in network.transistors] for p in pushes])[cause]
     aside = replace(
         values,
         offset=values.offset + onto_amplifier,
         transistor=replace(values.transistor, mismatch=values.transistor.mismatch + onto_transistor),
     )
     state = _settled(points, aside, _on_limits(points, values, points.state_vector.take(rows), onto_amplifier))
-    return Starts(rows, _let_go(points, values, state, onto_amplifier), tuple(held[i] for i in which))
+    return Starts(rows, _let_go(points, values, state, onto_amplifier), cause)
 
 
 def _on_limits(points: Solution, values: Values, state: State, push: Array) -> State:
@@ -159,17 +159,32 @@ def _let_go(points: Solution, values: Values, state: State, push: Array) -> Stat
 
 
 def from_faults(points: Solution, faults: Solution) -> Starts:
-    """States of fault scenarios, put to the conditions of the same ambient with all inputs at one end."""
+    """States of fault scenarios, put to the conditions of the same ambient with all inputs at one end.
+
+    Parameters
+    ----------
+    points : Solution
+        Nominal.
+    faults : Solution
+        The same circuit in fault scenarios.
+
+    Returns
+    -------
+    Starts
+    """
     ambient, heat = points.conditions.values["ambient"], faults.conditions.values["ambient"]
     inputs = points.network.design.inputs.items()
-    ends = [[points.conditions.values[n] == v for n, v in ((n, getattr(s, end)) for n, s in inputs)]
-            for end in ("low", "high")]  # fmt: skip
-    at_end = np.logical_or(*(np.logical_and.reduce([points.converged, *there]) for there in ends))
-    pairs = np.argwhere(at_end[:, None] & faults.converged & (ambient[:, None] == heat))
-    rows, states = pairs[:, 0], pairs[:, 1]
-    state = faults.state_vector.take(states)
+    low, high = (
+        np.logical_and.reduce(
+            [points.converged, *(points.conditions.values[name] == getattr(source, end) for name, source in inputs)]
+        )
+        for end in ("low", "high")
+    )
+    pairs = np.argwhere((low | high)[:, None] & faults.converged & (ambient[:, None] == heat))
+    rows, cause = pairs[:, 0], pairs[:, 1]
+    state = faults.state_vector.take(cause)
     state.x = state.x[:, _unknowns_of(points.network, faults.network)]
-    return Starts(rows, state, tuple(Origin(fault=int(i)) for i in states))
+    return Starts(rows, state, cause)
 
 
 def _unknowns_of(network: Network, faults: Network) -> list[int]:

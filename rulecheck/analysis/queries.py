@@ -10,7 +10,7 @@ import numpy as np
 
 from ..circuit.structure import CurrentSources, LogDiode
 from ..devices.constants import Array, BoolArray
-from .conditions import Conditions
+from .conditions import Conditions, above_cutoff
 from .operating_points import OperatingPoints
 
 if TYPE_CHECKING:
@@ -136,12 +136,8 @@ def points_in_use(review: Review) -> OperatingPoints:
 
 def _below_cutoff(review: Review) -> dict[str, BoolArray]:
     """By input with a cutoff, the conditions at which it is below; only the larger side of a range counts."""
-    below = {}
-    for name, source in review.design.inputs.items():
-        if source.cutoff is not None:
-            x = review.conditions.values[name] * (1 if source.high >= -source.low else -1)
-            below[name] = np.abs(x) < source.cutoff if source.low == -source.high else x < source.cutoff * (1 - 1e-9)
-    return below
+    values = review.conditions.values
+    return {n: ~above_cutoff(s, values[n]) for n, s in review.design.inputs.items() if s.cutoff is not None}
 
 
 def is_regulated(review: Review, points: OperatingPoints, *nets: str) -> BoolArray:

@@ -41,7 +41,10 @@ class Sensitivity:
         self.requirement, self.points = requirement, points
         self._placed = placing(points, requirement.output)
         placed = self._placed
-        self._adjoint = None if placed is None else Adjoint(placed.solution, placed.nets[requirement.output])
+        known = placed is not None and placed.solution.converged.any()
+        self._adjoint = (
+            Adjoint(placed.solution, placed.nets[requirement.output]) if placed is not None and known else None
+        )
 
     def of(self, deviation: Deviation) -> Array:
         """Slope of the error, shape (conditions,), in output units for a deviation of one."""

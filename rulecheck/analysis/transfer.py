@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from ..devices.constants import Array, BoolArray
-from .conditions import Conditions, Row, typical_row
+from .conditions import Conditions, Row, above_cutoff, typical_row
 
 if TYPE_CHECKING:
     from ..design.model import Design, Requirement
@@ -113,8 +113,7 @@ def judged(requirement: Requirement, points: OperatingPoints, typical: Row) -> B
         low, high = requirement.range.get(name, (source.low, source.high))
         slack = 1e-9 * max(abs(low), abs(high))
         inside &= (x >= low - slack) & (x <= high + slack)
-        if source.cutoff is not None:
-            inside &= np.abs(x) >= source.cutoff * (1 - 1e-9)
+        inside &= above_cutoff(source, x)
     for ref, part in design.parts.items():
         if part.kind == "potentiometer":
             inside &= conditions.values[ref] == typical[ref]

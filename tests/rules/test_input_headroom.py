@@ -93,3 +93,18 @@ def test_supply_and_model_cure_a_follower(board, cures):
 def test_other_level_cures_a_reference_near_the_rail(board, cures, name, change):
     """A reference of 5 V that is the level of an amplifier which wants 6.1 V is raised to that."""
     assert cures(board(name, change), InputHeadroom)["make MID 6.1 V"] == []
+
+
+@pytest.mark.parametrize("rule", ["input-headroom", "output-swing", "junction-reverse", "input-protection"])
+@pytest.mark.parametrize("pins", ['{ "V+" = "VP", V- = "GND" }', "{}"])
+def test_spare_amplifier_is_passed_over(board, rule, pins):
+    """The other half of a dual, left open, is not judged, and changes its model with the first."""
+    spare = f'U9 = {{ kind = "op-amp", model = "deep-floor", package = "U1", spare = true, pins = {pins} }}\nC1 = {{'
+    assert_clean(rule, board("column", ("C1 = {", spare)))
+
+
+def test_model_of_a_spare_half_changes_too(board):
+    """A package holds one model."""
+    spare = 'U9 = { kind = "op-amp", model = "deep-floor", package = "U1", spare = true, pins = {} }\nC1 = {'
+    finding = assert_finds(InputHeadroom, board("column", DEEP_U1, ("C1 = {", spare)), parts=["U1"])
+    assert any("take both-rails for U1, U9" in remedy.title for remedy in finding.remedies)
