@@ -58,7 +58,7 @@ if TYPE_CHECKING:
         potentiometers,
     )
     from rulecheck.analysis.review import Cost, Review
-    from rulecheck.analysis.transfer import Transfer
+    from rulecheck.analysis.transfer import Transfer, dimension_fault
     from rulecheck.circuit.islands import Island, equal_islands, islands
     from rulecheck.circuit.structure import (
         AntilogTransistor,
@@ -103,7 +103,7 @@ _LAZY = {
             "potentiometers",
         ),
         "rulecheck.analysis.review": ("Cost", "Review"),
-        "rulecheck.analysis.transfer": ("Transfer",),
+        "rulecheck.analysis.transfer": ("Transfer", "dimension_fault"),
         "rulecheck.circuit.islands": ("Island", "equal_islands", "islands"),
         "rulecheck.circuit.structure": (
             "AntilogTransistor", "FeedbackLoop", "Junction", "JunctionLoop", "LogTransistor", "Structure",
@@ -174,6 +174,7 @@ __all__ = [
     "carriers",
     "conformity_cost",
     "decade_values",
+    "dimension_fault",
     "dimension_of",
     "disturbance",
     "equal_islands",

@@ -51,7 +51,7 @@ def remedies(review: Review, amplifiers: list[str], damping: float, margin: floa
         if found is not None:
             title = "put an emitter resistor into the loop, and " + _title(calmer, found.capacitors)
             return [Remedy(title, [*resistors, *_capacitor_edits(calmer, found.capacitors)])]
-    return [Remedy("no capacitor from 1 pF to 100 nF meets the limits: lower the loop gain, or take an amplifier "
+    return [Remedy("no capacitor from 10 pF to 100 nF meets the limits: lower the loop gain, or take an amplifier "
                    "with a lower gain-bandwidth or a higher second pole")]  # fmt: skip
 
 

@@ -9,10 +9,8 @@ import numpy as np
 
 from rulecheck.api import (
     BaseModel,
-    Dimension,
     Evidence,
     Finding,
-    LawError,
     Remedy,
     Requirement,
     Review,
@@ -21,7 +19,7 @@ from rulecheck.api import (
     Severity,
     Transfer,
     Unit,
-    dimension_of,
+    dimension_fault,
     format_quantity,
     join_key,
     nearest,
@@ -68,27 +66,17 @@ class TransferLaw(Rule):
 
 
 def _dimensions(review: Review, requirement: Requirement) -> Finding | None:
-    law = requirement.law
-    assert law is not None
-    try:
-        law.check(dimension_of("V"), _names(review, requirement), requirement.constants)
-    except LawError as error:
-        key = join_key(("requirements", requirement.name, "law"))
-        return Finding(
-            f"requirement {requirement.name}: {error.message}", nets=[requirement.output], subject=requirement.name,
-            consequence="the requirement cannot be met or missed: it compares unlike quantities", at=key,
-            remedies=[Remedy(error.hint or "give the scale that is missing as a constant with its unit")],
-        )  # fmt: skip
-    return None
-
-
-def _names(review: Review, requirement: Requirement) -> dict[str, Dimension]:
-    """Dimension of each name that a law may use."""
-    design = review.design
-    names = {name: dimension_of(source.unit) for name, source in design.inputs.items()}
-    names |= {n: dimension_of("V") for n, net in design.nets.items() if net.role in ("reference", "supply")}
-    names |= {r: dimension_of("1") for r, p in design.parts.items() if p.kind == "potentiometer"}
-    return names | {"ambient": dimension_of("K")} | dict(requirement.constant_dimensions)
+    fault = dimension_fault(review.design, requirement)
+    if fault is None:
+        return None
+    return Finding(
+        f"requirement {requirement.name}: {fault.message}",
+        nets=[requirement.output],
+        subject=requirement.name,
+        consequence="the requirement cannot be met or missed: it compares unlike quantities",
+        at=join_key(("requirements", requirement.name, "law")),
+        remedies=[Remedy(fault.hint or "give the scale that is missing as a constant with its unit")],
+    )
 
 
 def _nominal(review: Review, transfer: Transfer) -> Iterable[Finding]:

@@ -70,6 +70,9 @@ class Response:
 def bandwidth(points: OperatingPoints, source: str, output: str) -> Array:
     """Lowest frequency at which the response has fallen by 3 dB (to half the power) from that at zero frequency.
 
+    Where an amplifier on the way is at its limit it is the bandwidth of what leaks past it: ask only where the
+    output is regulated.
+
     Parameters
     ----------
     points : OperatingPoints

@@ -22,8 +22,8 @@ if TYPE_CHECKING:
     from .small_signal import SmallSignal
     from .solution import Solution
 
-LEAST, MOST = 1e-12, 100e-9
-"""Span of the search [F]."""
+LEAST, MOST = 10e-12, 100e-9
+"""Span of the search [F]; less than the least is no more than the strays of a board."""
 HARD_CONDITIONS = 20
 CONFIRMED_AT_MOST = 24
 BATCH = 4096

@@ -123,6 +123,26 @@ def review_grid(design: Design, typical: Row | None = None) -> Conditions:
     return from_rows([typical | row for row in rows], typical)
 
 
+def corners_at(design: Design, at: Row) -> Conditions:
+    """Ambient and supplies at their corners, all else as `at` says."""
+    rows = [
+        supply | {"ambient": ambient}
+        for ambient in _distinct((design.ambient.min, design.ambient.typ, design.ambient.max))
+        for supply in supply_rows(design)
+    ]
+    return from_rows(rows, at)
+
+
+def end_conditions(design: Design, typical: Row) -> Conditions:
+    """Inputs at the corners of their ranges and in the middle, by ambient."""
+    rows = [
+        row | {"ambient": ambient}
+        for row in [{}, *corner_rows(design.inputs)]
+        for ambient in _distinct((design.ambient.min, design.ambient.typ, design.ambient.max))
+    ]
+    return from_rows(rows, typical)
+
+
 def from_rows(rows: Sequence[Row], typical: Row) -> Conditions:
     """Conditions of rows in the order given, each completed from `typical`, repeated rows dropped."""
     unique = list({tuple((typical | row).values()): typical | row for row in rows}.values())

@@ -12,12 +12,13 @@ import numpy as np
 from ..circuit.graph import build_graph
 from ..circuit.structure import Structure, find_structure
 from ..devices.constants import Array
+from ..errors import AnalysisError
 from .compensation import Compensation
-from .conditions import Conditions, Row, fault_scenarios, review_grid, typical_row
+from .conditions import Conditions, Row, corners_at, end_conditions, fault_scenarios, review_grid, typical_row
 from .islands import Piece, cut, solve_pieces
 from .loops import Loops
 from .operating_points import OperatingPoints, Worst
-from .transfer import EXPONENT_STEP, Transfer, compare, trim_positions
+from .transfer import EXPONENT_STEP, Transfer, compare, dimension_fault, trim_positions
 from .values import Overrides
 
 if TYPE_CHECKING:
@@ -25,6 +26,9 @@ if TYPE_CHECKING:
 
     from ..design.model import Design, Requirement
     from ..findings import Edit
+    from .budget import Budget
+    from .latching import Latching
+    from .noise import Noise
 
 DEFAULT_SHARE = 0.005
 """Allowed error as a share of reading where no requirement says."""
@@ -121,6 +125,51 @@ class Review:
             if r.law is not None
         }
 
+    @cached_property
+    def budget(self) -> Mapping[str, Budget]:
+        """Error budget by requirement that has a law."""
+        from .budget import budget
+
+        return {name: budget(self, r) for name, r in self.design.requirements.items() if r.law is not None}
+
+    @cached_property
+    def latching(self) -> Latching:
+        """Second operating points at the corners of the review."""
+        from .latching import find_latching
+
+        return find_latching(self)
+
+    def bandwidth_of(self, requirement: Requirement) -> tuple[OperatingPoints, Array]:
+        """Operating points and -3 dB bandwidth [Hz] at the point a requirement asks it for, over ambient and supplies.
+
+        Raises
+        ------
+        AnalysisError
+            Where the requirement asks for none.
+        """
+        from .bandwidth import bandwidth
+
+        asked = requirement.bandwidth
+        if asked is None:
+            raise AnalysisError(f"requirement {requirement.name} asks for no bandwidth")
+        points = self.solve(corners_at(self.design, {**self.typical, **asked.at}))
+        return points, bandwidth(points, asked.input, requirement.output)
+
+    def noise_of(self, requirement: Requirement) -> tuple[OperatingPoints, Noise]:
+        """Operating points and output noise over ambient at the ends and the middle of the inputs' ranges.
+
+        Raises
+        ------
+        AnalysisError
+            Where the requirement asks for none.
+        """
+        from .noise import noise
+
+        if requirement.noise is None:
+            raise AnalysisError(f"requirement {requirement.name} has no limit of noise")
+        points = self.solve(end_conditions(self.design, self.typical))
+        return points, noise(points, requirement.output, requirement.noise.bandwidth)
+
     def solve(
         self, conditions: Conditions, *, with_clamps: bool = False, overrides: Overrides | None = None,
         temperatures: Mapping[str, Array] | None = None,
@@ -173,7 +222,9 @@ class Review:
         rows = [
             np.where(t.judged, t.allowed, np.nan)
             for t in self.transfer.values()
-            if t.requirement.output == net and t.requirement.has_accuracy
+            if t.requirement.output == net
+            and t.requirement.has_accuracy
+            and dimension_fault(self.design, t.requirement) is None
         ]
         blank = np.full(self.conditions.size, np.nan)
         return np.fmin.reduce(rows) if rows else blank

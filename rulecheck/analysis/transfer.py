@@ -9,6 +9,8 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from ..devices.constants import Array, BoolArray
+from ..errors import LawError
+from ..units import dimension_of
 from .conditions import Conditions, Row, above_cutoff, typical_row
 
 if TYPE_CHECKING:
@@ -102,6 +104,25 @@ def compare(requirement: Requirement, points: OperatingPoints, solver: Solver, t
         exponent={n: e[0] for n, e in exponents.items()},
         law_exponent={n: e[1] for n, e in exponents.items()},
     )
+
+
+def dimension_fault(design: Design, requirement: Requirement) -> LawError | None:
+    """What is wrong with the dimensions of a requirement's law, if anything: it must be in volts, as its output is.
+
+    A law that is not means nothing, and neither does an accuracy that rests on it.
+    """
+    law = requirement.law
+    if law is None:
+        return None
+    names = {name: dimension_of(source.unit) for name, source in design.inputs.items()}
+    names |= {n: dimension_of("V") for n, net in design.nets.items() if net.role in ("reference", "supply")}
+    names |= {r: dimension_of("1") for r, p in design.parts.items() if p.kind == "potentiometer"}
+    names |= {"ambient": dimension_of("K"), **requirement.constant_dimensions}
+    try:
+        law.check(dimension_of("V"), names, requirement.constants)
+    except LawError as fault:
+        return fault
+    return None
 
 
 def judged(requirement: Requirement, points: OperatingPoints, typical: Row) -> BoolArray:

@@ -145,3 +145,8 @@ def figures(parts, nets, points=({},), **tables):
     found = figures_of(text_of(parts, nets, **tables), list(points), CATALOGUE)
     assert all(found["converged"]), found["converged"]
     return found
+
+
+def loop(found, ref="U1"):
+    """Figures of one amplifier's loop at the first point."""
+    return {key: values[0] for key, values in found["loops"][ref].items()}

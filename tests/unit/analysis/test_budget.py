@@ -2,49 +2,30 @@
 
 import numpy as np
 import pytest
-from designs import HEAD, PINS, board
+from designs import board
+from gain_stage import FLOATING, GAIN, LEAK, TRIM, at, changed, review_at
 
 from rulecheck.analysis.budget import budget
-from rulecheck.analysis.conditions import from_points
 from rulecheck.analysis.review import Review
 from rulecheck.analysis.spreads import deviations
 from rulecheck.findings import Set
 from rulecheck.testing import design_from
 
 LOG = '\n[requirements.log]\noutput = "Y0"\nlaw = "one * log(X0 / one)"\nconstants = { one = "1 V" }\n'
-GAIN = (
-    HEAD
-    + f"""
-X = {{ role = "input", drive = "voltage", range = ["0.1 V", "1 V"] }}
-Y = {{ role = "output" }}
-[parts]
-R1 = {{ kind = "resistor", value = "10 kohm", tolerance = "1 %", tempco_tolerance = "50 ppm/K", package = "N1", pins = ["X", "S"] }}
-R2 = {{ kind = "resistor", value = "20 kohm", tolerance = "1 %", tempco_tolerance = "50 ppm/K", package = "N1", pins = ["S", "Y"] }}
-U1 = {{ kind = "op-amp", model = "bifet-precision", offset_voltage = "1 mV", offset_drift = "10 uV/K", bias_current = "0 A", offset_current = "0 A", pins = {{ "IN+" = "GND", IN- = "S", OUT = "Y", {PINS} }} }}
-[requirements.gain]
-output = "Y"
-law = "-2 * X"
-accuracy = {{ reading = "1 %", absolute = "1 mV" }}
-"""
-)  # fmt: skip
-
-
-def review_of(text, catalogue=None, **points):
-    """A review of a design at points, by name."""
-    design = design_from(text, catalogue)
-    return Review(design, from_points(design, {k: np.array(v) for k, v in points.items()}) if points else None)
+TRIMMED = changed(GAIN, TRIM)
+MIDDLE = np.sqrt(0.1)  # of 0.1 to 1 V
 
 
 def budget_of(text, **points):
     """The budget of a design's first requirement, and its values by parameter."""
-    review = review_of(text, **points)
+    review = review_at(text, **points)
     found = budget(review, next(iter(review.design.requirements.values())))
     return found, {c.parameter: c.value for c in found.contributions}
 
 
 def test_contributions_of_an_inverting_amplifier():
     """Gain 2: resistors 1 % of reading each, offset three times itself, drifts with its own T - 25 degC (textbook)."""
-    review = review_of(GAIN, X=[0.5, 0.5], ambient=[298.15, 348.15])
+    review = review_at(GAIN, X=[0.5, 0.5], ambient=[298.15, 348.15])
     found = budget(review, review.design.requirements["gain"])
     values = {c.parameter: c.value for c in found.contributions}
     warmer = review.operating_points.temperature("U1") - 298.15
@@ -89,7 +70,7 @@ def test_resistors_of_a_network_track():
 
 
 def test_matched_and_unmatched_transistors():
-    """A matched pair has one mismatch of its own; unmatched ones have the spread of V_BE each, sixteen times at the output."""
+    """A matched pair has one mismatch; single ones have the spread of V_BE each, sixteen times at the output."""
     pair = board(1) + LOG + '\n[matching.pair]\nparts = ["Q1_0", "Q2_0"]\nvbe_mismatch = "0.5 mV"\n'
     _, values = budget_of(pair, X0=[1.0])
     assert np.abs(values["matching.pair.Q2_0"]) == pytest.approx(16 * 0.5e-3, rel=1e-3)
@@ -104,11 +85,10 @@ def test_matched_and_unmatched_transistors():
 
 def test_a_unit_that_states_its_error_is_known():
     """An amplifier with a stated offset has no limit of offset any more, but its drift; so has a known transistor."""
-    text = GAIN.replace("offset_voltage", 'offset = "0.2 mV", offset_voltage')
-    _, values = budget_of(text, X=[0.5], ambient=[348.15])
+    _, values = budget_of(GAIN.replace("offset_voltage", 'offset = "0.2 mV"\noffset_voltage'), X=[0.5])
     assert "parts.U1.offset_voltage" not in values
     assert "parts.U1.offset_drift" in values
-    known = board(1).replace('package = "M0", pins = { C = "T0"', 'vbe_offset = "1 mV", package = "M0", pins = { C = "T0"')
+    known = board(1).replace('pins = { C = "T0"', 'vbe_offset = "1 mV", pins = { C = "T0"')
     names = {d.name for d in deviations(design_from(known))}
     assert "parts.Q2_0.vbe_spread" not in names
     assert "parts.Q1_0.vbe_spread" in names
@@ -116,15 +96,13 @@ def test_a_unit_that_states_its_error_is_known():
 
 def test_a_supply_counts_where_no_condition_moves_it():
     """The tolerance of a supply is in the budget at its nominal, and not again at the corners of the grid."""
-    text = GAIN.replace('pins = ["X", "S"] }', 'pins = ["X", "S"] }\nR3 = { kind = "resistor", value = "1 Mohm", pins = ["VP", "S"] }')
-    _, values = budget_of(text, X=[0.5, 0.5], VP=[15.0, 14.25])
+    _, values = budget_of(changed(GAIN, LEAK), X=[0.5, 0.5], VP=[15.0, 14.25])
     assert values["nets.VP.voltage"] == pytest.approx([-0.75 * 20e3 / 1e6, 0.0], rel=1e-4)
 
 
 def test_conditions_without_solution_have_no_budget():
     """Figures of points that did not converge are NaN, and they are never the worst."""
-    text = GAIN.replace('pins = ["X", "S"] }', 'pins = ["X", "S"] }\nC1 = { kind = "capacitor", value = "1 nF", pins = ["S", "Z"] }\nR9 = { kind = "resistor", value = "1 ohm", pins = ["Z", "Z2"] }')
-    review = review_of(text, X=[0.5])
+    review = review_at(changed(GAIN, FLOATING), X=[0.5])
     assert not review.operating_points.converged.any()
     found = budget(review, review.design.requirements["gain"])
     assert found.worst is None
@@ -132,47 +110,34 @@ def test_conditions_without_solution_have_no_budget():
     assert np.isnan(found.worst_case).all()
 
 
-TRIMMED = GAIN.replace(
-    'pins = ["S", "Y"] }',
-    'pins = ["S", "W"] }\nRV1 = { kind = "potentiometer", value = "1 kohm", tolerance = "10 %", adjusts = "gain",'
-    ' pins = { END1 = "W", WIPER = "Y", END2 = "Y" } }',
-).replace('"20 kohm"', '"19.5 kohm"')
-
-
-@pytest.mark.parametrize(("key", "parameter", "deviation"), [
-    ("parts.R1.value", "parts.R1.value", "10.05 kohm"), ("parts.U1.offset", "parts.U1.offset_voltage", "0.5 mV"),
-])  # fmt: skip
-def test_a_trim_answers_deviations(key, parameter, deviation):
+@pytest.mark.parametrize(
+    ("key", "parameter", "to", "amount"),
+    [
+        ("parts.R1.value", "parts.R1.value", "10.05 kohm", 50.0),
+        ("parts.U1.offset", "parts.U1.offset_voltage", "0.5 mV", 0.5e-3),
+    ],
+)
+def test_a_trim_answers_deviations(key, parameter, to, amount):
     """With a trim the error of a changed design, trimmed anew, is what the slope says."""
     points = {"X": [0.1, 0.3, 1.0], "ambient": [298.15, 298.15, 348.15]}
-
-    def trimmed(review):
-        grid = from_points(review.design, {k: np.array(v) for k, v in points.items()}, review.typical)
-        return Review(review.design, grid)
-
-    plain = trimmed(Review(design_from(TRIMMED)))
-    found = budget(plain, plain.design.requirements["gain"])
-    (own,) = (c for c in found.contributions if c.parameter == parameter)
-    changed = trimmed(plain.edited([Set(key, deviation)]))
-    assert changed.typical["RV1"] != plain.typical["RV1"]
-    moved = budget(changed, changed.design.requirements["gain"]).error - found.error
-    amount = 50.0 if "R1" in key else 0.5e-3
-    assert own.slope * amount == pytest.approx(moved, rel=2e-2, abs=2e-6)
-    assert "parts.RV1.position" not in {c.parameter for c in found.contributions}
+    plain = review_at(TRIMMED, **points)
+    other = at(plain.edited([Set(key, to)]), **points)
+    assert other.typical["RV1"] != plain.typical["RV1"]
+    before, after = (budget(review, review.design.requirements["gain"]) for review in (plain, other))
+    (own,) = (c for c in before.contributions if c.parameter == parameter)
+    assert own.slope * amount == pytest.approx(after.error - before.error, rel=2e-2, abs=2e-6)
+    assert "parts.RV1.position" not in {c.parameter for c in before.contributions}
 
 
 def test_a_trim_takes_the_gain_out():
-    """Where it is set, a trim of gain leaves nothing of the resistors' tolerances; beside it, the offset's share."""
-    middle = np.sqrt(0.1)
-    review = review_of(TRIMMED, X=[middle], RV1=[Review(design_from(TRIMMED)).typical["RV1"]])
-    found = budget(review, review.design.requirements["gain"])
-    assert found.worst_case == pytest.approx(0.0, abs=1e-6)
+    """Where it is set a trim leaves nothing of any spread."""
+    review = review_at(TRIMMED, X=[MIDDLE])
+    assert budget(review, review.design.requirements["gain"]).worst_case == pytest.approx(0.0, abs=1e-6)
 
 
 def test_a_trim_at_its_end_cannot_answer():
     """A trim without travel left leaves the tolerances as they are."""
-    text = TRIMMED.replace('"19.5 kohm"', '"21 kohm"')
-    review = Review(design_from(text))
+    review = Review(design_from(TRIMMED.replace('"19.5 kohm"', '"21 kohm"')))
     assert review.typical["RV1"] == 0.0
     found = budget(review, review.design.requirements["gain"])
     (own,) = (c for c in found.contributions if c.parameter == "parts.R1.value")
