@@ -34,6 +34,8 @@ def _columns(table: Mapping[str, Any], path: tuple[str, ...] = ()) -> Iterator[t
     for name, value in table.items():
         if isinstance(value, Mapping):
             yield from _columns(value, (*path, name))
+        elif name == "budget":
+            yield from ((join_key((*path, name, c["parameter"])), c["contribution"]) for c in value)
         elif isinstance(value, list):
             yield join_key((*path, name)), value
 

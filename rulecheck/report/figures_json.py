@@ -56,7 +56,7 @@ def arrays(review: Review) -> Figures:
             "rightmost": review.loops.rightmost,
             "least_damping": review.loops.least_damping,
         },
-        "requirements": {name: _requirement(transfer) for name, transfer in review.transfer.items()},
+        "requirements": {name: _requirement(review, name, transfer) for name, transfer in review.transfer.items()},
     }
 
 
@@ -144,5 +144,13 @@ def _loop(loops: Loops, ref: str) -> Figures:
     }
 
 
-def _requirement(transfer: Transfer) -> Figures:
-    return {"law": transfer.law, "error": transfer.error, "exponent": dict(transfer.exponent)}
+def _requirement(review: Review, name: str, transfer: Transfer) -> Figures:
+    budget = review.budget[name]
+    return {
+        "law": transfer.law,
+        "error": transfer.error,
+        "exponent": dict(transfer.exponent),
+        "worst_case": budget.worst_case,
+        "rss": budget.rss,
+        "budget": [{"parameter": c.parameter, "contribution": c.value} for c in budget.contributions],
+    }

@@ -17,7 +17,8 @@ if TYPE_CHECKING:
 
 UNITS = {
     "ic": "A", "ib": "A", "vbe": "V", "vce": "V", "current": "A", "wiper_current": "A", "voltage": "V",
-    "output": "V", "temperature": "degC", "phase_margin": "deg", "crossover": "Hz", "law": "V", "error": "V",
+    "output": "V", "temperature": "degC", "phase_margin": "deg", "crossover": "Hz", "law": "V", "error": "V", "rss": "V",
+    "worst_case": "V",
 }  # fmt: skip
 #: Units that carry no prefix and are shown as they stand.
 PLAIN_UNITS = {"gain_margin": "dB", "rightmost": "1/s"}
@@ -46,6 +47,7 @@ def render(review: Review, width: int = 80, color: bool = False) -> str:
         lines += _section(title, _flat(figures[title]), layout)
     lines += _section("natural frequencies", figures["natural_frequencies"], layout)
     lines += _worst(review, layout, units)
+    lines += _budgets(review, layout, units)
     return "\n".join(lines) + "\n"
 
 
@@ -60,7 +62,10 @@ def _flat(figures: Mapping[str, Any], above: str = "") -> dict[str, Any]:
     flat: dict[str, Any] = {}
     for name, value in figures.items():
         words = f"{above} {name}".strip()
-        flat |= _flat(value, words) if isinstance(value, Mapping) else {words: value}
+        if isinstance(value, Mapping):
+            flat |= _flat(value, words)
+        elif name != "budget":
+            flat[words] = value
     return flat
 
 
@@ -107,3 +112,27 @@ def _worst(review: Review, layout: Layout, units: Mapping[str, str]) -> Iterator
             where = conditions_in_words(review.operating_points.conditions.at(index), units)
             yield ""
             yield from layout.wrapped(f"worst {words} {quantity(float(array[index]), unit)} at {where}")
+
+
+MOST_CONTRIBUTIONS = 12
+
+
+def _budgets(review: Review, layout: Layout, units: Mapping[str, str]) -> Iterator[str]:
+    """Where each requirement's error comes from, at its worst condition, the largest contributions first."""
+    for name, budget in review.budget.items():
+        if budget.worst is None:
+            continue
+        at = budget.worst
+        shown = budget.shown()
+        rows = [
+            (c.parameter, quantity(float(c.value[at]), "V"), quantity(float(budget.of_reading(c.value)[at]), "%"))
+            for c in shown[:MOST_CONTRIBUTIONS]
+        ]
+        totals = (("worst case", budget.worst_case), ("root-sum-square", budget.rss), ("allowed", budget.allowed))
+        rows += [(w, quantity(float(v[at]), "V"), quantity(float(budget.of_reading(v)[at]), "%")) for w, v in totals]
+        head = (f"budget of {name}", "error", "of reading")
+        first, *rest = table([head, *rows], indent=0)
+        left = f", {len(shown) - MOST_CONTRIBUTIONS} smaller ones left out" if len(shown) > MOST_CONTRIBUTIONS else ""
+        where = conditions_in_words(review.operating_points.conditions.at(at), units)
+        yield from ["", layout.styled(first, "bold"), *rest]
+        yield from layout.wrapped(f"at {where}{left}")
