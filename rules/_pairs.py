@@ -21,6 +21,8 @@ from rulecheck.api import (
     join_key,
 )
 
+from ._words import percent
+
 Pair = tuple[str, str]
 Fault = Literal["polarity", "models", "packages", "unmatched", "unknown"]
 GRAVITY: dict[Fault | None, int] = {None: 0, "unknown": 1, "unmatched": 2, "packages": 2, "models": 3, "polarity": 4}
@@ -136,7 +138,7 @@ def numbered(stem: str) -> Iterator[str]:
 
 def cost_words(output: str, error: float, reading: float) -> str:
     """What a change does to an output, in its units and of its reading."""
-    share = f", {abs(error / reading) * 100:.2g} % of reading" if reading else ""
+    share = f", {percent(error / reading)} of reading" if reading else ""
     return f"{output} moves by {format_quantity(abs(error), 'V', 3)}{share}"
 
 

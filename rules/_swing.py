@@ -23,6 +23,7 @@ from rulecheck.api import (
 from ._edits import quantity, set_parameter
 from ._models import higher_supplies, in_packages_of, other_models
 from ._saturation import Floats, Mask, is_at_limit, working
+from ._words import percent
 
 BOUNDLESS = 1000.0
 """Volts beyond its rails to which an output is let go to see what it would need."""
@@ -74,7 +75,7 @@ class Demand:
             is_now, would_be = (float(p.voltage(net)[index]) for p in (points, self.points))
             if abs(would_be) < BOUNDLESS / 2 and abs(is_now - would_be) > 1e-6 * abs(would_be):
                 there = f"{net} is {format_quantity(is_now, 'V', 3)} instead of {format_quantity(would_be, 'V', 3)}"
-                share = f" ({abs(is_now / would_be - 1) * 100:.2g} % of reading)" if would_be else ""
+                share = f" ({percent(is_now / would_be - 1)} of reading)" if would_be else ""
                 words.append(there + share)
         return ", ".join(words) or "its summing node leaves its level, and what is computed from it is wrong"
 

@@ -34,6 +34,7 @@ from ._leakage import Leakage, leakages
 from ._models import other_models
 from ._protection import KNEE, leakage_bound, quietest_diode, rated, series_resistor
 from ._saturation import working
+from ._words import percent
 
 INPUTS = ("IN+", "IN-")
 CLAMPED = 1e-3
@@ -111,10 +112,10 @@ def _leakage_finding(review: Review, settings: InputProtection.Settings, leak: L
     amps = float(leak.current[worst.index])
     signal = amps / worst.value
     return Finding(
-        f"{part.ref}: leaks {format_quantity(amps, 'A', 3)} into {net} at the hottest, {worst.value * 100:.2g} % of a "
-        f"signal of {format_quantity(signal, 'A', 3)}, limit {settings.leakage * 100:.2g} %",
+        f"{part.ref}: leaks {format_quantity(amps, 'A', 3)} into {net} at the hottest, {percent(worst.value)} of a "
+        f"signal of {format_quantity(signal, 'A', 3)}, limit {percent(settings.leakage)}",
         parts=[part.ref], nets=[net], severity=Severity.MINOR, conditions=worst.conditions, subject="leakage",
-        consequence=f"the signal read is off by {worst.value * 100:.2g} % there, changing with temperature",
+        consequence=f"the signal read is off by {percent(worst.value)} there, changing with temperature",
         evidence=[Evidence("leakage over signal current", worst.value, "1", settings.leakage, "<=", over=leak.ratio,
                            basis="limit")],
         remedies=_quieter(review, part),

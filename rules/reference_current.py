@@ -36,6 +36,7 @@ from rulecheck.api import (
 from ._carried import MARGIN, conformity, leakage, middle_of, outside_log_range, working_current
 from ._currents import better_amplifiers, compared_with, feeds, scaled
 from ._edits import move, new_net, quantity, set_parameter
+from ._words import percent
 
 
 class ReferenceCurrent(Rule):
@@ -105,7 +106,7 @@ def _bias(review: Review, settings: ReferenceCurrent.Settings, carrier: Carrier)
         nets=[carrier.node],
         subject="bias",
         conditions=worst.conditions,
-        consequence=f"the fixed current may be {100 / worst.value:.2g} % off",
+        consequence=f"the fixed current may be {percent(1 / worst.value)} off",
         evidence=[
             Evidence("fixed current over bias and leakage", worst.value, "1", settings.over_bias, ">=", basis="limit")
         ],
@@ -128,7 +129,7 @@ def _supplies(review: Review, settings: ReferenceCurrent.Settings, carrier: Carr
         swing = 100 * net.voltage.half / abs(net.voltage.typ)
         yield Finding(
             f"the fixed current of {carrier.part} comes from supply {name}, whose ±{swing:.2g} % moves {effect.output} "
-            f"by {100 * effect.share:.2g} %, limit {100 * limit:.2g} %",
+            f"by {percent(effect.share)}, limit {percent(limit)}",
             parts=[carrier.part],
             nets=[name],
             subject="supply",

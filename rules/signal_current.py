@@ -31,6 +31,7 @@ from rulecheck.api import (
 
 from ._carried import MARGIN, conformity, leakage, middle_of, outside_log_range, working_current
 from ._currents import better_amplifiers, input_magnitude, narrowed, offset_limit, scaled
+from ._words import percent
 
 Array = npt.NDArray[np.float64]
 Mask = npt.NDArray[np.bool_]
@@ -170,7 +171,7 @@ def _floor(review: Review, settings: SignalCurrent.Settings, group: Sequence[Car
         nets=[first.node],
         subject="floor",
         conditions=worst.conditions,
-        consequence=f"the current logged there may be {100 / worst.value:.2g} % off",
+        consequence=f"the current logged there may be {percent(1 / worst.value)} off",
         evidence=[
             Evidence("least signal current over errors", worst.value, "1", settings.over_errors, ">=", basis="limit")
         ],

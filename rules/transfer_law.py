@@ -25,6 +25,8 @@ from rulecheck.api import (
     nearest,
 )
 
+from ._words import percent
+
 RESISTOR_SERIES = "E96"
 TRIAL_CHANGE = 0.01
 MOST_REMEDIES = 2
@@ -91,7 +93,7 @@ def _nominal(review: Review, transfer: Transfer) -> Iterable[Finding]:
         return
     at = worst.index
     error, limit, law = transfer.error[at], allowed[at], transfer.law[at]
-    part = f" ({abs(error / law) * 100:.2g} % of reading)" if law else ""
+    part = f" ({percent(error / law)} of reading)" if law else ""
     yield Finding(
         f"requirement {requirement.name}: {requirement.output} is off its law by {format_quantity(error, 'V', 3)}"
         f"{part}, allowed {format_quantity(limit, 'V', 3)}",
@@ -129,7 +131,7 @@ def _exponents(review: Review, settings: TransferLaw.Settings, transfer: Transfe
         worst = points.worst(off)
         yield Finding(
             f"requirement {requirement.name}: local exponent in {name} is {exponent[worst.index]:.4f}, "
-            f"the law asks {power:.4g} (off by {worst.value * 100:.2g} %, limit {settings.exponent * 100:.2g} %)",
+            f"the law asks {power:.4g} (off by {percent(worst.value)}, limit {percent(settings.exponent)})",
             nets=[requirement.output], subject=f"{requirement.name} exponent {name}", severity=Severity.MINOR,
             conditions=worst.conditions, consequence=f"{requirement.output} bends away from its law with {name}",
             evidence=[Evidence("exponent error", worst.value, "1", settings.exponent, "<=", over=off)],
