@@ -58,6 +58,7 @@ if TYPE_CHECKING:
         potentiometers,
     )
     from rulecheck.analysis.review import Cost, Review
+    from rulecheck.analysis.ringing import Ringing, ringing
     from rulecheck.analysis.transfer import Transfer, dimension_fault
     from rulecheck.circuit.islands import Island, equal_islands, islands
     from rulecheck.circuit.structure import (
@@ -103,6 +104,7 @@ _LAZY = {
             "potentiometers",
         ),
         "rulecheck.analysis.review": ("Cost", "Review"),
+        "rulecheck.analysis.ringing": ("Ringing", "ringing"),
         "rulecheck.analysis.transfer": ("Transfer", "dimension_fault"),
         "rulecheck.circuit.islands": ("Island", "equal_islands", "islands"),
         "rulecheck.circuit.structure": (
@@ -157,6 +159,7 @@ __all__ = [
     "Remove",
     "Requirement",
     "Review",
+    "Ringing",
     "Rule",
     "RulecheckError",
     "Set",
@@ -192,6 +195,7 @@ __all__ = [
     "partner_of",
     "points_in_use",
     "potentiometers",
+    "ringing",
     "series_for_tolerance",
     "series_values",
     "split_key",

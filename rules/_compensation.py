@@ -24,16 +24,24 @@ EMITTER_DROP = 1.0
 """Volts across an emitter resistor at the greatest signal current: little of the swing, much of the loop gain."""
 
 
-def remedies(review: Review, amplifiers: list[str], damping: float, margin: float) -> list[Remedy]:
+def remedies(
+    review: Review,
+    amplifiers: Sequence[str],
+    damping: float,
+    margin: float,
+    beside: Sequence[Sequence[str]] = (),
+) -> list[Remedy]:
     """Ways to calm the loops of `amplifiers`: capacitors alone, else emitter resistors with capacitors.
 
     Parameters
     ----------
     review : Review
-    amplifiers : list of str
+    amplifiers : sequence of str
         Loops to compensate together.
     damping, margin : float
         Least damping ratio and phase margin [deg] to reach at every review condition.
+    beside : sequence of sequences of str
+        Loops that ring for themselves, which hide what capacitors do for these.
 
     Returns
     -------
@@ -41,40 +49,62 @@ def remedies(review: Review, amplifiers: list[str], damping: float, margin: floa
     """
     if not review.seeks_remedies:
         return []
-    found = review.required_capacitors(amplifiers, damping, margin)
-    if found is not None:
-        return [Remedy(_title(review, found.capacitors), _capacitor_edits(review, found.capacitors))]
-    resistors = _emitter_resistors(review, amplifiers)
-    if resistors:
-        calmer = review.edited(resistors)
-        found = calmer.required_capacitors(amplifiers, damping, margin)
-        if found is not None:
-            title = "put an emitter resistor into the loop, and " + _title(calmer, found.capacitors)
-            return [Remedy(title, [*resistors, *_capacitor_edits(calmer, found.capacitors)])]
+    able = [a for a in amplifiers if not _is_follower(review.design, a)]
+    others = [a for group in beside for a in group if not _is_follower(review.design, a)]
+    resistors = _emitter_resistors(review, able)
+    for before, words in [([], ""), (resistors, "put an emitter resistor into the loop, and ")]:
+        if able and (before or not words):
+            here = review.edited(before) if before else review
+            found = _search(here, able, damping, margin, others)
+            if found:
+                return [Remedy(words + _title(here, found), [*before, *_capacitor_edits(here, found)])]
     return [Remedy("no capacitor from 10 pF to 100 nF meets the limits: lower the loop gain, or take an amplifier "
                    "with a lower gain-bandwidth or a higher second pole")]  # fmt: skip
 
 
-def _capacitor_edits(review: Review, capacitors: dict[str, float]) -> list[Edit]:
+def _is_follower(design: Design, amplifier: str) -> bool:
+    """Whether the output is the inverting input, so that no capacitor goes between them."""
+    pins = design.parts[amplifier].pins
+    return pins["OUT"] == pins["IN-"]
+
+
+def _search(review: Review, amplifiers: list[str], damping: float, margin: float, others: list[str]) -> dict[str, float]:
+    """Least capacitors by amplifier, empty where none do; loops that have theirs keep it where it is not at fault."""
+    bare = [a for a in amplifiers if not _across(review.design, a)]
+    for calmer in _with_calm(review, others):
+        for chosen in [bare, amplifiers] if 0 < len(bare) < len(amplifiers) else [amplifiers]:
+            found = calmer.required_capacitors(chosen, damping, margin)
+            if found is not None:
+                return found.capacitors
+    return {}
+
+
+def _with_calm(review: Review, others: list[str]) -> Iterator[Review]:
+    """The review with generous capacitors in other loops; of two that share a node only one may be slow."""
+    if not others:
+        yield review
+        return
+    for order in (others, others[::-1]):
+        generous = {a: GENEROUS / SPACING**k for k, a in enumerate(order)}
+        yield review.edited(_capacitor_edits(review, generous))
+
+
+def _capacitor_edits(review: Review, capacitors: Mapping[str, float]) -> list[Edit]:
     """Set the capacitor of each loop where it has one, else add it."""
     edits: list[Edit] = []
-    taken: list[str] = []
     for amplifier, farad in capacitors.items():
-        pins = review.design.parts[amplifier].pins
-        present = _between(review, pins["OUT"], pins["IN-"])
-        value = format_quantity(farad, "F", 3)
+        pins, present = review.design.parts[amplifier].pins, _across(review.design, amplifier)
         if present:
-            edits.append(Set(join_key(("parts", present[0], "value")), value))
-            continue
-        name = next_reference(review.design, "C", taken)
-        taken.append(name)
-        table = {"kind": "capacitor", "value": value, "tolerance": "5 %", "pins": [pins["IN-"], pins["OUT"]]}
-        edits.append(Add(join_key(("parts", name)), table))
+            edits.append(set_parameter(present[0], "value", format_quantity(farad, "F", 3)))
+        else:
+            edits.append(add_capacitor(review.design, farad, (pins["IN-"], pins["OUT"]), edits))
     return edits
 
 
-def _between(review: Review, a: str, b: str) -> list[str]:
-    return [r for r, p in review.design.parts.items() if p.kind == "capacitor" and set(p.pins.values()) == {a, b}]
+def _across(design: Design, amplifier: str) -> list[str]:
+    """Capacitors from an amplifier's output to its inverting input."""
+    ends = {design.parts[amplifier].pins["OUT"], design.parts[amplifier].pins["IN-"]}
+    return [r for r, p in design.parts.items() if p.kind == "capacitor" and set(p.pins.values()) == ends]
 
 
 def _title(review: Review, capacitors: dict[str, float]) -> str:

@@ -6,12 +6,24 @@ share a node ring together. Margins say which amplifier and how far.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable
 from typing import Annotated
 
 import numpy as np
 
-from rulecheck.api import BaseModel, Evidence, Finding, IslandLoops, Review, Rule, Severity, Unit, format_quantity
+from rulecheck.api import (
+    BaseModel,
+    Evidence,
+    Finding,
+    IslandLoops,
+    Review,
+    Ringing,
+    Rule,
+    Severity,
+    Unit,
+    format_quantity,
+    ringing,
+)
 
 from ._compensation import remedies
 from ._words import figures
@@ -48,37 +60,34 @@ class LoopStability(Rule):
                 yield from self._island(review, settings, island, judged)
 
     def _island(self, review: Review, settings: Settings, island: IslandLoops, judged: np.ndarray) -> Iterable[Finding]:
-        ringing = judged & ((island.least_damping < settings.damping) | (island.rightmost > 0))
-        for group in _groups(island.participation, ringing):
-            taking_part = ringing & island.participation[:, group].any(axis=1)
-            yield self._ringing(review, settings, island, [island.amplifiers[i] for i in group], taking_part)
-        if ringing.any():
-            return  # thin margins beside a ringing mode have its cause
-        for amplifier in island.amplifiers:
+        groups = ringing(island, settings.damping, judged)
+        for group in groups:
+            beside = [other.amplifiers for other in groups if other is not group]
+            yield self._ringing(review, settings, group, beside)
+        calm = set(island.amplifiers).difference(*(group.amplifiers for group in groups))
+        for amplifier in (a for a in island.amplifiers if a in calm):
             margin = np.where(judged, review.loops.phase_margin(amplifier), np.nan)
             if np.isfinite(margin).any() and np.nanmin(margin) < settings.phase_margin:
                 yield self._thin(review, settings, amplifier, margin)
 
     def _ringing(
-        self, review: Review, settings: Settings, island: IslandLoops, parts: list[str], ringing: np.ndarray
+        self, review: Review, settings: Settings, group: Ringing, beside: list[tuple[str, ...]]
     ) -> Finding:
-        loops = review.loops
-        damping = np.where(ringing, island.least_damping, np.nan)
-        unstable = ringing & (island.rightmost > 0)
-        worst = loops.points.least(np.where(unstable, -island.rightmost, np.nan) if unstable.any() else damping)
-        ratio, frequency = float(island.least_damping[worst.index]), float(island.damping_frequency[worst.index])
-        rings = ratio < settings.damping  # else a real mode grows, without ringing
+        loops, parts = review.loops, group.amplifiers
+        unstable = bool(np.nanmax(group.growth) > 0)
+        worst = loops.points.worst(group.growth) if unstable else loops.points.least(group.damping)
+        ratio, frequency = float(group.damping[worst.index]), float(group.frequency[worst.index])
+        rings = ratio > -1  # else a real mode grows, without ringing
         at = f" near {format_quantity(frequency, 'Hz', 3)}" if rings else ""
         who = ", ".join(parts)
         evidence = [
-            Evidence("damping ratio", ratio if rings else np.nan, "1", settings.damping, ">=",
-                     over=island.least_damping),
-            Evidence("rightmost natural frequency", float(island.rightmost[worst.index]), "1/s", 0.0, "<",
-                     over=island.rightmost),
+            Evidence("damping ratio", ratio if rings else np.nan, "1", settings.damping, ">=", over=group.damping),
+            Evidence("rightmost natural frequency", float(group.growth[worst.index]), "1/s", 0.0, "<",
+                     over=group.growth),
             *(Evidence(f"phase margin of {a}", float(loops.phase_margin(a)[worst.index]), "deg",
                        settings.phase_margin, ">=", over=loops.phase_margin(a)) for a in parts),
         ]  # fmt: skip
-        if unstable.any():
+        if unstable:
             message, consequence = (
                 f"{who}: unstable{at}",
                 "the circuit oscillates or latches instead of computing",
@@ -87,11 +96,11 @@ class LoopStability(Rule):
             message = f"{who}: damping ratio {ratio:.2f}{at}, limit {settings.damping:g}"
             overshoot = 100 * np.exp(-np.pi * ratio / np.sqrt(max(1 - ratio**2, 1e-9)))
             consequence = f"a step rings with about {overshoot:.0f} % overshoot"
-        serious = bool(unstable.any()) or ratio < settings.serious_damping
+        serious = unstable or ratio < settings.serious_damping
         return Finding(
             message, parts=parts, severity=Severity.MAJOR if serious else Severity.MINOR, consequence=consequence,
             conditions=worst.conditions, evidence=figures(evidence),
-            remedies=remedies(review, parts, settings.damping, settings.phase_margin), at=f"parts.{parts[0]}",
+            remedies=remedies(review, parts, settings.damping, settings.phase_margin, beside), at=f"parts.{parts[0]}",
         )  # fmt: skip
 
     def _thin(self, review: Review, settings: Settings, amplifier: str, margin: np.ndarray) -> Finding:
@@ -108,18 +117,3 @@ class LoopStability(Rule):
             ]),
             remedies=remedies(review, [amplifier], settings.damping, settings.phase_margin),
         )  # fmt: skip
-
-
-def _groups(participation: np.ndarray, chosen: np.ndarray) -> Iterator[list[int]]:
-    """Amplifiers that take part together at any chosen condition, as connected groups."""
-    shared = participation[chosen].astype(int)
-    linked = shared.T @ shared > 0
-    left = {int(i) for i in np.flatnonzero(np.diag(linked))}
-    while left:
-        group: set[int] = set()
-        front = {min(left)}
-        while front:
-            group |= front
-            front = {int(j) for i in front for j in np.flatnonzero(linked[i])} - group
-        left -= group
-        yield sorted(group)

@@ -8,13 +8,21 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from ..devices.constants import NOMINAL_TEMPERATURE, Array, BoolArray, thermal_voltage
+from ..devices.constants import (
+    NOMINAL_TEMPERATURE,
+    Array,
+    BoolArray,
+    doubling_scale,
+    saturation_scale,
+    thermal_voltage,
+)
 from .conditions import Conditions
 from .operating_points import OperatingPoints
 from .queries import Carrier, at_typical, forward_current, in_use, is_regulated, points_in_use
 from .review import Cost
 
 if TYPE_CHECKING:
+    from ..design.model import Part
     from .review import Review
 
 SMALL_RESISTANCE = 1e-6  # ohm: in place of zero, so that the internal node stays
@@ -176,13 +184,24 @@ def _leakages(review: Review, points: OperatingPoints, carrier: Carrier) -> tupl
         if carrier.node not in part.pins.values() or ref in working:
             continue
         if part.kind == "diode":
-            spread = part.reverse_leakage if part.reverse_leakage.typ > 0 else part.saturation_current
-            clamps = clamps + np.abs(points.current(ref, "A")) * spread.max / spread.typ
+            clamps = clamps + np.abs(points.current(ref, "A")) + _more_at_limit(points, part)
         elif part.kind == "photodiode":
             spread = part.dark_current
             rise = spread.max / spread.typ if spread is not None and spread.typ else 1.0
             dark = dark + np.abs(points.current(ref, "A") + points.conditions.values[ref]) * rise
     return dark, clamps
+
+
+def _more_at_limit(points: OperatingPoints, diode: Part) -> Array:
+    """What the currents of a diode in reverse may be above their typical values [A]."""
+    heat = points.temperature(diode.ref)
+    n = np.full(heat.shape, diode.emission_coefficient.typ)
+    bandgap, exponent = (np.full(heat.shape, getattr(diode, k).typ) for k in ("bandgap", "temperature_exponent"))
+    saturation = (diode.saturation_current.max - diode.saturation_current.typ) * saturation_scale(
+        heat, bandgap, exponent, n
+    )
+    leakage = diode.reverse_leakage.max - diode.reverse_leakage.typ
+    return saturation + leakage * doubling_scale(heat, np.full(heat.shape, diode.leakage_doubling.typ))
 
 
 @dataclass(frozen=True, slots=True)

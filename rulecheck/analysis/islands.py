@@ -18,6 +18,7 @@ from ..circuit.wiring import is_ideal
 from ..design.frozen import FrozenDict
 from ..devices.constants import Array, IntArray
 from .conditions import Conditions, typical_row
+from .network import in_circuit
 from .solution import Solution, solve_circuit
 from .thermal import build_thermal
 from .values import Overrides
@@ -70,15 +71,15 @@ def cut(design: Design, circuit: Circuit, apart: frozenset[str] = frozenset()) -
     design : Design
     circuit : networkx.MultiGraph
     apart : frozenset of str
-        Parts that are changed against the file: their pieces are solved by themselves.
+        Parts and nets that are changed against the file: their pieces are solved by themselves.
 
     Returns
     -------
     tuple of Piece
     """
     whole = _joined(design, islands(design, circuit))
-    changed = tuple(i for i in whole if apart.intersection(i.parts))
-    same = equal_islands(design, circuit, tuple(i for i in whole if not apart.intersection(i.parts)))
+    changed = tuple(i for i in whole if apart.intersection((*i.parts, *i.nets, *i.boundary)))
+    same = equal_islands(design, circuit, tuple(i for i in whole if i not in changed))
     own = tuple((_itself(island),) for island in changed)
     return tuple(Piece(_excerpt(design, copies[0].island), tuple(copies)) for copies in (*own, *same))
 
@@ -123,7 +124,8 @@ def _join(design: Design, group: list[Island]) -> Island:
 
 def _excerpt(design: Design, island: Island) -> Design:
     """The design with the parts and nets of one island only; grounds stay."""
-    parts = {ref: design.parts[ref] for ref in island.parts}
+    held = in_circuit(design)
+    parts = {ref: design.parts[ref] for ref in island.parts if ref in held}
     wanted = {*island.nets, *island.boundary}
     nets = {n: net for n, net in design.nets.items() if n in wanted or net.role == "ground"}
     packages = {part.package for part in parts.values()}

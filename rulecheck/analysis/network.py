@@ -121,7 +121,7 @@ def build_network(design: Design, with_clamps: bool = False) -> Network:
     _check_pins(design)
     network = Network(design, with_clamps)
     _number_nodes(network)
-    for ref, part in _in_circuit(design).items():
+    for ref, part in in_circuit(design).items():
         _add_part(network, ref, part)
     _add_inputs(network)
     network.terminals = np.array(
@@ -142,7 +142,7 @@ REQUIRED_PINS = {
 TWO_PINS = ("resistor", "capacitor", "voltage-source", "current-source")
 
 
-def _in_circuit(design: Design) -> dict[str, Part]:
+def in_circuit(design: Design) -> dict[str, Part]:
     """Parts that the equations hold: spare ones with a pin or an input left open are not."""
     pins = [net for part in design.parts.values() for net in part.pins.values()]
 
@@ -156,7 +156,7 @@ def _in_circuit(design: Design) -> dict[str, Part]:
 
 
 def _check_pins(design: Design) -> None:
-    for ref, part in _in_circuit(design).items():
+    for ref, part in in_circuit(design).items():
         missing = [p for p in REQUIRED_PINS.get(part.kind, ()) if p not in part.pins]
         if missing or (part.kind in TWO_PINS and len(part.pins) != 2):
             names = ", ".join(missing) or "one of two"

@@ -10,6 +10,7 @@ import numpy as np
 
 from ..devices.constants import AnyArray, Array, BoolArray
 from ..errors import AnalysisError
+from .network import in_circuit
 
 if TYPE_CHECKING:
     from ..design.model import Design
@@ -45,15 +46,18 @@ class OperatingPoints:
         self.placed = placed
         reached = [p.solution.converged[p.index] for p in placed]
         self.converged: BoolArray = np.all(reached, axis=0) if reached else np.ones(conditions.size, bool)
-        self._by_part = {part: p for p in placed for part in p.parts}
-        self._by_net = {net: p for p in placed for net in p.nets}
+        # a spare part with an open pin is not in the equations: it has no figures
+        held = in_circuit(design)
+        self._by_part = {part: p for p in placed for part in p.parts if part in held}
+        self._by_net = {n: p for p in placed for n, there in p.nets.items() if there in p.solution.network.nodes}
 
     def voltage(self, net: str) -> Array:
-        """Voltage of a net [V]; of one that no part touches, what its source gives."""
+        """Voltage of a net [V]; of one that no part in the equations touches, what its source gives, if any."""
         placed = self._by_net.get(net)
+        if placed is None and self.design.nets[net].role == "ground":
+            return np.zeros(self.conditions.size)
         if placed is None:
-            value = self.conditions.values.get(net)
-            return np.zeros(self.conditions.size) if value is None else np.asarray(value)
+            return np.asarray(self.conditions.values.get(net, self._none))
         return placed.solution.voltage(placed.nets[net])[placed.index]
 
     def temperature(self, part: str) -> Array:
@@ -74,7 +78,9 @@ class OperatingPoints:
 
     def limits(self, amplifier: str) -> tuple[Array, Array]:
         """Low and high limit of an amplifier's internal output [V]."""
-        placed = self._by_part[amplifier]
+        placed = self._by_part.get(amplifier)
+        if placed is None:
+            return self._none, self._none
         low, high = placed.solution.limits(placed.parts[amplifier])
         return low[placed.index], high[placed.index]
 
@@ -84,7 +90,9 @@ class OperatingPoints:
 
     def current(self, part: str, pin: str) -> Array:
         """Current into a pin of a part [A]."""
-        placed = self._by_part[part]
+        placed = self._by_part.get(part)
+        if placed is None:
+            return self._none
         return placed.solution.current(placed.parts[part], pin)[placed.index]
 
     def dissipation(self, part: str) -> Array:
@@ -137,7 +145,17 @@ class OperatingPoints:
             lines.append(f"no operating point at {place}; net {net} moved last")
         return lines
 
+    @property
+    def _none(self) -> Array:
+        return np.full(self.conditions.size, np.nan)
+
     def _of(self, part: str, name: str) -> AnyArray:
-        placed = self._by_part[part]
+        placed = self._by_part.get(part)
+        if placed is None:
+            return np.full(self.conditions.size, _NOTHING.get(name, np.nan))
         found: Mapping[str, AnyArray] | AnyArray = getattr(placed.solution, name)(placed.parts[part])
         return np.asarray(found)[placed.index]
+
+
+_NOTHING = {"state": "unpowered", "linear": False}
+"""What is said of a part that is not in the equations, where it is not a number."""

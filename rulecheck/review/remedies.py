@@ -118,7 +118,9 @@ def is_cured(finding: Finding, before: Judgement, after: Judgement) -> bool:
         Of the design as it was and as it is after the edits.
     """
     known = {other.id: severity_of(other) for other in before.findings}
-    for other in after.findings:
+    # what rules say that a broken circuit had silenced was there before, unheard
+    silenced = {rule.rule for rule in before.not_run}
+    for other in (other for other in after.findings if other.rule not in silenced):
         new = other.id not in known
         worse = severity_of(other) > known.get(other.id, Severity.OBSERVATION)
         if other.id == finding.id or worse or (new and _is_disguise(other, finding)):

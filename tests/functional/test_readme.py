@@ -3,10 +3,10 @@
 import re
 from pathlib import Path
 
-from .readme import FAULTY, PICTURED, ROOT, block, checked
-
 from rulecheck.findings import Severity
 from rulecheck.testing import design_from, findings_of
+
+from .readme import FAULTY, PICTURED, ROOT, block, checked
 
 
 def test_the_design_of_the_readme_is_sound():

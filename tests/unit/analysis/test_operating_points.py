@@ -177,3 +177,43 @@ RL = { kind = "resistor", value = "1 Gohm", pins = ["W", "GND"] }
 """
     )
     assert figures_of(text, [{"RV1": position}])["nets"]["W"][0] == pytest.approx(2.5 * position, rel=1e-5, abs=1e-12)
+
+
+SPARES = """
+SP1 = { kind = "op-amp", model = "bifet-precision", package = "U9", spare = true, pins = { "V+" = "VP", V- = "VN" } }
+SP2 = { kind = "npn", model = "small-signal-npn", spare = true, pins = { C = "VP", E = "GND" } }
+SP3 = { kind = "op-amp", model = "bifet-precision", spare = true, pins = { "IN+" = "FLOATING", IN- = "F", OUT = "F", "V+" = "VP", V- = "VN" } }
+"""
+
+
+def test_spare_parts_with_open_pins_are_left_out():
+    """They have no figures, and those of the circuit stay as they are."""
+    found = figures_of(board(1) + SPARES, POINTS)
+    assert found["nets"]["Y0"] == pytest.approx(figures_of(board(1), POINTS)["nets"]["Y0"], abs=1e-12)
+    assert found["parts"]["SP1"]["state"] == ["unpowered"] * 3
+    assert found["parts"]["SP2"]["ic"] == [None] * 3
+
+
+LINKS = """
+L1 = { kind = "resistor", value = "0 ohm", pins = ["VREF", "W"] }
+L2 = { kind = "resistor", value = "0 ohm", pins = ["VREF", "W"] }
+L3 = { kind = "resistor", value = "0 ohm", pins = ["GND", "GNDX"] }
+R9 = { kind = "resistor", value = "1 kohm", pins = ["W", "GND"] }
+"""
+
+
+def test_links_in_parallel_and_between_grounds():
+    """Two links share the current of 2.5 mA evenly (Ohm), and one between grounds carries none."""
+    text = board(1).replace('GND = { role = "ground" }', 'GND = { role = "ground" }\nGNDX = { role = "ground" }')
+    found = figures_of(text + LINKS, [{}])
+    assert found["converged"] == [True]
+    assert found["parts"]["L1"]["current"] == pytest.approx([1.25e-3], rel=1e-6)
+    assert found["parts"]["L3"]["current"] == pytest.approx([0.0], abs=1e-12)
+
+
+def test_an_output_load_of_one_channel_moves_that_channel_only():
+    """What is changed at a net of one of several equal channels stays there."""
+    review = Review(design_from(board(3)))
+    moved = review.re_solve(values={("Y1", "load"): 2e3})
+    assert np.nanmax(np.abs(moved.voltage("Y0") - review.operating_points.voltage("Y0"))) < 1e-12
+    assert np.nanmax(np.abs(moved.current("U2_1", "OUT") - review.operating_points.current("U2_1", "OUT"))) > 1e-6
