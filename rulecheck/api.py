@@ -32,6 +32,7 @@ from rulecheck.units import ZERO_CELSIUS, Dimension, Spread, dimension_of, forma
 from rulecheck.units import Unit as _Unit
 
 if TYPE_CHECKING:
+    from rulecheck.analysis.budget import Budget
     from rulecheck.analysis.conditions import Conditions, above_cutoff
     from rulecheck.analysis.effects import (
         Disturbance,
@@ -43,6 +44,7 @@ if TYPE_CHECKING:
         supply_effect,
         worst_cost,
     )
+    from rulecheck.analysis.latching import SecondPoint
     from rulecheck.analysis.loops import IslandLoops, Loops
     from rulecheck.analysis.operating_points import OperatingPoints, Worst
     from rulecheck.analysis.queries import (
@@ -78,8 +80,10 @@ if TYPE_CHECKING:
 _LAZY = {
     name: module
     for module, names in {
+        "rulecheck.analysis.budget": ("Budget",),
         "rulecheck.analysis.conditions": ("Conditions", "above_cutoff"),
         "rulecheck.analysis.operating_points": ("OperatingPoints", "Worst"),
+        "rulecheck.analysis.latching": ("SecondPoint",),
         "rulecheck.analysis.loops": ("IslandLoops", "Loops"),
         "rulecheck.analysis.effects": (
             "Disturbance",
@@ -127,6 +131,7 @@ __all__ = [
     "AnalysisError",
     "AntilogTransistor",
     "BaseModel",
+    "Budget",
     "Carrier",
     "Concession",
     "Conditions",
@@ -162,6 +167,7 @@ __all__ = [
     "Ringing",
     "Rule",
     "RulecheckError",
+    "SecondPoint",
     "Set",
     "Severity",
     "Spread",

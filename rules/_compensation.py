@@ -2,26 +2,29 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable, Iterator, Mapping, Sequence
+
 import numpy as np
 
 from rulecheck.api import (
-    BOLTZMANN,
-    ELEMENTARY_CHARGE,
-    Add,
+    Design,
     Edit,
     Move,
     Remedy,
     Review,
-    Set,
+    decade_values,
     format_quantity,
-    join_key,
+    in_use,
     nearest,
+    thermal_voltage,
 )
 
-from ._edits import next_reference
+from ._edits import add_capacitor, add_resistor, move, new_net, set_parameter
 
 EMITTER_DROP = 1.0
 """Volts across an emitter resistor at the greatest signal current: little of the swing, much of the loop gain."""
+GENEROUS, SPACING = 10e-9, 10.0
+"""Farads in a loop that is to be calm for certain, and how much less in the next: loops on one node must differ."""
 
 
 def remedies(
@@ -29,7 +32,9 @@ def remedies(
     amplifiers: Sequence[str],
     damping: float,
     margin: float,
-    beside: Sequence[Sequence[str]] = (),
+    *,
+    beside: Sequence[str] = (),
+    accepts: Callable[[Review], bool] | None = None,
 ) -> list[Remedy]:
     """Ways to calm the loops of `amplifiers`: capacitors alone, else emitter resistors with capacitors.
 
@@ -40,8 +45,10 @@ def remedies(
         Loops to compensate together.
     damping, margin : float
         Least damping ratio and phase margin [deg] to reach at every review condition.
-    beside : sequence of sequences of str
-        Loops that ring for themselves, which hide what capacitors do for these.
+    beside : sequence of str
+        Amplifiers that ring for themselves, which would hide what capacitors do for these.
+    accepts : callable, optional
+        What else is asked of the circuit with its capacitors; they are raised up to tenfold for it.
 
     Returns
     -------
@@ -50,16 +57,25 @@ def remedies(
     if not review.seeks_remedies:
         return []
     able = [a for a in amplifiers if not _is_follower(review.design, a)]
-    others = [a for group in beside for a in group if not _is_follower(review.design, a)]
     resistors = _emitter_resistors(review, able)
-    for before, words in [([], ""), (resistors, "put an emitter resistor into the loop, and ")]:
+    for before, words in ([], ""), (resistors, "put an emitter resistor into the loop, and "):
         if able and (before or not words):
             here = review.edited(before) if before else review
-            found = _search(here, able, damping, margin, others)
+            found = _search(here, able, damping, margin, beside)
+            if found and accepts:
+                found = _raised(here, found, accepts)
             if found:
                 return [Remedy(words + _title(here, found), [*before, *_capacitor_edits(here, found)])]
     return [Remedy("no capacitor from 10 pF to 100 nF meets the limits: lower the loop gain, or take an amplifier "
                    "with a lower gain-bandwidth or a higher second pole")]  # fmt: skip
+
+
+def calmed(review: Review, amplifiers: Sequence[str]) -> Iterator[Review]:
+    """The review with generous capacitors in some loops; of two that share a node only one may be slow."""
+    able = [a for a in amplifiers if not _is_follower(review.design, a)]
+    for order in (able, able[::-1]) if len(able) > 1 else (able,):
+        generous = {a: GENEROUS / SPACING**k for k, a in enumerate(order)}
+        yield review.edited(_capacitor_edits(review, generous)) if able else review
 
 
 def _is_follower(design: Design, amplifier: str) -> bool:
@@ -68,32 +84,33 @@ def _is_follower(design: Design, amplifier: str) -> bool:
     return pins["OUT"] == pins["IN-"]
 
 
-def _search(review: Review, amplifiers: list[str], damping: float, margin: float, others: list[str]) -> dict[str, float]:
+def _search(
+    review: Review, amplifiers: list[str], damping: float, margin: float, beside: Sequence[str]
+) -> dict[str, float]:
     """Least capacitors by amplifier, empty where none do; loops that have theirs keep it where it is not at fault."""
-    bare = [a for a in amplifiers if not _across(review.design, a)]
-    for calmer in _with_calm(review, others):
+    bare = [a for a in amplifiers if not _capacitors(review.design, a)]
+    for calm in calmed(review, beside):
         for chosen in [bare, amplifiers] if 0 < len(bare) < len(amplifiers) else [amplifiers]:
-            found = calmer.required_capacitors(chosen, damping, margin)
+            found = calm.required_capacitors(chosen, damping, margin)
             if found is not None:
                 return found.capacitors
     return {}
 
 
-def _with_calm(review: Review, others: list[str]) -> Iterator[Review]:
-    """The review with generous capacitors in other loops; of two that share a node only one may be slow."""
-    if not others:
-        yield review
-        return
-    for order in (others, others[::-1]):
-        generous = {a: GENEROUS / SPACING**k for k, a in enumerate(order)}
-        yield review.edited(_capacitor_edits(review, generous))
+def _raised(review: Review, least: dict[str, float], accepts: Callable[[Review], bool]) -> dict[str, float]:
+    """Capacitors raised together until the circuit is accepted, as they are where it never is."""
+    for factor in decade_values("E12", 1.0, 10.0):
+        raised = {a: nearest(farad * factor, "E12") for a, farad in least.items()}
+        if accepts(review.edited(_capacitor_edits(review, raised))):
+            return raised
+    return least
 
 
 def _capacitor_edits(review: Review, capacitors: Mapping[str, float]) -> list[Edit]:
     """Set the capacitor of each loop where it has one, else add it."""
     edits: list[Edit] = []
     for amplifier, farad in capacitors.items():
-        pins, present = review.design.parts[amplifier].pins, _across(review.design, amplifier)
+        pins, present = review.design.parts[amplifier].pins, _capacitors(review.design, amplifier)
         if present:
             edits.append(set_parameter(present[0], "value", format_quantity(farad, "F", 3)))
         else:
@@ -101,10 +118,10 @@ def _capacitor_edits(review: Review, capacitors: Mapping[str, float]) -> list[Ed
     return edits
 
 
-def _across(design: Design, amplifier: str) -> list[str]:
+def _capacitors(design: Design, amplifier: str) -> list[str]:
     """Capacitors from an amplifier's output to its inverting input."""
-    ends = {design.parts[amplifier].pins["OUT"], design.parts[amplifier].pins["IN-"]}
-    return [r for r, p in design.parts.items() if p.kind == "capacitor" and set(p.pins.values()) == ends]
+    pins = design.parts[amplifier].pins
+    return _across(design, "capacitor", pins["OUT"], pins["IN-"])
 
 
 def _title(review: Review, capacitors: dict[str, float]) -> str:
@@ -117,43 +134,39 @@ def _title(review: Review, capacitors: dict[str, float]) -> str:
 
 
 def _least_bandwidth(review: Review, amplifier: str, farad: float) -> float:
-    """Bandwidth ``I/(2π·V_T·C)`` at the least current of the loop's log transistors [Hz]."""
+    """Bandwidth ``I/(2π·V_T·C)`` at the least signal current of the loop's log transistors [Hz]."""
     points = review.operating_points
-    least = np.inf
-    for log in review.structure.log_transistors:
-        if log.amplifier == amplifier and review.design.parts[log.part].kind in ("npn", "pnp"):
-            current = np.abs(points.current(log.part, "C"))
-            slope = BOLTZMANN / ELEMENTARY_CHARGE * points.temperature(log.part)
-            least = min(least, float(np.nanmin(current / slope)))
-    return least / (2 * np.pi * farad) if np.isfinite(least) else np.nan
+    logs = [log.part for log in review.structure.log_transistors if log.amplifier == amplifier]
+    slopes = [np.abs(points.current(r, "C")) / thermal_voltage(points.temperature(r)) for r in logs]
+    asked = in_use(review) & points.linear(amplifier)
+    if not slopes or not asked.any():
+        return np.nan
+    least = float(np.max(slopes, axis=0)[asked].min())
+    return least / (2 * np.pi * farad)
 
 
 def _emitter_resistors(review: Review, amplifiers: list[str]) -> list[Edit]:
-    """Edits that put a resistor between an amplifier's output and the emitter it drives directly."""
+    """Edits that put a resistor between an amplifier's output and the emitters it drives, or raise the one there."""
     design, points = review.design, review.operating_points
     edits: list[Edit] = []
-    taken: list[str] = []
-    nets = set(design.nets)
-    for log in review.structure.log_transistors:
-        part = design.parts[log.part]
-        if log.amplifier not in amplifiers or part.kind not in ("npn", "pnp"):
+    for amplifier in amplifiers:
+        logs = [log.part for log in review.structure.log_transistors if log.amplifier == amplifier]
+        most = max((float(np.nanmax(np.abs(points.current(ref, "C")))) for ref in logs), default=0.0)
+        output, emitters = design.parts[amplifier].pins["OUT"], {design.parts[ref].pins["E"] for ref in logs}
+        if not most > 0:
             continue
-        output = design.parts[log.amplifier].pins["OUT"]
-        if part.pins["E"] != output:
-            continue
-        most = float(np.nanmax(np.abs(points.current(log.part, "C"))))
-        value = nearest(EMITTER_DROP / most, "E24") if most > 0 else 10e3
-        driven = f"{output}_{log.amplifier}"
-        while driven in nets:
-            driven += "_"
-        nets.add(driven)
-        name = next_reference(design, "R", taken)
-        taken.append(name)
-        edits.append(Move(join_key(("parts", log.amplifier, "pins", "OUT")), driven))
-        for ref in _between(review, output, design.parts[log.amplifier].pins["IN-"]):
-            pin = next(p for p, n in design.parts[ref].pins.items() if n == output)
-            edits.append(Move(join_key(("parts", ref, "pins", pin)), driven))
-        table = {"kind": "resistor", "value": format_quantity(value, "ohm", 3), "tolerance": "1 %",
-                 "pins": [driven, output]}  # fmt: skip
-        edits.append(Add(join_key(("parts", name)), table))
+        value = nearest(EMITTER_DROP / most, "E24")
+        between = [ref for net in emitters for ref in _across(design, "resistor", output, net)]
+        if output in emitters:
+            own = new_net(design, f"{output}_{amplifier}", [edit.to for edit in edits if isinstance(edit, Move)])
+            for ref in (amplifier, *_capacitors(design, amplifier)):
+                edits.append(move(ref, next(p for p, n in design.parts[ref].pins.items() if n == output), own))
+            edits.append(add_resistor(design, value, (own, output), edits))
+        elif len(between) == 1 and design.parts[between[0]].value.typ < value:
+            edits.append(set_parameter(between[0], "value", format_quantity(value, "ohm", 3)))
     return edits
+
+
+def _across(design: Design, kind: str, *nets: str) -> list[str]:
+    """Parts of a kind between two nets."""
+    return [r for r, p in design.parts.items() if p.kind == kind and set(p.pins.values()) == set(nets)]

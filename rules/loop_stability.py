@@ -16,6 +16,8 @@ from rulecheck.api import (
     Evidence,
     Finding,
     IslandLoops,
+    Loops,
+    Remedy,
     Review,
     Ringing,
     Rule,
@@ -25,7 +27,7 @@ from rulecheck.api import (
     ringing,
 )
 
-from ._compensation import remedies
+from ._compensation import calmed, remedies
 from ._words import figures
 
 
@@ -34,7 +36,8 @@ class LoopStability(Rule):
 
     The gain around a log loop moves over decades with the signal current, so a loop that is calm at one
     current may ring at another: every review condition is judged at which no amplifier is saturated.
-    One finding names all amplifiers whose loops take part in the critical mode; they are cured together.
+    One finding names all amplifiers whose loops take part in the same modes; they are cured together. Thin
+    margins of the others count where they stay thin without the ringing.
     """
 
     name = "loop-stability"
@@ -51,7 +54,7 @@ class LoopStability(Rule):
         phase_margin: Annotated[float, Unit("deg")] = 45.0
 
     def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
-        """Judge the modes first, then the margins of amplifiers that no ringing mode explains."""
+        """Judge the modes first, then the margins of amplifiers that take part in no ringing."""
         for island in review.loops.islands:
             signs = [review.loops.dc_return_ratio(a) for a in island.amplifiers]
             # where feedback is positive at DC, that is the fault to mend first
@@ -62,17 +65,20 @@ class LoopStability(Rule):
     def _island(self, review: Review, settings: Settings, island: IslandLoops, judged: np.ndarray) -> Iterable[Finding]:
         groups = ringing(island, settings.damping, judged)
         for group in groups:
-            beside = [other.amplifiers for other in groups if other is not group]
+            beside = [a for other in groups if other is not group for a in other.amplifiers]
             yield self._ringing(review, settings, group, beside)
-        calm = set(island.amplifiers).difference(*(group.amplifiers for group in groups))
-        for amplifier in (a for a in island.amplifiers if a in calm):
-            margin = np.where(judged, review.loops.phase_margin(amplifier), np.nan)
+        loud = [a for group in groups for a in group.amplifiers]
+        others = [a for a in island.amplifiers if a not in loud]
+        calm = _calm(review, settings.damping, loud, judged) if loud and others else review
+        if calm is None:
+            return
+        for amplifier in others:
+            margin = np.where(judged, calm.loops.phase_margin(amplifier), np.nan)
             if np.isfinite(margin).any() and np.nanmin(margin) < settings.phase_margin:
-                yield self._thin(review, settings, amplifier, margin)
+                cures = remedies(review, [amplifier], settings.damping, settings.phase_margin, beside=loud)
+                yield self._thin(calm.loops, settings, amplifier, margin, cures)
 
-    def _ringing(
-        self, review: Review, settings: Settings, group: Ringing, beside: list[tuple[str, ...]]
-    ) -> Finding:
+    def _ringing(self, review: Review, settings: Settings, group: Ringing, beside: list[str]) -> Finding:
         loops, parts = review.loops, group.amplifiers
         unstable = bool(np.nanmax(group.growth) > 0)
         worst = loops.points.worst(group.growth) if unstable else loops.points.least(group.damping)
@@ -100,12 +106,14 @@ class LoopStability(Rule):
         return Finding(
             message, parts=parts, severity=Severity.MAJOR if serious else Severity.MINOR, consequence=consequence,
             conditions=worst.conditions, evidence=figures(evidence),
-            remedies=remedies(review, parts, settings.damping, settings.phase_margin, beside), at=f"parts.{parts[0]}",
+            remedies=remedies(review, parts, settings.damping, settings.phase_margin, beside=beside),
         )  # fmt: skip
 
-    def _thin(self, review: Review, settings: Settings, amplifier: str, margin: np.ndarray) -> Finding:
-        worst = review.loops.points.least(margin)
-        crossover = float(review.loops.crossover(amplifier)[worst.index])
+    def _thin(
+        self, loops: Loops, settings: Settings, amplifier: str, margin: np.ndarray, cures: list[Remedy]
+    ) -> Finding:
+        worst = loops.points.least(margin)
+        crossover = float(loops.crossover(amplifier)[worst.index])
         return Finding(
             f"{amplifier}: phase margin {worst.value:.1f}° at {format_quantity(crossover, 'Hz', 3)}, "
             f"limit {settings.phase_margin:g}°",
@@ -113,7 +121,15 @@ class LoopStability(Rule):
             consequence="strays and spread of the parts may make the loop ring",
             evidence=figures([
                 Evidence("phase margin", worst.value, "deg", settings.phase_margin, ">=", over=margin),
-                Evidence("modulus margin", float(review.loops.modulus_margin(amplifier)[worst.index]), "1"),
+                Evidence("modulus margin", float(loops.modulus_margin(amplifier)[worst.index]), "1"),
             ]),
-            remedies=remedies(review, [amplifier], settings.damping, settings.phase_margin),
+            remedies=cures,
         )  # fmt: skip
+
+
+def _calm(review: Review, damping: float, loud: list[str], judged: np.ndarray) -> Review | None:
+    """The review without the ringing, in which the margins of the others are their own; None where it will not stop."""
+    for calm in calmed(review, loud):
+        if not ringing(calm.loops.island_of(loud[0]), damping, judged):
+            return calm
+    return None

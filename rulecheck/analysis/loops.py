@@ -137,6 +137,8 @@ class Loops:
         return self._figure(amplifier, "modulus_margin")
 
     def _figure(self, amplifier: str, name: str) -> Array:
+        if amplifier not in self._by_amplifier:  # a spare one with open pins
+            return np.full(self.points.conditions.size, np.nan)
         island = self.island_of(amplifier)
         return island.at_design(getattr(island.margins(amplifier), name))
 

@@ -170,24 +170,27 @@ def _move_amplifiers(equations: Equations, values: Values, now: State, old: Arra
     return changed
 
 
-def solve(equations: Equations, values: Values, start: State | None = None) -> State:
+def solve(
+    equations: Equations, values: Values, start: State | None = None, lost: BoolArray | None = None
+) -> State:
     """Operating points of a batch, by the shortest way that arrives.
 
     A given `start` is tried first; then Newton's method from conducting junctions, a walk through
     switching-on, sources stepped up and conductances to ground stepped down; between them, conditions
-    that are left start from the nearest one that arrived.
+    that are left start from the nearest one that arrived. Conditions that `lost` marks have been through
+    all of that before, and are tried from the `start` alone.
     """
     state = power_off(equations, values.fixed.shape[0]) if start is None else _hushed(equations, values, start)
-    everything = np.ones(len(state.x), bool)
+    everything = np.ones(len(state.x), bool) if lost is None else ~lost
     for way, where in (
         (_from_conducting, everything),
-        (_switch_on, _scouts(everything.size)),
+        (_switch_on, _scouts(everything.size) & everything),
         (_switch_on, everything),
         (_step_sources, everything),
         (_step_conductances, everything),
     ):
         _try(way, equations, values, state, where)
-        _spread(equations, values, state)
+        _spread(equations, values, state, everything)
     return state
 
 
@@ -201,13 +204,13 @@ def _scouts(size: int) -> BoolArray:
     return chosen
 
 
-def _spread(equations: Equations, values: Values, state: State) -> None:
+def _spread(equations: Equations, values: Values, state: State, where: BoolArray) -> None:
     """Start each condition that is left from the solution nearest to it, as long as that gains any."""
     gained = True
-    while gained and state.converged.any() and not state.converged.all():
+    while gained and state.converged.any() and (where & ~state.converged).any():
         before = int(state.converged.sum())
-        near = state.take(_nearest(values, state.converged)[~state.converged])
-        _try(partial(iterate, start=near, iterations=40), equations, values, state, ~state.converged)
+        near = state.take(_nearest(values, state.converged)[where & ~state.converged])
+        _try(partial(iterate, start=near, iterations=40), equations, values, state, where)
         gained = int(state.converged.sum()) > before
 
 

@@ -29,6 +29,7 @@ if TYPE_CHECKING:
     from .budget import Budget
     from .latching import Latching
     from .noise import Noise
+    from .samples import Samples, Sampling
 
 DEFAULT_SHARE = 0.005
 """Allowed error as a share of reading where no requirement says."""
@@ -49,6 +50,8 @@ class Review:
     seeks_remedies : bool
         False where a remedy is being tried: whether a finding stays is asked, not how to cure it, and
         rules spare themselves the search for remedies.
+    sampling : Sampling, optional
+        How many samples are drawn, from which seed; None where none are asked for.
     """
 
     def __init__(
@@ -58,9 +61,11 @@ class Review:
         cache: dict[Any, Any] | None = None,
         *,
         seeks_remedies: bool = True,
+        sampling: Sampling | None = None,
     ) -> None:
         self.design = design
         self.seeks_remedies = seeks_remedies
+        self.sampling = sampling
         self._given = conditions
         self._cache: dict[Any, Any] = {} if cache is None else cache
 
@@ -131,6 +136,16 @@ class Review:
         from .budget import budget
 
         return {name: budget(self, r) for name, r in self.design.requirements.items() if r.law is not None}
+
+    @cached_property
+    def samples(self) -> Mapping[str, Samples]:
+        """Samples by requirement that has a law; none where none were asked for, or nothing is judged.
+
+        Of the review grid some conditions are sampled, of conditions that were given all.
+        """
+        from .samples import draw_all
+
+        return {} if self.sampling is None else draw_all(self, self.sampling, everywhere=self._given is not None)
 
     @cached_property
     def latching(self) -> Latching:

@@ -13,14 +13,41 @@ from ..errors import AnalysisError
 from .conditions import Conditions
 from .queries import at_typical
 from .sampling import MOST_BYTES, Sampler
+from .sensitivity import placing
 from .transfer import judged, law_values
 
 if TYPE_CHECKING:
     from ..design.model import Requirement
     from .review import Review
 
+Progress = Callable[[int, int, str], None]
+"""Called with how much is done, of how much, and what."""
+
 CONFIDENCE = 1.959963984540054
 """Standard deviations to either side that hold 95 % of a normal distribution."""
+
+
+@dataclass(frozen=True)
+class Sampling:
+    """Samples to draw.
+
+    Attributes
+    ----------
+    count, seed : int
+    progress : callable, optional
+        Told of progress; what it raises ends the work.
+    """
+
+    count: int
+    seed: int = 0
+    progress: Progress | None = None
+
+    def reporter(self, requirement: str) -> Callable[[int], None] | None:
+        """What tells of the samples done for one requirement; None where nobody asks."""
+        progress = self.progress
+        if progress is None:
+            return None
+        return lambda done: progress(done - 1, self.count, f"samples of {requirement}")
 
 
 @dataclass(frozen=True)
@@ -144,6 +171,33 @@ def sampled_rows(review: Review, requirement: Requirement) -> IntArray:
     chosen = asked & at_typical(review, [n for n in review.conditions.values if n not in review.design.inputs])
     chosen[np.nanargmax(ratio)] = True
     return np.flatnonzero(chosen)
+
+
+def draw_all(review: Review, sampling: Sampling, *, everywhere: bool) -> dict[str, Samples]:
+    """Samples of every requirement with a law that something is to be drawn for.
+
+    Parameters
+    ----------
+    review : Review
+    sampling : Sampling
+    everywhere : bool
+        All review conditions are sampled, else those of `sampled_rows`; a requirement without any is left out.
+    """
+    found = {}
+    for name, requirement in review.design.requirements.items():
+        points = review.operating_points
+        if requirement.law is None or placing(points, requirement.output) is None:
+            continue
+        if everywhere:
+            rows = np.arange(review.conditions.size)
+        elif judged(requirement, points, review.typical).any():
+            rows = sampled_rows(review, requirement)
+        else:
+            continue
+        found[name] = draw(
+            review, requirement, sampling.count, sampling.seed, rows=rows, progress=sampling.reporter(name)
+        )
+    return found
 
 
 def draw(

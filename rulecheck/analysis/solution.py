@@ -21,6 +21,7 @@ if TYPE_CHECKING:
 
 TEMPERATURE_STEP = 1e-7  # K: far inside 1 mK, so that voltages keep 1e-6 of reading
 THERMAL_ROUNDS = 60
+SWINGING = 0.8  # of the last change: slower than this is no approach
 LEAST_TEMPERATURE, MOST_TEMPERATURE = 1.0, 2000.0  # K
 
 
@@ -292,15 +293,19 @@ class _Task:
     def run(self, state: State | None) -> tuple[State, Array]:
         """Solve (from `state`, if any), heat, and solve again until no temperature moves."""
         nodes = self.unheated()
-        change = np.zeros(self.conditions.size)
+        size = self.conditions.size
+        change, share, lost = np.full(size, np.inf), np.ones(size), np.zeros(size, bool)
         for _ in range(THERMAL_ROUNDS):
             values = self.values(nodes)
-            state = solve(self.equations, values, state)
+            state = solve(self.equations, values, state, lost)
+            lost = ~state.converged
             moved = self.heated(values, state, nodes)
-            change = np.abs(moved - nodes).max(axis=1, initial=0.0)
+            last, change = change, np.abs(moved - nodes).max(axis=1, initial=0.0)
             if (change[state.converged] < TEMPERATURE_STEP).all():
                 return state, nodes
-            nodes = moved
+            # where the temperatures swing to and fro, smaller steps find the point between
+            share = np.where(change > SWINGING * last, share / 2, share)
+            nodes = nodes + share[:, None] * (moved - nodes)
         assert state is not None
         state.converged = state.converged & (change < TEMPERATURE_STEP)
         return state, nodes

@@ -7,7 +7,7 @@ from pathlib import Path
 
 import click
 
-from rulecheck.cli.options import FILE, form_option, on_option
+from rulecheck.cli.options import FILE, form_option, on_option, samples_options
 from rulecheck.cli.status import Status, status_of
 from rulecheck.cli.streams import ProgressBar, emit, width_and_color
 from rulecheck.findings import Report, Severity
@@ -25,15 +25,17 @@ SEVERITIES = [severity.label for severity in sorted(Severity, reverse=True)]
     "--fail-on", type=click.Choice(SEVERITIES), default="minor", show_default=True,
     help="Least severity that makes the exit status 1.",
 )  # fmt: skip
+@samples_options
 @on_option
 def command(
     paths: tuple[Path, ...], form: str, file: Path | None, only: tuple[str, ...], without: tuple[str, ...],
-    fail_on: str, on: dt.date,
+    fail_on: str, samples: int | None, seed: int, on: dt.date,
 ) -> Status:  # fmt: skip
     """Review design files and print findings with evidence and tried remedies.
 
     PATH is a design file, or a folder that is searched for them.
     """
+    from rulecheck.analysis.samples import Sampling
     from rulecheck.cli.paths import design_files
     from rulecheck.review.registry import installed_registry
     from rulecheck.review.runner import Options, review_design
@@ -43,7 +45,8 @@ def command(
     designs = []
     for path in design_files(paths):
         with ProgressBar(str(path)) as progress:
-            options = Options(on=on, only=only, without=without, progress=progress)
+            sampling = None if samples is None else Sampling(samples, seed, progress)
+            options = Options(on=on, only=only, without=without, progress=progress, sampling=sampling)
             designs.append(review_design(path, registry, options))
     report = Report(tuple(designs), on)
     emit(_rendered(report, form, file), file)

@@ -18,6 +18,7 @@ COMMANDS = {
     "check": "Review design files and print findings.",
     "fix": "List remedies that were tried, and apply them.",
     "figures": "Print the numbers: operating points, loops, temperatures, transfer.",
+    "compare": "Show what changed between two revisions: values, findings, figures.",
     "rules": "Show the rules in force, their source, limits and where each comes from.",
     "schema": "Print the JSON Schema of the design file, for editors.",
 }

@@ -55,5 +55,23 @@ def form_option(*forms: str) -> Callable[[Command], Command]:
     )
 
 
+def samples_options(command: Command) -> Command:
+    """Add ``--samples N`` and ``--seed N``.
+
+    Parameters
+    ----------
+    command : callable
+    """
+    count = click.option(
+        "--samples", type=click.IntRange(min=1), metavar="N",
+        help="Solve N samples of the circuit, their parameters drawn at random within their spreads.",
+    )  # fmt: skip
+    seed = click.option(
+        "--seed", type=click.IntRange(min=0), default=0, metavar="N", show_default=True,
+        help="Of the samples: the same seed draws the same.",
+    )  # fmt: skip
+    return count(seed(command))
+
+
 #: A file that is there; whether it can be read is found on reading.
 FILE = click.Path(path_type=Path)

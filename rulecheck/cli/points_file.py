@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import csv
 import io
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -37,10 +37,21 @@ def read_points(file: Path, design: Design) -> Columns:
     DesignError
         With every fault of its content: line, and number and name of the column.
     """
-    return _Reader(str(file), condition_units(design)).read(_text(file))
+    return ConditionTable(str(file), condition_units(design)).read(text_of(file))
 
 
-def _text(file: Path) -> str:
+def text_of(file: Path) -> str:
+    """Text of a file of points.
+
+    Parameters
+    ----------
+    file : Path
+
+    Raises
+    ------
+    CommandError
+        It cannot be read.
+    """
     try:
         return file.read_text(encoding="utf-8-sig")
     except (OSError, UnicodeDecodeError) as error:
@@ -48,13 +59,41 @@ def _text(file: Path) -> str:
         raise CommandError(f"points {file} cannot be read: {reason}") from error
 
 
-class _Reader:
-    def __init__(self, file: str, units: Mapping[str, str]) -> None:
+class ConditionTable:
+    """A table of conditions, one a row, with columns of text beside them.
+
+    Parameters
+    ----------
+    file : str
+        Its name, for faults.
+    units : mapping of str to str
+        Of the quantities of a condition, by name.
+    others : collection of str
+        Names of the other columns.
+
+    Attributes
+    ----------
+    texts : dict of str to list of str
+        Cells of the other columns that there are, by name.
+    lines : list of int
+        Line of each row.
+    """
+
+    def __init__(self, file: str, units: Mapping[str, str], others: Collection[str] = ()) -> None:
         self._file = file
         self._units = units
+        self._others = others
+        self.texts: dict[str, list[str]] = {}
+        self.lines: list[int] = []
         self._problems: list[Problem] = []
 
     def read(self, text: str) -> Columns:
+        """Conditions in SI, by name; see `read_points`.
+
+        Parameters
+        ----------
+        text : str
+        """
         reader = csv.reader(io.StringIO(text), skipinitialspace=True, strict=True)
         rows: list[tuple[int, list[str]]] = []
         try:
@@ -73,20 +112,25 @@ class _Reader:
     def _values(self, rows: Sequence[tuple[int, list[str]]]) -> dict[str, list[float]]:
         (first, header), *body = rows
         self._check_header(first, header)
-        values: dict[str, list[float]] = {name: [] for name in header}
+        values: dict[str, list[float]] = {name: [] for name in header if name not in self._others}
+        self.texts = {name: [] for name in header if name in self._others}
         for line, row in body:
             if len(row) != len(header):
                 self._add(line, None, "", f"found {len(row)} values; {len(header)} are expected, one a name")
                 continue
+            self.lines.append(line)
             for column, (name, cell) in enumerate(zip(header, row, strict=True), 1):
-                if name in self._units:
+                if name in self._others:
+                    self.texts[name].append(cell)
+                elif name in self._units:
                     values[name].append(self._value(line, column, name, cell))
         return values
 
     def _check_header(self, line: int, header: Sequence[str]) -> None:
         for column, name in enumerate(header, 1):
-            if name not in self._units:
-                hint = did_you_mean(name, self._units) or f"there are {', '.join(self._units)}"
+            if name not in self._units and name not in self._others:
+                known = (*self._units, *self._others)
+                hint = did_you_mean(name, known) or f"there are {', '.join(known)}"
                 self._add(line, column, name, f"there is nothing to set by this name ({hint})")
             elif name in header[: column - 1]:
                 self._add(line, column, name, "this name stands twice")

@@ -5,6 +5,10 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 from typing import TYPE_CHECKING, Any
 
+import numpy as np
+
+import numpy as np
+
 from rulecheck.report.json import FORMAT, dump, plain, tool
 
 if TYPE_CHECKING:
@@ -115,7 +119,8 @@ def _potentiometer(points: OperatingPoints, part: Part) -> Figures:
 def _amplifier(points: OperatingPoints, part: Part) -> Figures:
     state = points.state(part.ref)
     return {
-        "output": points.voltage(part.pins["OUT"]),
+        # a spare one may have no net on its output
+        "output": points.voltage(part.pins["OUT"]) if "OUT" in part.pins else np.full(state.shape, np.nan),
         "current": -points.current(part.ref, "OUT"),
         "state": [word if known else None for word, known in zip(state, points.converged, strict=True)],
     }
@@ -146,6 +151,7 @@ def _loop(loops: Loops, ref: str) -> Figures:
 
 def _requirement(review: Review, name: str, transfer: Transfer) -> Figures:
     budget = review.budget[name]
+    samples = {} if review.sampling is None else {"samples": _samples(review, name)}
     return {
         "law": transfer.law,
         "error": transfer.error,
@@ -153,4 +159,21 @@ def _requirement(review: Review, name: str, transfer: Transfer) -> Figures:
         "worst_case": budget.worst_case,
         "rss": budget.rss,
         "budget": [{"parameter": c.parameter, "contribution": c.value} for c in budget.contributions],
+        **samples,
     }
+
+
+def _samples(review: Review, name: str) -> Figures:
+    """Statistics of the error over the samples, NaN where nothing was sampled."""
+    samples, blank = review.samples.get(name), np.full(review.conditions.size, np.nan)
+    if samples is None:
+        return dict.fromkeys(("mean", "std", "p0.5", "p99.5", "inside"), blank)
+    judged = samples.requirement.has_accuracy
+    figures = {
+        "mean": samples.mean(),
+        "std": samples.std(),
+        "p0.5": samples.quantile(0.005),
+        "p99.5": samples.quantile(0.995),
+        "inside": samples.fraction_inside().value if judged else blank[samples.rows],
+    }
+    return {word: samples.over_review(values, review.conditions.size) for word, values in figures.items()}

@@ -14,11 +14,12 @@ from rulecheck.review.outcome import condition_units
 
 if TYPE_CHECKING:
     from rulecheck.analysis.review import Review
+    from rulecheck.analysis.samples import Share
 
 UNITS = {
     "ic": "A", "ib": "A", "vbe": "V", "vce": "V", "current": "A", "wiper_current": "A", "voltage": "V",
     "output": "V", "temperature": "degC", "phase_margin": "deg", "crossover": "Hz", "law": "V", "error": "V", "rss": "V",
-    "worst_case": "V",
+    "worst_case": "V", "mean": "V", "std": "V", "p0.5": "V", "p99.5": "V", "inside": "%",
 }  # fmt: skip
 #: Units that carry no prefix and are shown as they stand.
 PLAIN_UNITS = {"gain_margin": "dB", "rightmost": "1/s"}
@@ -48,6 +49,7 @@ def render(review: Review, width: int = 80, color: bool = False) -> str:
     lines += _section("natural frequencies", figures["natural_frequencies"], layout)
     lines += _worst(review, layout, units)
     lines += _budgets(review, layout, units)
+    lines += _samples(review, layout, units)
     return "\n".join(lines) + "\n"
 
 
@@ -136,3 +138,23 @@ def _budgets(review: Review, layout: Layout, units: Mapping[str, str]) -> Iterat
         where = conditions_in_words(review.operating_points.conditions.at(at), units)
         yield from ["", layout.styled(first, "bold"), *rest]
         yield from layout.wrapped(f"at {where}{left}")
+
+
+def _samples(review: Review, layout: Layout, units: Mapping[str, str]) -> Iterator[str]:
+    """How many samples meet each requirement's accuracy, at the worst condition and everywhere, with confidence."""
+    for name, samples in review.samples.items():
+        words = f"samples of {name}: {samples.count} drawn with seed {samples.seed}"
+        if samples.failed.any():
+            words += f", at most {samples.failed.max()} of a condition without a solution"
+        if samples.requirement.has_accuracy:
+            inside = samples.fraction_inside()
+            worst = int(np.argmin(inside.value))
+            where = conditions_in_words(samples.conditions.at(worst), units)
+            words += f"; {_share(samples.fraction_of_units())} inside everywhere, {_share(inside, worst)} at {where}"
+        yield ""
+        yield from layout.wrapped(f"{words} (95 % confidence)" if samples.requirement.has_accuracy else words)
+
+
+def _share(share: Share, index: int | tuple[()] = ()) -> str:
+    value, low, high = (float(figure[index]) for figure in (share.value, share.low, share.high))
+    return f"{quantity(value, '%')} ({quantity(low, '%')} to {quantity(high, '%')})"

@@ -124,7 +124,13 @@ def problem_object(problem: Problem) -> dict[str, Any]:
     }
 
 
-def _finding(finding: Finding) -> dict[str, Any]:
+def finding_object(finding: Finding) -> dict[str, Any]:
+    """A finding as plain data.
+
+    Parameters
+    ----------
+    finding : Finding
+    """
     return {
         "id": finding.id,
         "rule": finding.rule,

@@ -19,6 +19,7 @@ from rulecheck.review.settings import read_settings
 
 if TYPE_CHECKING:
     from rulecheck.analysis.review import Review
+    from rulecheck.analysis.samples import Sampling
     from rulecheck.api import Rule
     from rulecheck.design.model import Design
     from rulecheck.findings import Finding, Remedy
@@ -39,12 +40,15 @@ class Options:
         Rules to leave out.
     progress : callable, optional
         Told of progress.
+    sampling : Sampling, optional
+        Samples drawn for the rules; none are for the trials of remedies.
     """
 
     on: dt.date
     only: Collection[str] = ()
     without: Collection[str] = ()
     progress: Progress | None = None
+    sampling: Sampling | None = None
 
 
 class DesignReview:
@@ -73,7 +77,8 @@ class DesignReview:
         self._registry = registry
         self._options = options
         self._cache: dict[Any, Any] = {} if cache is None else cache
-        judgement = self._judge(Review(design, cache=self._cache), options.only, options.progress)
+        review = Review(design, cache=self._cache, sampling=options.sampling)
+        judgement = self._judge(review, options.only, options.progress)
         self._judgement = judgement
         self.trials = Trials(design, judgement, self._judge_again)
 

@@ -18,7 +18,7 @@ SERIOUS = (Severity.MAJOR, Severity.MINOR)
 MAJOR, MINOR, OBSERVATION = Severity.MAJOR, Severity.MINOR, Severity.OBSERVATION
 
 SOUND = (
-    "absorbance", "expander", "gas_mass_flow", "heater_power", "ion_gauge", "level_meter", "light_meter",
+    "absorbance", "conductivity", "expander", "gas_mass_flow", "heater_power", "ion_gauge", "level_meter", "light_meter",
     "nozzle_flow", "weir_flow",
 )  # fmt: skip
 
@@ -56,6 +56,7 @@ FAULTY = {
     "two_packages": Fault("shared-temperature", MAJOR, ("Q1", "Q2")),
     "uncompensated": Fault("loop-stability", MAJOR, ("U1A", "U1B")),
     "unmatched_pair": Fault("matched-pair", MAJOR, ("Q3", "Q4")),
+    "weak_tail": Fault("latch-up", MAJOR, ("U1A", "U1B")),
     "wrong_gain": Fault("transfer-law", MAJOR, nets=("VOUT",)),
 }
 

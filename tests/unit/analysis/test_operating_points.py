@@ -189,6 +189,7 @@ SP3 = { kind = "op-amp", model = "bifet-precision", spare = true, pins = { "IN+"
 def test_spare_parts_with_open_pins_are_left_out():
     """They have no figures, and those of the circuit stay as they are."""
     found = figures_of(board(1) + SPARES, POINTS)
+    assert found["converged"] == [True] * 3
     assert found["nets"]["Y0"] == pytest.approx(figures_of(board(1), POINTS)["nets"]["Y0"], abs=1e-12)
     assert found["parts"]["SP1"]["state"] == ["unpowered"] * 3
     assert found["parts"]["SP2"]["ic"] == [None] * 3
