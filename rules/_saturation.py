@@ -193,3 +193,9 @@ def _inside(review: Review, ranges: Mapping[str, tuple[float, float]]) -> Mask:
         if part.kind == "potentiometer" and part.adjusts is not None:
             inside &= review.conditions.values[ref] == review.typical[ref]
     return inside
+
+
+def nets_without_a_level(review: Review) -> set[str]:
+    """Nets that an amplifier with positive feedback moves: where its loop would balance says nothing of them."""
+    flow, feedback = SignalFlow(review), review.structure.dc_feedback
+    return set().union(*(flow.nets(a) for a in flow.amplifiers if feedback.get(a) == "positive"))

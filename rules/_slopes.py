@@ -110,10 +110,8 @@ def _kind(requirement: Requirement, base: Conditions, source: str) -> Kind | Non
     law, x = requirement.law, base.values[source]
     if law is None:
         return None
-    y = [
-        np.broadcast_to(law.evaluate({**base.values, source: x * np.exp(step), **requirement.constants}), x.shape)
-        for step in (STEP, -STEP)
-    ]
+    known: dict[str, Any] = {**base.values, **requirement.constants}
+    y = [np.broadcast_to(law.evaluate(known | {source: x * np.exp(step)}), x.shape) for step in (STEP, -STEP)]
     with np.errstate(all="ignore"):
         candidates: tuple[tuple[Kind, Array], ...] = ("log", y[0] - y[1]), ("antilog", np.log(y[0] / y[1]) / x)
     for kind, values in candidates:

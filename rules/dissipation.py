@@ -28,7 +28,7 @@ from rulecheck.api import (
 
 from ._edits import add_part, move, new_net, quantity, set_parameter
 from ._protection import rated, sturdier
-from ._saturation import working
+from ._saturation import nets_without_a_level, working
 from ._words import percent
 
 Array = npt.NDArray[np.float64]
@@ -58,7 +58,8 @@ class Dissipation(Rule):
 
     def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
         """Resistors one by one, then currents, then junctions by package."""
-        parts = working(review.design)
+        unjudged = nets_without_a_level(review)
+        parts = {r: p for r, p in working(review.design).items() if not unjudged & set(p.pins.values())}
         signals = {c.part for c in carriers(review) if not c.is_fixed}
         overloaded = {ref for ref, part in parts.items() if _is_overloaded(review, part)}
         for part in parts.values():
@@ -101,7 +102,10 @@ def _power(review: Review, settings: Dissipation.Settings, part: Part) -> Iterat
 def _figure(review: Review, part: Part) -> Array:
     """What is held against the current rating of a transistor or diode [A]."""
     current = forward_current(review.operating_points, part.ref)
-    return current if part.kind == "diode" else np.abs(current).astype(float)
+    if part.kind == "diode":
+        return current
+    size: Array = np.abs(current)
+    return size
 
 
 def _limit(part: Part, name: str) -> float:

@@ -40,13 +40,15 @@ class SlopeTemperature(Rule):
 
     Junction loops are judged by their weights, which cancel where every junction has one against it. The slope is
     that of the computed output, dy/d(ln x) where the law is a logarithm and d(ln y)/dx where it is an antilogarithm,
-    at the ends of ambient. A law that names `ambient` asks for what the junctions do, and is not judged. Where an
-    output has no law the slope is only told, as nothing says what it is to be.
+    at the ends of ambient. A law that names `ambient` asks for what the junctions do, and is not judged; neither is
+    the slope of an output without a law, as nothing says what it is to be.
     """
 
     name = "slope-temperature"
     title = "Output that follows the temperature of a junction, or kT/q"
-    source = "d(kT/q)/dT / (kT/q) = 1/T, dVBE/dT = (VBE - (3 kT/q + Eg))/T, textbook; limits: common practice, no source"
+    source = (
+        "d(kT/q)/dT / (kT/q) = 1/T, dVBE/dT = (VBE - (3 kT/q + Eg))/T, textbook; limits: common practice, no source"
+    )
     default_severity = Severity.MAJOR
     needs = ("operating_points", "loops", "transfer")
 
@@ -61,7 +63,7 @@ class SlopeTemperature(Rule):
         """Judge loops without a counterpart first: their outputs have no slope worth judging."""
         if review.design.ambient.min == review.design.ambient.max:
             return
-        drifting = set()
+        drifting: set[str] = set()
         for loop in review.structure.junction_loops:
             if not loop.compensated and (loop.outputs or loop.inputs):
                 for finding in _uncompensated(review, loop):
@@ -140,7 +142,7 @@ def _keeps_thermal_voltage(review: Review, settings: SlopeTemperature.Settings, 
         consequence=f"{percent(off)} of {'every decade' if slope.kind == 'log' else 'the exponent'} at the end of "
                     f"ambient: {_effect(review, slope, off)}",
         evidence=[Evidence("tempco of the slope", abs(tempco), "1/K", settings.limit)],
-        remedies=remedies or [Remedy("let a resistor that sets the slope rise by about 3354 ppm/K: no single one does")],
+        remedies=remedies or [Remedy("no single resistor of about 3354 ppm/K takes it out: look at the gain stage")],
         at=law_key(slope.requirement),
     )  # fmt: skip
 

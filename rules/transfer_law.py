@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
+from functools import partial
 from typing import Annotated
 
 import numpy as np
@@ -11,25 +12,21 @@ from rulecheck.api import (
     BaseModel,
     Evidence,
     Finding,
+    OperatingPoints,
     Remedy,
     Requirement,
     Review,
     Rule,
-    Set,
     Severity,
     Transfer,
     Unit,
     dimension_fault,
     format_quantity,
     join_key,
-    nearest,
 )
 
+from ._scaling import scalings
 from ._words import percent
-
-RESISTOR_SERIES = "E96"
-TRIAL_CHANGE = 0.01
-MOST_REMEDIES = 2
 
 
 class TransferLaw(Rule):
@@ -91,6 +88,7 @@ def _nominal(review: Review, transfer: Transfer) -> Iterable[Finding]:
     worst = points.worst(ratio)
     if worst.value <= 1:
         return
+    weight = np.where(allowed > 0, 1 / np.where(allowed > 0, allowed, 1), 0.0)
     at = worst.index
     error, limit, law = transfer.error[at], allowed[at], transfer.law[at]
     part = f" ({percent(error / law)} of reading)" if law else ""
@@ -101,8 +99,14 @@ def _nominal(review: Review, transfer: Transfer) -> Iterable[Finding]:
         consequence=f"{requirement.output} reads {format_quantity(transfer.output[at], 'V')} instead of "
                     f"{format_quantity(law, 'V')}",
         evidence=[Evidence("nominal error", float(abs(error)), "V", float(limit), "<=", over=np.abs(transfer.error))],
-        remedies=list(_scalings(review, transfer)), at=join_key(("requirements", requirement.name)),
+        remedies=scalings(review, lambda p: _weighted(p.voltage(requirement.output) - transfer.law, weight),
+                          lambda p: _weighted(p.voltage(requirement.output), weight)),
+        at=join_key(("requirements", requirement.name)),
     )  # fmt: skip
+
+
+def _weighted(values: np.ndarray, weight: np.ndarray) -> np.ndarray:
+    return np.where(weight > 0, values, 0.0) * weight
 
 
 def _at_work(review: Review) -> np.ndarray:
@@ -135,34 +139,14 @@ def _exponents(review: Review, settings: TransferLaw.Settings, transfer: Transfe
             nets=[requirement.output], subject=f"{requirement.name} exponent {name}", severity=Severity.MINOR,
             conditions=worst.conditions, consequence=f"{requirement.output} bends away from its law with {name}",
             evidence=[Evidence("exponent error", worst.value, "1", settings.exponent, "<=", over=off)],
-            remedies=list(_scalings(review, transfer)), at=join_key(("requirements", requirement.name)),
+            remedies=scalings(review, partial(_tilt, transfer, large, name, settings.exponent * abs(power))),
+            at=join_key(("requirements", requirement.name)),
         )  # fmt: skip
 
 
-def _scalings(review: Review, transfer: Transfer) -> Iterable[Remedy]:
-    """Resistors whose change, by trial, takes most of the error away, with the nearest preferred value."""
-    if not review.seeks_remedies:
-        return
-    weight = np.where(transfer.judged & (transfer.allowed > 0), 1 / transfer.allowed, 0.0)
-    error = np.where(weight > 0, transfer.error, 0.0) * weight
-    options = []
-    for ref, part in review.design.parts.items():
-        if part.kind != "resistor" or part.value.typ <= 0:
-            continue
-        moved = review.re_solve(values={(ref, "value"): part.value.typ * (1 + TRIAL_CHANGE)})
-        effect = (moved.voltage(transfer.requirement.output) - transfer.output) / TRIAL_CHANGE
-        effect = np.where(weight > 0, np.nan_to_num(effect), 0.0) * weight
-        size = float(effect @ effect)
-        change = -float(effect @ error) / size if size > 0 else 0.0
-        if abs(change) < 1e-4:
-            continue
-        left = float(np.abs(error + effect * change).max())
-        factor = 1 + change if change > 0 else 1 / (1 - change)
-        options.append((left, ref, nearest(part.value.typ * factor, RESISTOR_SERIES)))
-    before = float(np.abs(error).max())
-    helpful = sorted(o for o in options if o[0] < 0.9 * before)[:MOST_REMEDIES]
-    for _, ref, value in helpful:
-        words = format_quantity(value, "ohm")
-        yield Remedy(f"change {ref} to {words}", [Set(join_key(("parts", ref, "value")), words)])
-    if not helpful:
-        yield Remedy("no single resistor takes the error away: look at currents, temperatures and loops first")
+def _tilt(transfer: Transfer, judged: np.ndarray, name: str, limit: float, points: OperatingPoints) -> np.ndarray:
+    """Exponent error over the whole range of an input, in parts of a limit: the slope of ln(output/law) in ln(input)."""
+    x = np.log(np.abs(transfer.conditions.values[name][judged]))
+    error = np.log(np.abs(points.voltage(transfer.requirement.output)[judged] / transfer.law[judged]))
+    x = x - x.mean()
+    return np.atleast_1d(x @ error / (x @ x) / limit)

@@ -21,7 +21,7 @@ from rulecheck.api import (
 )
 
 from ._edits import quantity, set_parameter
-from ._saturation import working
+from ._saturation import nets_without_a_level, working
 from ._words import percent
 
 USUAL_RATINGS = (6.3, 10.0, 16.0, 25.0, 35.0, 50.0, 63.0, 100.0, 160.0, 200.0, 250.0, 400.0, 630.0, 1000.0)  # V
@@ -48,8 +48,9 @@ class VoltageRating(Rule):
     def check(self, review: Review, settings: Settings) -> Iterable[Finding]:
         """Judge capacitors of one rating across the same nets together: they have one cause."""
         groups: dict[tuple[frozenset[str], float], list[Part]] = {}
+        unjudged = nets_without_a_level(review)
         for part in working(review.design).values():
-            if part.kind == "capacitor" and part.voltage is not None:
+            if part.kind == "capacitor" and part.voltage is not None and not unjudged & set(part.pins.values()):
                 key = (frozenset(part.pins.values()), float(part.voltage.min))
                 groups.setdefault(key, []).append(part)
         for (_, rating), parts in groups.items():

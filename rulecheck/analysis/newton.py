@@ -98,14 +98,15 @@ def iterate(
         done = small & np.all(np.abs(residual) <= loose * tolerance, axis=1)
         small = _step(equations, here, now, step, round_ >= FREE_FLIPS, loose)
         now.converged = done
-        state.put(active, now)
         if done.all():
             break
         if done.any():
+            state.put(active, now)
             keep = ~done
             active, now, here, small = active[keep], now.take(keep), take(here, keep), small[keep]
             linear = linear[keep]
             help_now = None if help_now is None else help_now.take(keep)
+    state.put(active, now)
     return state
 
 
@@ -132,8 +133,8 @@ def _step(equations: Equations, values: Values, now: State, step: Array, one_fli
     actual = equations.junction_voltages(now.x, values)
     tr, di = values.transistor, values.diode
     tangents = now.tangents
-    vbe = limited_step(actual.v_be, tangents.v_be, tr.slope, critical_voltage(tr.saturation, tr.slope))
-    vbc = limited_step(actual.v_bc, tangents.v_bc, tr.slope, critical_voltage(tr.saturation, tr.slope))
+    vbe = limited_step(actual.v_be, tangents.v_be, tr.slope, tr.critical)
+    vbc = limited_step(actual.v_bc, tangents.v_bc, tr.slope, tr.critical)
     vd = limited_step(actual.diode, tangents.diode, di.slope, critical_voltage(di.saturation, di.slope))
     limited = (vbe != actual.v_be).any(axis=1) | (vbc != actual.v_bc).any(axis=1) | (vd != actual.diode).any(axis=1)
     tangents.v_be, tangents.v_bc, tangents.diode = vbe, vbc, vd
@@ -170,9 +171,7 @@ def _move_amplifiers(equations: Equations, values: Values, now: State, old: Arra
     return changed
 
 
-def solve(
-    equations: Equations, values: Values, start: State | None = None, lost: BoolArray | None = None
-) -> State:
+def solve(equations: Equations, values: Values, start: State | None = None, lost: BoolArray | None = None) -> State:
     """Operating points of a batch, by the shortest way that arrives.
 
     A given `start` is tried first; then Newton's method from conducting junctions, a walk through
@@ -251,8 +250,7 @@ CONDUCTING = 0.9
 def _from_conducting(equations: Equations, values: Values) -> State:
     """Newton's method from 0 V everywhere with every base-emitter junction conducting."""
     state = power_off(equations, values.fixed.shape[0])
-    hot = values.transistor
-    state.tangents.v_be[:] = CONDUCTING * critical_voltage(hot.saturation, hot.slope)
+    state.tangents.v_be[:] = CONDUCTING * values.transistor.critical
     return iterate(equations, values, state, 60)
 
 

@@ -189,7 +189,7 @@ def draw_all(review: Review, sampling: Sampling, *, everywhere: bool) -> dict[st
         if requirement.law is None or placing(points, requirement.output) is None:
             continue
         if everywhere:
-            rows = np.arange(review.conditions.size)
+            rows: IntArray = np.arange(review.conditions.size)
         elif judged(requirement, points, review.typical).any():
             rows = sampled_rows(review, requirement)
         else:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import importlib
+import os
 import traceback
 from collections.abc import Sequence
 
@@ -78,6 +79,9 @@ def main(arguments: Sequence[str] | None = None) -> int:
         Exit status.
     """
     prepare_streams()
+    # batches of small matrices gain nothing from threads of the linear algebra, and lose much waiting for them;
+    # it must be said before numpy is first imported, and a user's own word holds
+    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
     try:
         return int(program.main(arguments, prog_name="rulecheck", standalone_mode=False) or Status.CLEAN)
     except click.Abort:

@@ -58,6 +58,8 @@ def limited_step(wanted: Array, last: Array, slope: Array, critical: Array) -> A
     """
     step = wanted - last
     forward = (wanted > critical) & (np.abs(step) > 2 * slope)
+    if not forward.any():
+        return wanted
     ratio = np.maximum(1 + step / slope, 1e-12)
     from_on = np.where(ratio > 1e-12, last + slope * np.log(ratio), critical)
     from_off = slope * np.log(np.maximum(wanted, slope) / slope)

@@ -10,7 +10,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from .constants import NOMINAL_TEMPERATURE, Array, saturation_scale, thermal_voltage
-from .junction import junction_current
+from .junction import critical_voltage, junction_current
 
 
 @dataclass(frozen=True, slots=True)
@@ -30,6 +30,8 @@ class HotTransistor:
         Emission coefficient times thermal voltage.
     mismatch : ndarray [V]
         Added to the base-emitter voltage.
+    critical : ndarray [V]
+        Junction voltage of greatest curvature.
     """
 
     saturation: Array
@@ -41,6 +43,7 @@ class HotTransistor:
     slope: Array
     leakage_slope: Array
     mismatch: Array
+    critical: Array
 
 
 @dataclass(frozen=True, slots=True)
@@ -78,16 +81,18 @@ def heat(parameters: dict[str, Array], temperature: Array) -> HotTransistor:
     growth = saturation_scale(temperature, p["bandgap"], p["temperature_exponent"], one)
     beta_growth = (temperature / NOMINAL_TEMPERATURE) ** p["beta_exponent"]
     vt = thermal_voltage(temperature)
+    saturation, slope = p["saturation_current"] * growth, p["emission_coefficient"] * vt
     return HotTransistor(
-        saturation=p["saturation_current"] * growth,
+        saturation=saturation,
         forward_beta=p["forward_beta"] * beta_growth,
         reverse_beta=p["reverse_beta"] * beta_growth,
         early=p["early_voltage"] * one,
         knee=p["knee_current"] * one,
         leakage=p["leakage_saturation_current"] * growth ** (1 / p["leakage_emission_coefficient"]),
-        slope=p["emission_coefficient"] * vt,
+        slope=slope,
         leakage_slope=p["leakage_emission_coefficient"] * vt,
         mismatch=p["mismatch"] * one,
+        critical=critical_voltage(saturation, slope),
     )
 
 

@@ -34,7 +34,7 @@ def render(sheet: BenchSheet, columns: Collection[str], measured: Measured | Non
 
     def row(name: str, index: int) -> list[float | str]:
         reading = sheet.readings[name]
-        expected, limit = float(reading.expected[index]), float(reading.worst_case[index])
+        expected, limit = float(reading.expected[index]), float(reading.limit[index])
         figures = (expected, expected - limit, expected + limit)
         return [*points[index], name, *("" if math.isnan(figure) else figure for figure in figures)]
 

@@ -53,7 +53,7 @@ def render(
 
 def _expected(sheet: BenchSheet, index: int) -> list[str]:
     rows = [
-        (_short(name), *(quantity(float(array[index]), "V") for array in (r.expected, r.worst_case, r.rss)))
+        (_short(name), *(quantity(float(array[index]), "V") for array in (r.expected, r.limit, r.rss)))
         for name, r in sheet.readings.items()
     ]
     return table([("", "expected", "±", "± likely (rss)"), *rows])
@@ -64,7 +64,7 @@ def _compared(measured: Measured, index: int, layout: Layout) -> Iterator[str]:
     if not rows:
         yield "  nothing measured"
         return
-    cells = [("", "measured", "expected", "±", "")]
+    cells: list[tuple[str, ...]] = [("", "measured", "expected", "±", "")]
     for i in rows:
         name = measured.readings[i]
         figures = (measured.volts[i], measured.volts[i] - measured.off[i], measured.limit[i])

@@ -7,8 +7,6 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-import numpy as np
-
 from rulecheck.report.json import FORMAT, dump, plain, tool
 
 if TYPE_CHECKING:

@@ -18,8 +18,8 @@ if TYPE_CHECKING:
 
 UNITS = {
     "ic": "A", "ib": "A", "vbe": "V", "vce": "V", "current": "A", "wiper_current": "A", "voltage": "V",
-    "output": "V", "temperature": "degC", "phase_margin": "deg", "crossover": "Hz", "law": "V", "error": "V", "rss": "V",
-    "worst_case": "V", "mean": "V", "std": "V", "p0.5": "V", "p99.5": "V", "inside": "%",
+    "output": "V", "temperature": "degC", "phase_margin": "deg", "crossover": "Hz", "law": "V", "error": "V",
+    "rss": "V", "worst_case": "V", "mean": "V", "std": "V", "p0.5": "V", "p99.5": "V", "inside": "%",
 }  # fmt: skip
 #: Units that carry no prefix and are shown as they stand.
 PLAIN_UNITS = {"gain_margin": "dB", "rightmost": "1/s"}

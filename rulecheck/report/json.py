@@ -104,7 +104,7 @@ def _design(design: DesignReport) -> dict[str, Any]:
         "errors": [problem_object(problem) for problem in design.errors],
         "failures": [{"rule": failure.rule, "message": failure.message} for failure in design.failures],
         "not_run": [{"rule": entry.rule, "because": entry.because} for entry in design.not_run],
-        "findings": [_finding(finding) for finding in design.findings],
+        "findings": [finding_object(finding) for finding in design.findings],
     }
 
 

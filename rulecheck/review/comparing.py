@@ -51,7 +51,7 @@ class FindingChange:
     def latest(self) -> Finding:
         """The finding as it is, or as it last was."""
         found = self.new or self.old
-        assert found is not None, "a change has at least one side"  # noqa: S101
+        assert found is not None, "a change has at least one side"
         return found
 
 

@@ -23,6 +23,16 @@ def valid_figures(text):
     return _valid(text, "figures_schema.json")
 
 
+def valid_comparison(text):
+    """The object of a comparison, which must fit its schema."""
+    return _valid(text, "comparison_schema.json")
+
+
+def valid_bench(text):
+    """The object of a bench sheet, which must fit its schema."""
+    return _valid(text, "bench_schema.json")
+
+
 def _valid(text, name):
     value = json.loads(text)
     validator = Draft202012Validator(schema(name), format_checker=Draft202012Validator.FORMAT_CHECKER)

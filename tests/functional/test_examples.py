@@ -45,6 +45,8 @@ FAULTY = {
     "no_clamp": Fault("junction-reverse", MAJOR, ("Q1", "Q2")),
     "odd_value": Fault("preferred-value", OBSERVATION, ("R3",)),
     "over_voltage": Fault("supply-rating", MAJOR, ("U1A", "U1B", "U1C")),
+    # a slope that rises leaves the law too
+    "rising_slope": Fault("slope-temperature", MAJOR, ("Q1", "Q2"), ("VOUT",), frozenset({"transfer-law"})),
     "root_of_volts": Fault("transfer-law", MAJOR, nets=("VOUT",)),
     "silent_resistor": Fault("bare-assumption", OBSERVATION, ("R2",)),
     "starved_sample": Fault("signal-current", MINOR, ("Q1",), ("S1",)),
