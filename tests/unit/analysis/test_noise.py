@@ -105,7 +105,7 @@ def test_both_flows_of_a_transistor_make_noise(base, collector):
     vt = 0.0257
     figures = {
         "saturation": 1e-14, "forward_beta": 100.0, "reverse_beta": 2.0, "early": np.inf, "knee": np.inf,
-        "leakage": 1e-15, "slope": vt, "leakage_slope": 2 * vt, "mismatch": 0.0,
+        "leakage": 1e-15, "slope": vt, "leakage_slope": 2 * vt, "mismatch": 0.0, "critical": 0.8,
     }  # fmt: skip
     hot = HotTransistor(**{name: np.array([[value]]) for name, value in figures.items()})
     v_be, v_bc = np.array([[base]]), np.array([[collector]])
