@@ -51,7 +51,7 @@ def leakages(review: Review) -> Iterator[Leakage]:
         if judged.any():
             current = np.where(judged, np.abs(leaking.current(part.ref, pin)), np.nan)
             with np.errstate(all="ignore"):
-                ratio = current / _signal(review, nodes[net], judged)
+                ratio = current / carried_signal(review, nodes[net], judged)
             yield Leakage(part, net, current, ratio)
 
 
@@ -61,7 +61,7 @@ def _at_work(review: Review) -> set[str]:
     return {log.part for log in review.structure.log_diodes} | {ref for loop in loops for ref in loop.parts}
 
 
-def _signal(review: Review, amplifier: str, judged: Mask) -> Floats:
+def carried_signal(review: Review, amplifier: str, judged: Mask) -> Floats:
     """Current of the part that carries most to the summing node of an amplifier or from it, clamps apart [A].
 
     A signal that goes through zero, and is not logged, is compared by its largest value.

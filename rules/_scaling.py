@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
 
 import numpy as np
 
@@ -11,81 +11,87 @@ from rulecheck.api import OperatingPoints, Remedy, Review, format_quantity, near
 from ._edits import set_parameter
 
 SERIES = "E96"
-TRIAL_CHANGE = 0.01
+TRIAL_STEP = 0.01
+"""Of the logarithm of a value, to see what it does."""
 MOST_TRIED = 4
-MOST_FOUND = 2
+MOST_FOUND = 3
 ROUNDS = 4
+LARGEST_STEP = 7.0
+"""Of the logarithm of a value: a factor of a thousand, which is a slip of a prefix."""
 
-Residual = Callable[[OperatingPoints], np.ndarray]
+Figure = Callable[[OperatingPoints], np.ndarray]
 
 
-def scalings(review: Review, residual: Residual, level: Residual | None = None) -> list[Remedy]:
-    """Single resistors with the preferred value that brings every residual to within 1.
+def scalings(review: Review, residual: Figure, level: Figure | None = None) -> list[Remedy]:
+    """Single resistors with the preferred value that brings a residual to within 1, the least change first.
 
     Parameters
     ----------
     review : Review
     residual : callable
-        What is wrong at operating points of the review conditions, a vector in parts of what is allowed.
+        What is wrong at operating points of the review conditions, as a vector in parts of what is allowed; NaN where
+        not judged.
     level : callable, optional
         The output in the same parts: where it goes with a power of a resistor, that power is made use of.
     """
     if not review.seeks_remedies:
         return []
     wrong = residual(review.operating_points)
-    options: list[tuple[float, str, np.ndarray]] = []
-    most = np.abs(wrong).max()
+    most = _largest(wrong)
+    options: list[tuple[float, float, str, np.ndarray]] = []
     for ref, part in review.design.parts.items():
         if most > 1 and part.kind == "resistor" and part.value.typ > 0:
-            moved = residual(_changed(review, ref, part.value.typ * (1 + TRIAL_CHANGE)))
-            slope = (moved - wrong) / np.log1p(TRIAL_CHANGE)
-            left = np.abs(wrong + slope * _step(slope, wrong)).max()
+            moved = residual(_changed(review, ref, part.value.typ * np.exp(TRIAL_STEP)))
+            slope = (moved - wrong) / TRIAL_STEP
+            step = _step(slope, wrong)
+            left = _largest(wrong + slope * step)
             if left < most / 2:
-                options.append((float(left), ref, slope))
+                options.append((max(left, 1.0), abs(step), ref, slope))
     found: list[Remedy] = []
-    for _, ref, slope in sorted(options, key=lambda option: option[0])[:MOST_TRIED]:
-        for value in _value(review, ref, slope, residual, level):
+    for *_, ref, slope in sorted(options, key=lambda option: option[:2])[:MOST_TRIED]:
+        value = _value(review, ref, slope, residual, level)
+        if value is not None and len(found) < MOST_FOUND:
             words = format_quantity(value, "ohm", 5)
             found.append(Remedy(f"change {ref} to {words}", [set_parameter(ref, "value", words)]))
-        if len(found) == MOST_FOUND:
-            break
     return found or [Remedy("no single resistor takes the error away: look at currents, temperatures and loops first")]
 
 
-def _value(review: Review, ref: str, slope: np.ndarray, residual: Residual, level: Residual | None) -> Iterator[float]:
+def _value(review: Review, ref: str, slope: np.ndarray, residual: Figure, level: Figure | None) -> float | None:
     """The preferred value that does, if any."""
     value, points = review.design.parts[ref].value.typ, review.operating_points
     wrong = residual(points)
     for _ in range(ROUNDS):
-        ratio = _ratio(_step(slope, wrong), _power(slope, level(points)) if level else 0.0)
-        other = nearest(value * ratio, SERIES)
-        if other == value or not np.isfinite(ratio):
-            return
+        power = -_step(level(points), slope) if level else 0.0
+        other = nearest(value * _ratio(_step(slope, wrong), power), SERIES)
+        if other == value:
+            break
         points = _changed(review, ref, other)
         there = residual(points)
-        if np.abs(there).max() <= 1:
-            yield other
-            return
+        if _largest(there) <= 1:
+            return other
         slope, value, wrong = (there - wrong) / np.log(other / value), other, there
+    return None
 
 
 def _changed(review: Review, ref: str, value: float) -> OperatingPoints:
     return review.re_solve(values={(ref, "value"): value})
 
 
+def _largest(residual: np.ndarray) -> float:
+    """Largest magnitude, infinite where nothing is known."""
+    known = np.abs(residual[np.isfinite(residual)])
+    return float(known.max()) if known.size else np.inf
+
+
 def _step(slope: np.ndarray, wrong: np.ndarray) -> float:
-    """Step of the logarithm that leaves the least squares."""
-    size = float(slope @ slope)
-    return -float(slope @ wrong) / size if size > 0 else 0.0
-
-
-def _power(slope: np.ndarray, level: np.ndarray) -> float:
-    """Power of the resistor with which the output goes."""
-    size = float(level @ level)
-    return float(slope @ level) / size if size > 0 else 0.0
+    """Step along a slope that leaves the least squares."""
+    known = np.isfinite(slope) & np.isfinite(wrong)
+    size = float(slope[known] @ slope[known])
+    return -float(slope[known] @ wrong[known]) / size if size > 0 else 0.0
 
 
 def _ratio(step: float, power: float) -> float:
-    """Ratio of values at which an output that goes with a power of the value has moved by `step` times its slope."""
+    """Ratio of values for a step of the logarithm, of an output that goes with a power of the value."""
     grown = 1 + power * step
-    return float(grown ** (1 / power) if abs(power) > 1e-3 and grown > 0 else np.exp(np.clip(step, -7, 7)))
+    logarithm = np.log(grown) / power if abs(power) > 1e-3 and grown > 0 else step
+    return float(np.exp(np.clip(logarithm, -LARGEST_STEP, LARGEST_STEP)))

@@ -9,11 +9,12 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 import numpy as np
+import numpy.typing as npt
 
 from rulecheck.api import (
-    AnalysisError,
     Evidence,
     Finding,
+    OperatingPoints,
     Remedy,
     Requirement,
     Review,
@@ -28,6 +29,7 @@ from rulecheck.api import (
     nearest,
 )
 
+Array = npt.NDArray[np.float64]
 MOST_REMEDIES = 2
 ROUNDS = 6
 MARGIN = 1.1
@@ -52,15 +54,13 @@ class Bandwidth(Rule):
     def check(self, review: Review, settings: object) -> Iterator[Finding]:
         """Judge each requirement with a bandwidth."""
         for requirement in review.design.requirements.values():
-            if requirement.bandwidth is not None:
-                yield from self._judge(review, requirement)
+            yield from self._judge(review, requirement)
 
     def _judge(self, review: Review, requirement: Requirement) -> Iterator[Finding]:
         asked = requirement.bandwidth
-        points, found = review.bandwidth_of(requirement)
-        found = np.where(is_regulated(review, points, requirement.output), found, np.nan)
         if asked is None:
             return
+        points, found = _computed(review, requirement)
         key = join_key(("requirements", requirement.name, "bandwidth"))
         who = f"requirement {requirement.name}"
         if np.isnan(found).all():
@@ -81,19 +81,22 @@ class Bandwidth(Rule):
             f"{format_quantity(worst.value, 'Hz', 3)} at {signal}, {format_quantity(asked.min, 'Hz', 3)} are asked",
             nets=[requirement.output], subject=requirement.name, conditions=worst.conditions, at=key,
             consequence=f"{requirement.output} does not follow changes of {asked.input} faster than that"
-                        + _slowest(review, requirement, worst.index),
+                        + _slowest(review, points, worst.index),
             evidence=[Evidence("bandwidth", worst.value, "Hz", asked.min, ">=", over=found)],
             remedies=list(_remedies(review, requirement, worst.value)) if review.seeks_remedies else [],
         )  # fmt: skip
 
 
-def _slowest(review: Review, requirement: Requirement, index: int) -> str:
+def _computed(review: Review, requirement: Requirement) -> tuple[OperatingPoints, Array]:
+    """Operating points and bandwidths, NaN where an amplifier before the output is at its limit."""
+    points, found = review.bandwidth_of(requirement)
+    return points, np.where(is_regulated(review, points, requirement.output), found, np.nan)
+
+
+def _slowest(review: Review, points: OperatingPoints, index: int) -> str:
     """The log transistor with the least current at a point, in words."""
-    points, _ = review.bandwidth_of(requirement)
-    currents = {
-        log.part: float(forward_current(points, log.part)[index])
-        for log in review.structure.log_transistors
-    }  # fmt: skip
+    logs = [log.part for log in review.structure.log_transistors]
+    currents = {ref: float(forward_current(points, ref)[index]) for ref in logs}
     if not currents:
         return ""
     ref = min(currents, key=lambda r: abs(currents[r]))
@@ -102,8 +105,7 @@ def _slowest(review: Review, requirement: Requirement, index: int) -> str:
 
 def _least(review: Review, requirement: Requirement) -> float:
     """Least bandwidth of a requirement [Hz], 0 where there is none."""
-    points, found = review.bandwidth_of(review.design.requirements[requirement.name])
-    found = np.where(is_regulated(review, points, requirement.output), found, np.nan)
+    _, found = _computed(review, review.design.requirements[requirement.name])
     return float(np.nanmin(found)) if np.isfinite(found).any() else 0.0
 
 
@@ -140,12 +142,12 @@ def _with(review: Review, requirement: Requirement, ref: str, farad: float) -> f
 
 def _smaller(review: Review, requirement: Requirement, ref: str, present: float) -> float | None:
     """The value of the E12 series, or less, that brings the bandwidth up to what is asked; None where none does."""
-    asked = requirement.bandwidth
+    least = requirement.bandwidth.min if requirement.bandwidth is not None else 0.0
     value, reached = review.design.parts[ref].value.typ, present
-    for _ in range(ROUNDS if asked is not None else 0):
-        value = nearest(value * min(reached / (MARGIN * (asked.min if asked else 0.0)), 0.9), "E12")
+    for _ in range(ROUNDS):
+        value = nearest(value * min(reached / (MARGIN * least), 0.9), "E12")
         before, reached = reached, _with(review, requirement, ref, value)
-        if asked is not None and reached >= asked.min:
+        if reached >= least:
             return value
         if reached <= before * MATTERS:
             return None
@@ -168,7 +170,7 @@ def _from_a_larger_signal(review: Review, requirement: Requirement) -> Remedy | 
         edit = Set(join_key(("requirements", requirement.name, "bandwidth", "at")), {asked.input: words, **others})
         try:
             met = _least(review.edited([edit]), requirement) >= asked.min
-        except (AnalysisError, RulecheckError):
+        except RulecheckError:
             return None
         if met:
             return Remedy(f"ask it from {asked.input} of {words} upwards only, where it is met", [edit])

@@ -102,10 +102,8 @@ def _power(review: Review, settings: Dissipation.Settings, part: Part) -> Iterat
 def _figure(review: Review, part: Part) -> Array:
     """What is held against the current rating of a transistor or diode [A]."""
     current = forward_current(review.operating_points, part.ref)
-    if part.kind == "diode":
-        return current
-    size: Array = np.abs(current)
-    return size
+    figure: Array = np.maximum(current, current if part.kind == "diode" else -current)
+    return figure
 
 
 def _limit(part: Part, name: str) -> float:

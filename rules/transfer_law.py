@@ -80,7 +80,7 @@ def _dimensions(review: Review, requirement: Requirement) -> Finding | None:
 
 def _nominal(review: Review, transfer: Transfer) -> Iterable[Finding]:
     requirement, points = transfer.requirement, review.operating_points
-    allowed = np.where(transfer.judged & _at_work(review), transfer.allowed, np.nan)
+    allowed = np.where(transfer.judged & _at_work(review, points), transfer.allowed, np.nan)
     with np.errstate(all="ignore"):
         ratio = np.abs(transfer.error) / allowed
     if not np.isfinite(ratio).any():
@@ -88,7 +88,6 @@ def _nominal(review: Review, transfer: Transfer) -> Iterable[Finding]:
     worst = points.worst(ratio)
     if worst.value <= 1:
         return
-    weight = np.where(allowed > 0, 1 / np.where(allowed > 0, allowed, 1), 0.0)
     at = worst.index
     error, limit, law = transfer.error[at], allowed[at], transfer.law[at]
     part = f" ({percent(error / law)} of reading)" if law else ""
@@ -99,19 +98,21 @@ def _nominal(review: Review, transfer: Transfer) -> Iterable[Finding]:
         consequence=f"{requirement.output} reads {format_quantity(transfer.output[at], 'V')} instead of "
                     f"{format_quantity(law, 'V')}",
         evidence=[Evidence("nominal error", float(abs(error)), "V", float(limit), "<=", over=np.abs(transfer.error))],
-        remedies=scalings(review, lambda p: _weighted(p.voltage(requirement.output) - transfer.law, weight),
-                          lambda p: _weighted(p.voltage(requirement.output), weight)),
+        remedies=scalings(review, lambda p: _shares(review, transfer, p, transfer.law),
+                          lambda p: _shares(review, transfer, p)),
         at=join_key(("requirements", requirement.name)),
     )  # fmt: skip
 
 
-def _weighted(values: np.ndarray, weight: np.ndarray) -> np.ndarray:
-    return np.where(weight > 0, values, 0.0) * weight
+def _shares(review: Review, transfer: Transfer, points: OperatingPoints, law: np.ndarray | float = 0.0) -> np.ndarray:
+    """Output less law in parts of the allowed error, where it is judged and above nothing."""
+    judged = transfer.judged & _at_work(review, points) & (transfer.allowed > 0)
+    output = points.voltage(transfer.requirement.output)
+    return np.where(judged, (output - law) / np.where(judged, transfer.allowed, 1), np.nan)
 
 
-def _at_work(review: Review) -> np.ndarray:
+def _at_work(review: Review, points: OperatingPoints) -> np.ndarray:
     """Conditions at which no amplifier has left its range or its sign of feedback: that is another rule's fault."""
-    points = review.operating_points
     mask = np.ones(review.conditions.size, bool)
     for amplifier in review.loops.amplifiers:
         linear = points.linear(amplifier)
@@ -121,7 +122,8 @@ def _at_work(review: Review) -> np.ndarray:
 
 def _exponents(review: Review, settings: TransferLaw.Settings, transfer: Transfer) -> Iterable[Finding]:
     requirement, points = transfer.requirement, review.operating_points
-    large = transfer.judged & _at_work(review) & (np.abs(transfer.law) > settings.above_absolute * requirement.absolute)
+    large = transfer.judged & _at_work(review, points)
+    large &= np.abs(transfer.law) > settings.above_absolute * requirement.absolute
     for name, exponent in transfer.exponent.items():
         asked = np.where(large, transfer.law_exponent[name], np.nan)
         if not np.isfinite(asked).any() or np.nanmax(asked) - np.nanmin(asked) > 1e-6:
@@ -139,14 +141,16 @@ def _exponents(review: Review, settings: TransferLaw.Settings, transfer: Transfe
             nets=[requirement.output], subject=f"{requirement.name} exponent {name}", severity=Severity.MINOR,
             conditions=worst.conditions, consequence=f"{requirement.output} bends away from its law with {name}",
             evidence=[Evidence("exponent error", worst.value, "1", settings.exponent, "<=", over=off)],
-            remedies=scalings(review, partial(_tilt, transfer, large, name, settings.exponent * abs(power))),
+            remedies=scalings(review, partial(_tilted, review, transfer, large, name, settings.exponent * abs(power))),
             at=join_key(("requirements", requirement.name)),
         )  # fmt: skip
 
 
-def _tilt(transfer: Transfer, judged: np.ndarray, name: str, limit: float, points: OperatingPoints) -> np.ndarray:
-    """Exponent error over the whole range of an input, in parts of a limit: the slope of ln(output/law) in ln(input)."""
+def _tilted(
+    review: Review, transfer: Transfer, judged: np.ndarray, name: str, limit: float, points: OperatingPoints
+) -> np.ndarray:
+    """Exponent error over the range of an input, as the slope of ln(output/law) in its logarithm, and all errors."""
     x = np.log(np.abs(transfer.conditions.values[name][judged]))
     error = np.log(np.abs(points.voltage(transfer.requirement.output)[judged] / transfer.law[judged]))
     x = x - x.mean()
-    return np.atleast_1d(x @ error / (x @ x) / limit)
+    return np.append(_shares(review, transfer, points, transfer.law), x @ error / (x @ x) / limit)

@@ -149,8 +149,10 @@ def _samples(review: Review, layout: Layout, units: Mapping[str, str]) -> Iterat
         if samples.requirement.has_accuracy:
             inside = samples.fraction_inside()
             worst = int(np.argmin(inside.value))
-            where = conditions_in_words(samples.conditions.at(worst), units)
-            words += f"; {_share(samples.fraction_of_units())} inside everywhere, {_share(inside, worst)} at {where}"
+            words += f"; {_share(samples.fraction_of_units())} inside everywhere"
+            if inside.value[worst] < 1:
+                where = conditions_in_words(samples.conditions.at(worst), units)
+                words += f", {_share(inside, worst)} at {where}"
         yield ""
         yield from layout.wrapped(f"{words} (95 % confidence)" if samples.requirement.has_accuracy else words)
 

@@ -85,6 +85,18 @@ def test_readings_are_the_operating_points(run, folder):
     assert 0.4e-3 < readings["parts.U1A.input_difference"]["worst_case"][0] < 1e-3
 
 
+def test_a_trim_takes_up_what_it_is_there_for(run, folder):
+    """Set to null its requirement it leaves less of the output's spread than where a point states its position."""
+    heater = EXAMPLES / "sound" / "heater_power.toml"
+    _, design, readings = sheet(run, heater)
+    trimmed = readings["nets.VOUT"]["worst_case"][0]
+    row = {name: design["points"][name][0] for name in ("VIN", "RV1")}
+    (folder / "points.csv").write_text("VIN,RV1\n{VIN!r},{RV1!r}\n".format(**row))
+    fixed = sheet(run, heater, "--points", "points.csv")[2]["nets.VOUT"]
+    assert fixed["expected"][0] == pytest.approx(readings["nets.VOUT"]["expected"][0], rel=1e-6)
+    assert trimmed < 0.8 * fixed["worst_case"][0]
+
+
 def test_the_sheet_can_be_filled_in_and_read_again(run, halves, folder):
     """What reads as expected is inside; conditions are those of the sheet."""
     out = run("figures", halves, "--bench", "--as", "csv")[1]

@@ -49,6 +49,7 @@ FAULTY = {
     "rising_slope": Fault("slope-temperature", MAJOR, ("Q1", "Q2"), ("VOUT",), frozenset({"transfer-law"})),
     "root_of_volts": Fault("transfer-law", MAJOR, nets=("VOUT",)),
     "silent_resistor": Fault("bare-assumption", OBSERVATION, ("R2",)),
+    "slow_sample": Fault("bandwidth", MAJOR, nets=("VOUT",)),
     "starved_sample": Fault("signal-current", MINOR, ("Q1",), ("S1",)),
     "strays_only": Fault("log-loop-compensation", MINOR, ("U1",)),
     "supply_reference": Fault("reference-current", MAJOR, ("Q2",)),
@@ -59,6 +60,7 @@ FAULTY = {
     "uncompensated": Fault("loop-stability", MAJOR, ("U1A", "U1B")),
     "unmatched_pair": Fault("matched-pair", MAJOR, ("Q3", "Q4")),
     "weak_tail": Fault("latch-up", MAJOR, ("U1A", "U1B")),
+    "wide_output": Fault("noise", MAJOR, nets=("VOUT",)),
     "wrong_gain": Fault("transfer-law", MAJOR, nets=("VOUT",)),
 }
 

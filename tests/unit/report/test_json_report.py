@@ -50,7 +50,7 @@ def rendered(*designs):
     return value
 
 
-@pytest.mark.parametrize("name", ["report_schema.json", "figures_schema.json"])
+@pytest.mark.parametrize("name", [f"{word}_schema.json" for word in ("report", "figures", "comparison", "bench")])
 def test_the_schemas_are_schemas(name):
     """By the schema of schemas, 2020-12."""
     Draft202012Validator.check_schema(schema(name))
