@@ -62,6 +62,7 @@ if TYPE_CHECKING:
     from rulecheck.analysis.review import Cost, Review
     from rulecheck.analysis.ringing import Ringing, ringing
     from rulecheck.analysis.transfer import Transfer, dimension_fault
+    from rulecheck.analysis.trims import Travel, travel
     from rulecheck.circuit.islands import Island, equal_islands, islands
     from rulecheck.circuit.structure import (
         AntilogTransistor,
@@ -110,6 +111,7 @@ _LAZY = {
         "rulecheck.analysis.review": ("Cost", "Review"),
         "rulecheck.analysis.ringing": ("Ringing", "ringing"),
         "rulecheck.analysis.transfer": ("Transfer", "dimension_fault"),
+        "rulecheck.analysis.trims": ("Travel", "travel"),
         "rulecheck.circuit.islands": ("Island", "equal_islands", "islands"),
         "rulecheck.circuit.structure": (
             "AntilogTransistor", "FeedbackLoop", "Junction", "JunctionLoop", "LogTransistor", "Structure",
@@ -175,6 +177,7 @@ __all__ = [
     "SummingNode",
     "SupplyEffect",
     "Transfer",
+    "Travel",
     "Unit",
     "Worst",
     "above_cutoff",
@@ -207,6 +210,7 @@ __all__ = [
     "split_key",
     "supply_effect",
     "thermal_voltage",
+    "travel",
     "worst_cost",
 ]
 

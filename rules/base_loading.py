@@ -4,9 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Iterator
 
-import networkx as nx
-import numpy as np
-
 from rulecheck.api import (
     BaseModel,
     Cost,
@@ -24,9 +21,9 @@ from rulecheck.api import (
     worst_cost,
 )
 
-from ._conduction import is_ideal
 from ._edits import add_capacitor, add_in_series, add_part, move, quantity, set_parameter
 from ._pairs import cost_evidence, cost_words
+from ._source_resistance import drive_of_base
 
 NO_BASE_CURRENT = {"forward_beta": 1e12, "leakage_saturation_current": 0.0}
 LEAST_RESISTANCE = 1.0  # ohm: below it a base is driven as if by a source
@@ -59,7 +56,7 @@ class BaseLoading(Rule):
         judged: set[str] = set()
         for ref in (c.part for c in carriers(review)):
             pair = [r for r in (ref, partner_of(review, ref)) if r is not None and _has_base(review.design.parts[r])]
-            driven = {r: ohm for r in pair if (ohm := _source(review, r)[0]) > LEAST_RESISTANCE}
+            driven = {r: ohm for r in pair if (ohm := drive_of_base(review, r).ohm) > LEAST_RESISTANCE}
             if driven and not judged & set(driven):
                 judged.update(driven)
                 yield from _judge(review, settings, driven)
@@ -67,43 +64,6 @@ class BaseLoading(Rule):
 
 def _has_base(part: Part) -> bool:
     return part.kind in ("npn", "pnp") and part.pins["B"] != part.pins["C"]
-
-
-def _source(review: Review, ref: str) -> tuple[float, list[str]]:
-    """Resistance that drives a base [ohm], and the resistors that make it up; nil where nothing but these ends it."""
-    design, base = review.design, review.design.parts[ref].pins["B"]
-    stiff = {net for net, entry in design.nets.items() if is_ideal(entry)}
-    stiff |= {p.pins["OUT"] for p in design.parts.values() if p.kind == "op-amp" and "OUT" in p.pins}
-    stiff |= {node.net for node in review.structure.summing_nodes}
-    ways: nx.MultiGraph[str] = nx.MultiGraph()
-    ways.add_node(base)
-    for part in design.parts.values():
-        if part.kind == "resistor":
-            ways.add_edge(*part.pins.values(), ohm=max(part.value.typ, 1e-6), ref=part.ref)
-        elif part.kind == "potentiometer":
-            at = review.typical[part.ref]
-            for end, share in (("END1", at), ("END2", 1 - at)):
-                ways.add_edge(part.pins[end], part.pins["WIPER"], ohm=max(part.value.typ * share, 1e-6), ref="")
-    for net, entry in design.nets.items():
-        if entry.source_resistance is not None:
-            stiff.add("source of " + net)
-            ways.add_edge(net, "source of " + net, ohm=max(entry.source_resistance.typ, 1e-6), ref="")
-    if base in stiff:
-        return 0.0, []
-    free = nx.node_connected_component(ways.subgraph(set(ways) - stiff), base)
-    edges = [(a, b, d) for a, b, d in ways.edges(free, data=True) if a != b]
-    order = {net: i for i, net in enumerate(sorted(free))}
-    conductance = np.zeros((len(order), len(order)))
-    for a, b, data in edges:
-        for one, other in ((a, b), (b, a)):
-            if one in order:
-                conductance[order[one], order[one]] += 1 / data["ohm"]
-                if other in order:
-                    conductance[order[one], order[other]] -= 1 / data["ohm"]
-    if not any(net in stiff for a, b, _ in edges for net in (a, b)):
-        return 0.0, []
-    refs = sorted({data["ref"] for _, _, data in edges} - {""})
-    return float(np.linalg.inv(conductance)[order[base], order[base]]), refs
 
 
 def _cost(review: Review, driven: Iterable[str]) -> Cost | None:
@@ -125,9 +85,9 @@ def _judge(review: Review, settings: BaseLoading.Settings, driven: dict[str, flo
     net = review.design.parts[first].pins["B"]
     current = float(points.current(first, "B")[at])
     yield Finding(
-        f"{first}: a base current of {format_quantity(abs(current), 'A', 3)} drops {format_quantity(drop(first), 'V', 3)} "
-        f"in the {format_quantity(driven[first], 'ohm', 3)} that drive {net}{beside}: {cost.worst.value:.3g} times its "
-        f"share at {cost.output}",
+        f"{first}: a base current of {format_quantity(abs(current), 'A', 3)} drops about "
+        f"{format_quantity(drop(first), 'V', 3)} in the {format_quantity(driven[first], 'ohm', 3)} that drive {net}"
+        f"{beside}: {cost.worst.value:.3g} times its share at {cost.output}",
         parts=[first], nets=[net], conditions=cost.worst.conditions,
         severity=Severity.MAJOR if cost.worst.value > settings.serious_shares else Severity.MINOR,
         consequence=cost_words(cost.output, float(cost.error[at]), float(points.voltage(cost.output)[at])),
@@ -139,19 +99,20 @@ def _judge(review: Review, settings: BaseLoading.Settings, driven: dict[str, flo
 def _remedies(review: Review, settings: BaseLoading.Settings, ref: str, cost: float) -> Iterator[Remedy]:
     """Lower resistances by decades, which keeps their ratios; the same resistance at the other base; a buffer."""
     parts = review.design.parts
-    ohm, refs = _source(review, ref)
+    drive = drive_of_base(review, ref)
     decades = next((n for n in range(1, MOST_DECADES + 1) if cost / 10**n < settings.shares), None)
-    if refs and decades is not None:
-        values = {r: quantity(parts[r].value.typ / 10**decades, "ohm") for r in refs}
+    if drive.resistors and decades is not None:
+        values = {r: quantity(parts[r].value.typ / 10**decades, "ohm") for r in drive.resistors}
         words = ", ".join(f"{r} {text}" for r, text in values.items())
         yield Remedy(f"lower resistance: {words}", [set_parameter(r, "value", text) for r, text in values.items()])
     other = partner_of(review, ref)
-    if other is not None and _has_base(parts[other]) and _source(review, other)[0] < ohm:
-        text = nearest(ohm - _source(review, other)[0], "E24")
-        edits = add_in_series(review.design, text, other, "B")
+    missing = drive.ohm - drive_of_base(review, other).ohm if other and _has_base(parts[other]) else 0.0
+    if other is not None and missing > LEAST_RESISTANCE:
+        ohm = nearest(missing, "E24")
+        edits = add_in_series(review.design, ohm, other, "B")
         after = _cost(review.edited(edits), [ref, other])
         if after is not None and after.worst.value < settings.shares:
-            yield Remedy(f"equal resistances: {quantity(text, 'ohm')} in series with the base of {other}", edits)
+            yield Remedy(f"equal resistances: {quantity(ohm, 'ohm')} in series with the base of {other}", edits)
     yield from _buffered(review, ref)
 
 

@@ -25,7 +25,9 @@ from rulecheck.api import (
     join_key,
 )
 
+from ._budget import over_budget
 from ._scaling import scalings
+from ._trims import short_trims
 from ._words import percent
 
 
@@ -33,7 +35,9 @@ class TransferLaw(Rule):
     """The output against the law it is asked to follow, in units, over range and temperature.
 
     Dimensions first: a law that is not in the unit of the output means nothing. Then the nominal error at every
-    condition of the requirement, the local exponent where the law is a power, and the travel of trims.
+    condition of the requirement, then with the spreads of all parts: by their squares (a fault), and with all at their
+    limits at once (a lesser one). The local exponent where the law is a power. Trims are set before anything is judged,
+    and must have the travel to null their requirement at the extremes of spread.
     """
 
     name = "transfer-law"
@@ -60,8 +64,14 @@ class TransferLaw(Rule):
             transfer = review.transfer[requirement.name]
             if not requirement.has_accuracy or not transfer.judged.any():
                 continue
-            found = list(_nominal(review, transfer)) or list(_exponents(review, settings, transfer))
-            yield from found
+            wrong = list(_nominal(review, transfer))
+            yield from wrong or _exponents(review, settings, transfer)
+            short = list(short_trims(review, requirement.name))
+            yield from short
+            if not wrong and not short:  # spreads about a wrong nominal, or that a trim does not reach, add nothing
+                yield from over_budget(
+                    review, review.budget[requirement.name], _at_work(review, review.operating_points)
+                )
 
 
 def _dimensions(review: Review, requirement: Requirement) -> Finding | None:

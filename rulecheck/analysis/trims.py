@@ -11,8 +11,8 @@ import numpy as np
 from ..devices.constants import Array
 from .operating_points import OperatingPoints
 from .sensitivity import Sensitivity, placing
-from .spreads import Deviation, of_supply
-from .transfer import trim_error
+from .spreads import Deviation, deviations, of_supply
+from .transfer import law_values, trim_error
 
 if TYPE_CHECKING:
     from ..design.model import Design
@@ -32,6 +32,8 @@ class _Answer:
 
     Attributes
     ----------
+    part : str
+        The potentiometer.
     own : Sensitivity
         Of the requirement that it adjusts, where it is trimmed.
     own_slope : float
@@ -42,6 +44,7 @@ class _Answer:
         Of the judged error in its position.
     """
 
+    part: str
     own: Sensitivity
     own_slope: float
     of_earlier: tuple[float, ...]
@@ -74,20 +77,24 @@ class Trims:
                 own = _where_trimmed(review, review.design.parts[ref].adjusts, positions)
                 earlier = tuple(float(own.of_position(other)[0]) for other in able)
                 slope = sensitivity.of_position(ref)
-                self._answers.append(_Answer(own, float(own.of_position(ref)[0]), earlier, slope))
+                self._answers.append(_Answer(ref, own, float(own.of_position(ref)[0]), earlier, slope))
                 able.append(ref)
 
     def following(self, deviation: Deviation) -> Array | float:
         """What the trims add to the slope of the judged error in a deviation."""
         total: Array | float = 0.0
-        turns: list[float] = []
-        if of_supply(self._design, deviation):
-            return total
-        for answer in self._answers:
-            left = answer.own.of(deviation)[0] + np.dot(answer.of_earlier, turns)
-            turns.append(-float(left) / answer.own_slope if answer.own_slope else 0.0)
-            total = total + answer.slope * turns[-1]
+        for answer, turn in zip(self._answers, self.turns(deviation).values(), strict=True):
+            total = total + answer.slope * turn
         return total
+
+    def turns(self, deviation: Deviation) -> dict[str, float]:
+        """Change of the position of each trim that can still be turned, for a deviation of one."""
+        turns: dict[str, float] = {}
+        for answer in self._answers:
+            left = answer.own.of(deviation)[0] + np.dot(answer.of_earlier, list(turns.values()))
+            follows = answer.own_slope and not of_supply(self._design, deviation)
+            turns[answer.part] = -float(left) / answer.own_slope if follows else 0.0
+        return turns
 
 
 def _where_trimmed(review: Review, name: str, positions: Mapping[str, float]) -> Sensitivity:
@@ -101,6 +108,70 @@ def _where_trimmed(review: Review, name: str, positions: Mapping[str, float]) ->
 
     trim_error(review.design, requirement, dict(positions), solver)
     return Sensitivity(requirement, found[0])
+
+
+@dataclass(frozen=True)
+class Travel:
+    """What a trim needs of its travel.
+
+    Attributes
+    ----------
+    part : str
+        The potentiometer.
+    position : float
+        Where it is set nominally.
+    needed : float
+        How far it turns to either side when all spreads are at the extremes that ask most of it.
+    low, high : float
+        Ends of the travel.
+    error : float
+        What the output may keep where it is trimmed, at these extremes [V].
+    """
+
+    part: str
+    position: float
+    needed: float
+    low: float
+    high: float
+    error: float
+
+    @property
+    def left(self) -> float:
+        """Travel that is left at the nearer end; negative where it does not suffice, 0 where none is left nominally."""
+        return min(self.position - self.low, self.high - self.position) - self.needed
+
+
+def travel(review: Review, name: str) -> tuple[Travel, ...]:
+    """Travel of the trims that adjust a requirement; slopes taken as constant, trims set before it following too.
+
+    Parameters
+    ----------
+    review : Review
+    name : str
+        Requirement with a law.
+    """
+    parts = review.design.parts
+    own = [r for r, p in parts.items() if p.kind == "potentiometer" and p.adjusts == name and r in review.typical]
+    own = [r for r in own if parts[r].position.min < parts[r].position.max]
+    if not own:
+        return ()
+    sensitivity = _where_trimmed(review, name, {r: review.typical[r] for r in own})
+    trims = Trims(review, sensitivity)
+    turns = [(d.half, trims.turns(d)) for d in deviations(review.design) if not of_supply(review.design, d)]
+    found = []
+    for ref in own:
+        position, spread = float(review.typical[ref]), parts[ref].position
+        needed = sum(half * abs(turn.get(ref, 0.0)) for half, turn in turns)
+        lacking = needed - min(position - spread.min, spread.max - position)
+        error = max(lacking, 0.0) * abs(float(sensitivity.of_position(ref)[0])) + _kept(sensitivity)
+        found.append(Travel(ref, position, needed, float(spread.min), float(spread.max), error))
+    return tuple(found)
+
+
+def _kept(sensitivity: Sensitivity) -> float:
+    """Error that the trims leave at nominal values, where they are set [V]."""
+    points, requirement = sensitivity.points, sensitivity.requirement
+    return abs(float(points.voltage(requirement.output)[0] - law_values(requirement, points)[0]))
 
 
 def trims_among(design: Design, parts: Iterable[str]) -> list[str]:

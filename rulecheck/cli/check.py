@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import datetime as dt
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import click
 
@@ -12,12 +13,15 @@ from rulecheck.cli.status import Status, status_of
 from rulecheck.cli.streams import ProgressBar, emit, width_and_color
 from rulecheck.findings import Report, Severity
 
+if TYPE_CHECKING:
+    from rulecheck.review.registry import Registry
+
 SEVERITIES = [severity.label for severity in sorted(Severity, reverse=True)]
 
 
 @click.command("check")
 @click.argument("paths", metavar="PATH...", nargs=-1, required=True, type=FILE)
-@form_option("text", "json")
+@form_option("text", "json", "sarif", "markdown")
 @click.option("--write", "file", type=FILE, metavar="FILE", help="Write the result to FILE, all of it or nothing.")
 @click.option("--only", multiple=True, metavar="RULE", help="Run this rule only; may be given again.")
 @click.option("--without", multiple=True, metavar="RULE", help="Leave out this rule; may be given again.")
@@ -49,15 +53,23 @@ def command(
             options = Options(on=on, only=only, without=without, progress=progress, sampling=sampling)
             designs.append(review_design(path, registry, options))
     report = Report(tuple(designs), on)
-    emit(_rendered(report, form, file), file)
+    emit(_rendered(report, registry, form, file), file)
     return status_of(report, Severity.parse(fail_on))
 
 
-def _rendered(report: Report, form: str, file: Path | None) -> str:
+def _rendered(report: Report, registry: Registry, form: str, file: Path | None) -> str:
     if form == "json":
         from rulecheck.report import json
 
         return json.render(report)
+    if form == "sarif":
+        from rulecheck.report import sarif
+
+        return sarif.render(report, registry)
+    if form == "markdown":
+        from rulecheck.report import markdown
+
+        return markdown.render(report)
     from rulecheck.report import text
 
     width, color = width_and_color(to_file=file is not None)

@@ -65,7 +65,7 @@ class Layout:
                 paragraph, max(self.width, LEAST_WIDTH), initial_indent=margin, subsequent_indent=margin,
                 break_long_words=False, break_on_hyphens=False,
             ) or [margin]  # fmt: skip
-        return [line.replace(_KEEP, " ") for line in lines]
+        return [let_go(line) for line in lines]
 
     def between(self, left: str, right: str) -> list[str]:
         """Two texts at the ends of a line, or of two lines where they do not fit one.
@@ -121,6 +121,16 @@ def kept_together(text: str) -> str:
     text : str
     """
     return text.replace(" ", _KEEP)
+
+
+def let_go(text: str) -> str:
+    """Text with the spaces that were kept together as plain ones.
+
+    Parameters
+    ----------
+    text : str
+    """
+    return text.replace(_KEEP, " ")
 
 
 def conditions_in_words(conditions: Mapping[str, float], units: Mapping[str, str]) -> str:

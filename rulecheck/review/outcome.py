@@ -14,10 +14,11 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True, slots=True)
 class ReviewedDesign(DesignReport):
-    """Outcome of a design, with the units of its conditions and the number of rules that ran."""
+    """Outcome of a design, with the units of its conditions, the number of rules that ran, and the file's text."""
 
     units: Mapping[str, str] = field(default_factory=dict)
     rules_run: int = 0
+    text: str = field(default="", repr=False)
 
 
 def condition_units(design: Design) -> dict[str, str]:

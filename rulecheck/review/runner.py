@@ -111,6 +111,7 @@ class DesignReview:
             not_run=self._judgement.not_run,
             units=condition_units(self.design),
             rules_run=len(self._judgement.ran),
+            text=self.design.text,
         )
 
     def after(self, remedy: Remedy) -> DesignReview:
