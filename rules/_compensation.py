@@ -58,7 +58,7 @@ def remedies(
         return []
     able = [a for a in amplifiers if not _is_follower(review.design, a)]
     resistors = _emitter_resistors(review, able)
-    for before, words in ([], ""), (resistors, "put an emitter resistor into the loop, and "):
+    for before, words in ([], ""), (resistors, "lower the loop gain by a resistor at the emitter, and "):
         if able and (before or not words):
             here = review.edited(before) if before else review
             found = _search(here, able, damping, margin, beside)

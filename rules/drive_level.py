@@ -171,10 +171,10 @@ def _stopped(
 ) -> Iterator[Remedy]:
     """A smaller potentiometer between end resistors, which keep it to the travel that is right at every condition."""
     part, values = review.design.parts[ref], points.conditions.values
-    rows = points.conditions.take(values[ref] == review.typical[ref])
+    rows = points.conditions.take(_ends(review, points.conditions) & (values[ref] == review.typical[ref]))
     tried = np.linspace(0.0, 1.0, STEPS)
     grid = {name: np.tile(x, STEPS) for name, x in rows.values.items()} | {ref: np.repeat(tried, rows.size)}
-    right: Mask = np.reshape(is_driven_right(Conditions(grid)), (STEPS, rows.size)).all(axis=1)
+    right: Mask = np.all(np.reshape(is_driven_right(Conditions(grid)), (STEPS, rows.size)), axis=1)
     wrong, ohm = tried[~right], part.value.typ
     low = ohm * max((float(p) for p in wrong if p < review.typical[ref]), default=0.0)
     high = ohm * (1 - min((float(p) for p in wrong if p > review.typical[ref]), default=1.0))
@@ -191,3 +191,12 @@ def _stopped(
             edits += [move(ref, pin, own), add_resistor(review.design, stop, (part.pins[pin], own), edits)]
             words.append(f"{quantity(stop, 'ohm')} at its {pin}")
     yield Remedy(f"stop the travel: {', '.join(words)}", edits)
+
+
+def _ends(review: Review, conditions: Conditions) -> Mask:
+    """Conditions at which every input is at an end: in between no current is larger or smaller."""
+    ends = [
+        (values[name] == values[name].min()) | (values[name] == values[name].max()) for name in review.design.inputs
+    ]
+    found: Mask = np.logical_and.reduce([np.ones(values["ambient"].shape, bool), *ends])
+    return found

@@ -22,6 +22,11 @@ SEVERITIES = [severity.label for severity in sorted(Severity, reverse=True)]
 @click.command("check")
 @click.argument("paths", metavar="PATH...", nargs=-1, required=True, type=FILE)
 @form_option("text", "json", "sarif", "markdown")
+@click.option(
+    "--changed", is_flag=True,
+    help="The PATHs are files that changed: pass over those that are no design, and review the designs below this "
+    "folder whose catalogue is among them.",
+)  # fmt: skip
 @click.option("--write", "file", type=FILE, metavar="FILE", help="Write the result to FILE, all of it or nothing.")
 @click.option("--only", multiple=True, metavar="RULE", help="Run this rule only; may be given again.")
 @click.option("--without", multiple=True, metavar="RULE", help="Leave out this rule; may be given again.")
@@ -32,22 +37,22 @@ SEVERITIES = [severity.label for severity in sorted(Severity, reverse=True)]
 @samples_options
 @on_option
 def command(
-    paths: tuple[Path, ...], form: str, file: Path | None, only: tuple[str, ...], without: tuple[str, ...],
-    fail_on: str, samples: int | None, seed: int, on: dt.date,
+    paths: tuple[Path, ...], form: str, changed: bool, file: Path | None, only: tuple[str, ...],
+    without: tuple[str, ...], fail_on: str, samples: int | None, seed: int, on: dt.date,
 ) -> Status:  # fmt: skip
     """Review design files and print findings with evidence and tried remedies.
 
     PATH is a design file, or a folder that is searched for them.
     """
     from rulecheck.analysis.samples import Sampling
-    from rulecheck.cli.paths import design_files
+    from rulecheck.cli.paths import changed_designs, design_files
     from rulecheck.review.registry import installed_registry
     from rulecheck.review.runner import Options, review_design
 
     registry = installed_registry()
     registry.check_names((*only, *without))
     designs = []
-    for path in design_files(paths):
+    for path in changed_designs(paths) if changed else design_files(paths):
         with ProgressBar(str(path)) as progress:
             sampling = None if samples is None else Sampling(samples, seed, progress)
             options = Options(on=on, only=only, without=without, progress=progress, sampling=sampling)

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import difflib
 import itertools
-import os
 import re
 from bisect import bisect_right
 from collections.abc import Iterator, Sequence
@@ -52,8 +51,8 @@ def replacements(old: str, new: str) -> list[Replacement]:
         Without byte-order marks.
     """
     before, after = _lines(old), _lines(new)
-    first = len(os.path.commonprefix([before, after]))
-    last = len(os.path.commonprefix([before[first:][::-1], after[first:][::-1]]))
+    first = _shared(before, after)
+    last = _shared(before[first:][::-1], after[first:][::-1])
     middle, fresh = before[first : len(before) - last], after[first : len(after) - last]
     offsets = list(itertools.accumulate(map(len, before), initial=0))[first:]
     matcher = difflib.SequenceMatcher(None, middle, fresh, autojunk=False)
@@ -63,6 +62,12 @@ def replacements(old: str, new: str) -> list[Replacement]:
         if tag != "equal"
         for i, was, becomes in _pieces(i1, middle[i1:i2], fresh[j1:j2])
     ]
+
+
+def _shared(one: Sequence[str], other: Sequence[str]) -> int:
+    """How many lines or characters two texts begin with alike."""
+    pairs = zip(one, other, strict=False)
+    return next((i for i, (a, b) in enumerate(pairs) if a != b), min(len(one), len(other)))
 
 
 def _lines(text: str) -> list[str]:
@@ -80,6 +85,6 @@ def _pieces(first: int, before: Sequence[str], after: Sequence[str]) -> Iterator
 
 def _trimmed(start: int, before: str, after: str) -> Replacement:
     """A replacement without the characters that both texts begin or end with."""
-    head = len(os.path.commonprefix([before, after]))
-    tail = len(os.path.commonprefix([before[head:][::-1], after[head:][::-1]]))
+    head = _shared(before, after)
+    tail = _shared(before[head:][::-1], after[head:][::-1])
     return Replacement(start + head, start + len(before) - tail, after[head : len(after) - tail])

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 from urllib.parse import quote
 
 from rulecheck.errors import EditError, Problem
-from rulecheck.findings import Concession, DesignReport, Failure, Finding, Location, NotRun, Remedy, Report, Severity
+from rulecheck.findings import Concession, DesignReport, Failure, Finding, Location, NotRun, Remedy, Report
 from rulecheck.report.json import dump, finding_object, tool
 from rulecheck.report.layout import let_go
 from rulecheck.report.remedies_text import mark
@@ -93,7 +93,7 @@ def _not_run(entry: NotRun, design: DesignReport, indices: Mapping[str, int]) ->
 
 def _notification(kind: str, text: str, level: str, place: Object) -> Object:
     descriptor = {"id": kind, "index": list(NOTIFICATIONS).index(kind)}
-    return {"descriptor": descriptor, "level": level, "message": {"text": text}, "locations": [place]}
+    return {"descriptor": descriptor, "level": level, "message": _words(text), "locations": [place]}
 
 
 def _associated(rule: str, indices: Mapping[str, int]) -> Object:
@@ -134,7 +134,7 @@ def _result(finding: Finding, design: DesignReport, indices: Mapping[str, int]) 
         "ruleId": finding.rule,
         "ruleIndex": indices.get(finding.rule, -1),
         "level": LEVELS[severity_of(finding)],
-        "message": {"text": _message(finding, design)},
+        "message": _message(finding, design),
         "locations": [_location(finding.location) if finding.location else _physical(design.file)],
         "partialFingerprints": {FINGERPRINT: finding.id},
         # a run that suppresses anything says of every result whether it is
@@ -145,9 +145,14 @@ def _result(finding: Finding, design: DesignReport, indices: Mapping[str, int]) 
     return result | ({"fixes": fixes} if fixes else {})
 
 
-def _message(finding: Finding, design: DesignReport) -> str:
+def _message(finding: Finding, design: DesignReport) -> Object:
     lines = [finding.message, *(f"{label}: {words}" for label, words in details(finding, units_of(design)))]
-    return let_go("\n".join(lines))
+    return _words(let_go("\n".join(lines)))
+
+
+def _words(text: str) -> Object:
+    """A message: braces, which stand for arguments, doubled; and no name in it taken for a link."""
+    return {"text": text.replace("{", "{{").replace("}", "}}").replace("](", "\\](")}
 
 
 def _location(location: Location) -> Object:
@@ -170,7 +175,7 @@ def _fixes(finding: Finding, design: DesignReport) -> Iterator[Object]:
             if changes:
                 title = f"{remedy.title} [{mark(remedy)}]"
                 change = {"artifactLocation": artifact_location(design.file), "replacements": changes}
-                yield {"description": {"text": title}, "artifactChanges": [change]}
+                yield {"description": _words(title), "artifactChanges": [change]}
 
 
 def _changes(remedy: Remedy, design: ReviewedDesign) -> list[Object]:

@@ -5,8 +5,8 @@ from pathlib import Path
 import pytest
 from rulecheck_rules.transfer_law import TransferLaw
 
-from rulecheck.api import Review, Severity, Set
-from rulecheck.design.load import load_text
+from rulecheck.api import Review, Set, Severity
+from rulecheck.design.load import load, load_text
 from rulecheck.testing import assert_clean, assert_finds, findings_of, mended
 
 EXAMPLES = Path(__file__).parents[2] / "example_designs" / "sound"
@@ -14,8 +14,8 @@ LOOSE = {
     "log_ratio": ('value = "16.9 kohm", tolerance = "0.1 %"', 'value = "16.9 kohm", tolerance = "5 %"'),
     "expander": ('value = "499 kohm", tolerance = "0.1 %"', 'value = "499 kohm", tolerance = "5 %"'),
 }
-# 3 mV at worst, 1.9 mV with the root of the squares: between them
-BETWEEN = ('accuracy = { reading = "1 %", absolute = "8 mV" }', 'accuracy = { absolute = "2.7 mV" }')
+# between what the squares and the magnitudes of its spreads make, with the nominal error
+BETWEEN = ('accuracy = { reading = "1 %", absolute = "8 mV" }', 'accuracy = { absolute = "4 mV" }')
 
 
 def example(name, *changes):
@@ -62,7 +62,7 @@ def test_over_the_limit_only_at_worst_is_minor():
     finding = assert_finds(TransferLaw, example("level_meter", BETWEEN))
     total, error, rss, worst = (e.value for e in finding.evidence)
     assert finding.severity is Severity.MINOR
-    assert error + rss < 2.7e-3 < total
+    assert error + rss < 4e-3 < total
     assert total == pytest.approx(error + worst)
 
 
@@ -81,15 +81,14 @@ def test_the_tolerance_that_would_do(board, cures, name, part):
     assert 0.3 < worst[budget.worst] <= 1
 
 
-def test_an_amplifier_that_spends_most_is_replaced(board, cures):
+def test_an_amplifier_that_spends_most_is_replaced(cures):
     """A bias current of a tenth of the signal is most of the budget, and an amplifier with less takes it away."""
-    noisy = ('model = "rowan-electrometer", package = "U1"', 'model = "larch-zero-drift", package = "U1"')
-    design = example("absorbance", noisy)
-    (finding,) = [f for f in findings_of(design, TransferLaw) if f.severity is Severity.MAJOR]
+    design = load(EXAMPLES.parent / "faulty" / "starved_sample.toml")
+    finding = assert_finds(TransferLaw, design)
+    assert "spent by parts.U1.bias_current" in finding.consequence
     after = cures(design, TransferLaw)
-    if "bias_current" in finding.consequence:
-        assert any("for U1" in title for title in after), after
-        assert not any(after.values()), after
+    assert any("for U1 (bias current)" in title for title in after), after
+    assert not any(after.values()), after
 
 
 def test_a_trim_with_travel_is_clean():
