@@ -6,6 +6,7 @@ Such a fault makes most analyses meaningless, so the rules that rest on them do 
 from __future__ import annotations
 
 import difflib
+import itertools
 from collections.abc import Callable, Iterable, Iterator
 from typing import Annotated
 
@@ -217,10 +218,15 @@ def _is_shorted(part: Part) -> bool:
     return len(part.pins) > 1 and len(set(part.pins.values())) == 1
 
 
+def _undoubled(name: str) -> str:
+    """A name with every repeated character once."""
+    return "".join(c for c, _ in itertools.groupby(name))
+
+
 def _is_slip(a: str, b: str) -> bool:
     """Whether two names look alike; those that only count or letter in another way (S1 and S2) do not."""
     a, b = a.lower(), b.lower()
-    if a.translate(LOOK_ALIKE) == b.translate(LOOK_ALIKE):
+    if a.translate(LOOK_ALIKE) == b.translate(LOOK_ALIKE) or _undoubled(a) == _undoubled(b):
         return True
     numbered = [c for c in a if c.isdigit()] != [c for c in b if c.isdigit()]
     lettered = len(a) == len(b) and a[:-1] == b[:-1]

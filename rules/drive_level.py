@@ -195,8 +195,7 @@ def _stopped(
 
 def _ends(review: Review, conditions: Conditions) -> Mask:
     """Conditions at which every input is at an end: in between no current is larger or smaller."""
-    ends = [
-        (values[name] == values[name].min()) | (values[name] == values[name].max()) for name in review.design.inputs
-    ]
-    found: Mask = np.logical_and.reduce([np.ones(values["ambient"].shape, bool), *ends])
+    inputs = [conditions.values[name] for name in review.design.inputs]
+    ends = [(x == x.min()) | (x == x.max()) for x in inputs]
+    found: Mask = np.logical_and.reduce([np.ones(conditions.size, bool), *ends])
     return found

@@ -108,17 +108,16 @@ def _nominal(review: Review, transfer: Transfer) -> Iterable[Finding]:
         consequence=f"{requirement.output} reads {format_quantity(transfer.output[at], 'V')} instead of "
                     f"{format_quantity(law, 'V')}",
         evidence=[Evidence("nominal error", float(abs(error)), "V", float(limit), "<=", over=np.abs(transfer.error))],
-        remedies=scalings(review, lambda p: _shares(review, transfer, p, transfer.law),
-                          lambda p: _shares(review, transfer, p)),
+        remedies=scalings(review, partial(_shares, review, transfer)),
         at=join_key(("requirements", requirement.name)),
     )  # fmt: skip
 
 
-def _shares(review: Review, transfer: Transfer, points: OperatingPoints, law: np.ndarray | float = 0.0) -> np.ndarray:
-    """Output less law in parts of the allowed error, where it is judged and above nothing."""
+def _shares(review: Review, transfer: Transfer, points: OperatingPoints) -> np.ndarray:
+    """Output less law in parts of the allowed error, NaN where it is not judged."""
     judged = transfer.judged & _at_work(review, points) & (transfer.allowed > 0)
-    output = points.voltage(transfer.requirement.output)
-    return np.where(judged, (output - law) / np.where(judged, transfer.allowed, 1), np.nan)
+    error = points.voltage(transfer.requirement.output) - transfer.law
+    return np.where(judged, error / np.where(judged, transfer.allowed, 1), np.nan)
 
 
 def _at_work(review: Review, points: OperatingPoints) -> np.ndarray:
@@ -151,7 +150,7 @@ def _exponents(review: Review, settings: TransferLaw.Settings, transfer: Transfe
             nets=[requirement.output], subject=f"{requirement.name} exponent {name}", severity=Severity.MINOR,
             conditions=worst.conditions, consequence=f"{requirement.output} bends away from its law with {name}",
             evidence=[Evidence("exponent error", worst.value, "1", settings.exponent, "<=", over=off)],
-            remedies=scalings(review, partial(_tilted, review, transfer, large, name, settings.exponent * abs(power))),
+            remedies=scalings(review, partial(_tilted, review, transfer, large, name, settings.exponent * abs(power) / 2)),
             at=join_key(("requirements", requirement.name)),
         )  # fmt: skip
 
@@ -163,4 +162,4 @@ def _tilted(
     x = np.log(np.abs(transfer.conditions.values[name][judged]))
     error = np.log(np.abs(points.voltage(transfer.requirement.output)[judged] / transfer.law[judged]))
     x = x - x.mean()
-    return np.append(_shares(review, transfer, points, transfer.law), x @ error / (x @ x) / limit)
+    return np.append(_shares(review, transfer, points), x @ error / (x @ x) / limit)

@@ -17,6 +17,7 @@ from rulecheck.errors import AnalysisError, PluginError, RulecheckError
 #: Commands with the line that help shows, so that help imports none of them.
 COMMANDS = {
     "check": "Review design files and print findings.",
+    "browse": "Review design files on the screen, and apply remedies there.",
     "fix": "List remedies that were tried, and apply them.",
     "figures": "Print the numbers: operating points, loops, temperatures, transfer.",
     "compare": "Show what changed between two revisions: values, findings, figures.",

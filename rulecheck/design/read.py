@@ -6,6 +6,7 @@ errors are collected, and no design is built.
 
 from __future__ import annotations
 
+import difflib
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Annotated, Any, TypeVar
@@ -167,7 +168,9 @@ def chosen(
     words = allowed or list(tables)
     expected = f"one of {', '.join(map(repr, words))}"
     if key not in entry:
-        problems.add([*path, key], f"{key!r} is missing; {expected} is expected")
+        near = difflib.get_close_matches(key, entry, n=1)
+        hint = f"is {near[0]!r} meant to be {key!r}?" if near else ""
+        problems.add([*path, near[0] if near else key], f"{key!r} is missing; {expected} is expected", hint)
         return None
     word = entry[key]
     if isinstance(word, str) and word in tables:

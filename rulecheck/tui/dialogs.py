@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Iterator, Sequence
+from typing import ClassVar
 
 from textual.app import ComposeResult
-from textual.binding import Binding
+from textual.binding import Binding, BindingType
 from textual.containers import VerticalScroll
 from textual.content import Content
 from textual.screen import ModalScreen
@@ -14,6 +15,7 @@ from textual.widgets import Static
 from rulecheck.findings import Finding
 from rulecheck.tui.document import Change
 from rulecheck.tui.grouping import sign_of, style_of
+from rulecheck.tui.keys import DIALOG_KEYS
 
 KEYS = {
     "question_mark": "?", "slash": "/", "escape": "Esc", "up": "↑", "down": "↓", "enter": "Enter", "f5": "F5",
@@ -31,7 +33,7 @@ class Dialog(ModalScreen[None]):
     """
 
     CSS_PATH = "dialogs.tcss"
-    BINDINGS = [Binding("escape,enter,q", "dismiss", "Close")]
+    BINDINGS: ClassVar[list[BindingType]] = [*DIALOG_KEYS]
 
     def __init__(self, title: str, content: Content) -> None:
         super().__init__()

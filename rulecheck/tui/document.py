@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from rulecheck.review.judging import Progress
     from rulecheck.review.registry import Registry
     from rulecheck.review.runner import DesignReview
+    from rulecheck.tui.evidence_curve import Grids
 
 Stamp = tuple[tuple[int, int] | None, ...]
 
@@ -34,6 +35,8 @@ class Reading:
         None where the file cannot be used.
     numbers : Review, optional
         The analyses of the design.
+    grids : Grids, optional
+        Conditions of the figures; None where the circuit is too broken for any.
     cache : dict
         Solutions that reviews of nearly equal designs share.
     stamp : Stamp
@@ -48,6 +51,7 @@ class Reading:
     report: ReviewedDesign
     review: DesignReview | None = None
     numbers: Review | None = None
+    grids: Grids | None = None
     cache: dict[Any, Any] = field(default_factory=dict, repr=False)
     stamp: Stamp = ()
     watched: tuple[Path, ...] = ()
@@ -110,7 +114,7 @@ class Document:
         from rulecheck.design.load import load
         from rulecheck.review.runner import DesignReview, Options
 
-        watched = (self.path,)
+        watched: tuple[Path, ...] = (self.path,)
         stamp = stamp_of(watched)
         cache: dict[Any, Any] = {}
         try:
@@ -136,7 +140,8 @@ class Document:
         from rulecheck.analysis.review import Review
 
         numbers, text = Review(review.design, cache=cache), review.design.text
-        first = Reading(text, review.report(try_remedies=False), review, numbers, cache, stamp, watched)
+        report = review.report(try_remedies=False)
+        first = Reading(text, report, review, numbers, grids_of(numbers), cache, stamp, watched)
         shown(first)
         return replace(first, report=review.report(), tried=True)
 
@@ -191,6 +196,16 @@ class Document:
     def is_stale(self) -> bool:
         """Whether the file or one of its catalogues is not as it was read."""
         return self.reading is not None and stamp_of(self.reading.watched) != self.reading.stamp
+
+
+def grids_of(review: Review) -> Grids | None:
+    """Conditions of the figures of a review, or None where the circuit has no solution to start from."""
+    from rulecheck.tui.evidence_curve import Grids
+
+    try:
+        return Grids.of(review)
+    except Exception:  # noqa: BLE001 - the report tells of analyses that fail; here there is only nothing to draw
+        return None
 
 
 def changed(title: str, before: Reading, after: Reading) -> Change:

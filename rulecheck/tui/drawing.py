@@ -78,9 +78,7 @@ def _rows(diagram: Diagram, canvas: Canvas, overlay: Canvas, across: Axis, up: A
         mark = canvas.cell(x, y)
     rows = []
     for number, (curve, limit) in enumerate(zip(canvas.rows(), overlay.rows(), strict=True)):
-        cells = [
-            (_joined(a, b), "$strong" if a != " " else "$minor") for a, b in zip(curve, limit, strict=True)
-        ]
+        cells = [(_joined(a, b), "$strong" if a != " " else "$minor") for a, b in zip(curve, limit, strict=True)]
         if mark is not None and mark[0] == number:
             cells[mark[1]] = (WORST, "$major bold")
         rows.append(Content.assemble(*cells))
@@ -96,7 +94,7 @@ def _joined(one: str, other: str) -> str:
 def _foot(axis: Axis, unit: str, margin: int, width: int) -> list[str]:
     """The abscissa with its ticks, and their words below."""
     rule, words, free = ["─"] * width, [" "] * (margin + 1 + width), 0
-    for tick in axis.ticks(max(2, width // 12)):
+    for tick in sorted(axis.ticks(max(2, width // 12)), key=lambda tick: float(axis.place(np.array(tick)))):
         at = round(float(axis.place(np.array(tick))) * (width - 1))
         rule[at] = "┬"
         text = quantity(tick, unit)

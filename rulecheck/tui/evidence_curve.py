@@ -47,19 +47,34 @@ class Scenario:
     value: float
 
 
-def conditions_of(review: Review, finding: Finding, evidence: Evidence) -> Conditions | None:
-    """The conditions that a figure is over, or None where they are none of those of the review."""
-    from rulecheck.analysis.conditions import end_conditions
+@dataclass(frozen=True)
+class Grids:
+    """The conditions that rules give figures over.
 
-    if evidence.over is None:
-        return None
-    count = int(np.size(evidence.over))
-    if finding.scenario:
-        return review.faults.conditions if review.faults.conditions.size == count else None
-    if review.conditions.size == count:
-        return review.conditions
-    ends = end_conditions(review.design, review.typical)
-    return ends if ends.size == count else None
+    Attributes
+    ----------
+    review, faults, ends : Conditions
+        The review grid, the fault scenarios, the ends of the inputs' ranges.
+    """
+
+    review: Conditions
+    faults: Conditions
+    ends: Conditions
+
+    @classmethod
+    def of(cls, review: Review) -> Grids:
+        """The conditions of a review."""
+        from rulecheck.analysis.conditions import end_conditions, fault_scenarios
+
+        design, typical = review.design, review.typical
+        return cls(review.conditions, fault_scenarios(design, typical), end_conditions(design, typical))
+
+    def under(self, finding: Finding, evidence: Evidence) -> Conditions | None:
+        """The conditions that a figure is over, or None where they are none of these."""
+        if evidence.over is None:
+            return None
+        candidates = (self.faults,) if finding.scenario else (self.review, self.ends)
+        return next((grid for grid in candidates if grid.size == np.size(evidence.over)), None)
 
 
 def worst_index(finding: Finding, evidence: Evidence, conditions: Conditions) -> int:

@@ -12,7 +12,7 @@ from rulecheck.findings import Evidence, Finding
 from rulecheck.report.layout import conditions_in_words, quantity
 from rulecheck.tui.document import Reading
 from rulecheck.tui.drawing import WORST, Diagram, bar, draw
-from rulecheck.tui.evidence_curve import Curve, conditions_of, curves, scenarios
+from rulecheck.tui.evidence_curve import Curve, Scenario, curves, scenarios
 
 
 class PlotPage(Vertical):
@@ -67,15 +67,16 @@ class PlotPage(Vertical):
     def _parts(self) -> tuple[Content, Content, Content]:
         blank = Content("")
         if self._shown is None:
-            return Content.styled("No finding is chosen.", "$quiet"), blank, blank
+            return blank, blank, blank
         reading, finding = self._shown
-        review = reading.numbers
-        drawable = [] if review is None else [
+        grids = reading.grids
+        drawable = [] if grids is None else [
             (piece, conditions) for piece in finding.evidence
-            if (conditions := conditions_of(review, finding, piece)) is not None
+            if (conditions := grids.under(finding, piece)) is not None
         ]  # fmt: skip
         if not drawable:
-            return Content.styled("The evidence of this finding is no figure over the conditions.", "$quiet"), blank, blank
+            words = "The evidence of this finding is no figure over the conditions."
+            return Content.styled(words, "$quiet"), blank, blank
         piece, conditions = drawable[self._piece % len(drawable)]
         head = _head(piece, self._piece % len(drawable) + 1, len(drawable))
         if conditions.scenario is not None:
@@ -119,7 +120,7 @@ def _foot(reading: Reading, piece: Evidence, curve: Curve, count: int) -> Conten
     )  # fmt: skip
 
 
-def _bars(piece: Evidence, found: list, width: int, height: int) -> Content:
+def _bars(piece: Evidence, found: list[Scenario], width: int, height: int) -> Content:
     """The worst fault scenarios as bars."""
     most = max((abs(s.value) for s in found), default=0.0) or 1.0
     most = max(most, abs(piece.limit or 0.0))

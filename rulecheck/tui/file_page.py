@@ -17,6 +17,7 @@ class FilePage(Page):
     """The design file, the line of the finding marked."""
 
     title = "4 File"
+    _row = 0
 
     def show(self, reading: Reading, finding: Finding | None) -> None:
         """Show the file at the line of a finding, or at the first error where it has any."""
@@ -27,7 +28,19 @@ class FilePage(Page):
         shown = enumerate(lines[start : line + AROUND], start + 1)
         self.write(Content("\n").join(_line(number, text, digits, line) for number, text in shown))
         self.border_subtitle = f"line {line}"
-        self.call_after_refresh(self.scroll_to, 0, line - 1 - start - LINES_ABOVE, animate=False)
+        self._row = line - 1 - start
+        self._go()
+
+    def on_show(self) -> None:
+        """Go to the line; a page that is hidden cannot be scrolled."""
+        self._go()
+
+    def on_resize(self) -> None:
+        """Keep the line in sight."""
+        self._go()
+
+    def _go(self) -> None:
+        self.call_after_refresh(self.scroll_to, 0, max(self._row - LINES_ABOVE, 0), animate=False)
 
 
 def line_of(reading: Reading, finding: Finding | None) -> int:

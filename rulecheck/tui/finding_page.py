@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 
 from textual.content import Content
 
@@ -53,7 +53,7 @@ def _labelled(name: str, text: str) -> Content:
     return Content.assemble((f"{name}: ", "$strong bold"), text)
 
 
-def _table(evidence: tuple[Evidence, ...] | list[Evidence]) -> Iterator[Content]:
+def _table(evidence: Sequence[Evidence]) -> Iterator[Content]:
     rows = [("Figure", "value", "sound is", "")]
     for piece in evidence:
         limit = "" if piece.limit is None else f"{RELATIONS[piece.relation]} {quantity(piece.limit, piece.unit)}"

@@ -32,7 +32,7 @@ class Page(ScrollableContainer):
         reading : Reading
         finding : Finding, optional
         """
-        self.write(self.content(reading, finding) if finding else Content.styled("No finding is chosen.", "$quiet"))
+        self.write(self.content(reading, finding) if finding else nothing(reading))
         self.scroll_to(0, 0, animate=False)
 
     def write(self, content: Content) -> None:
@@ -42,3 +42,10 @@ class Page(ScrollableContainer):
     def content(self, reading: Reading, finding: Finding) -> Content:
         """The text about a finding."""
         raise NotImplementedError
+
+
+def nothing(reading: Reading) -> Content:
+    """What a page says where no finding is chosen."""
+    if reading.report.outcome == "clean":
+        return Content.styled(f"✔ Nothing found by {reading.report.rules_run} rules.", "$proven")
+    return Content.styled("No finding is chosen.", "$quiet")

@@ -329,3 +329,13 @@ def test_spare_parts_are_exempt():
 def test_remedies_cure(board, cures, name, changes, title):
     """The one edit mends the board and brings nothing new, by all rules."""
     assert cures(board(name, *changes), Connectivity) == {title: []}
+
+
+def test_a_doubled_letter_is_a_slip(board):
+    """A net written with a character too many is moved to the one that was meant, and the design is whole again."""
+    design = board("gas_log")
+    net = next(n for n in design.nets if design.nets[n].role is None)
+    doubled = net + net[-1]
+    text = design.text.replace(f'"{net}"', f'"{doubled}"', 1)
+    found = assert_finds("connectivity", design_from(text))
+    assert any(Move(edit.key, net) == edit for remedy in found.remedies for edit in remedy.edits)

@@ -1,0 +1,328 @@
+"""The screen of the review: the list of findings, and beside it all about the chosen one."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import ClassVar
+
+from textual.app import ComposeResult
+from textual.binding import BindingType
+from textual.containers import Container, Horizontal, Vertical
+from textual.content import Content
+from textual.widgets import Footer, Input, OptionList, Static
+
+from rulecheck.findings import Finding
+from rulecheck.tui import editor
+from rulecheck.tui.circuit_page import CircuitPage
+from rulecheck.tui.dialogs import Dialog, change_in_words, key_list
+from rulecheck.tui.document import Document, Reading
+from rulecheck.tui.errors_view import problems_in_words
+from rulecheck.tui.evidence_plot import PlotPage
+from rulecheck.tui.file_page import FilePage, line_of
+from rulecheck.tui.finding_list import FindingList
+from rulecheck.tui.finding_page import FindingPage
+from rulecheck.tui.grouping import ORDERS, counted, matching
+from rulecheck.tui.jobs import Failed, Progressed, Read, Working
+from rulecheck.tui.keys import DIALOG_KEYS, MOVING, NUMBERS_KEYS, PAGES, REVIEW_KEYS
+from rulecheck.tui.numbers_screen import NumbersScreen
+from rulecheck.tui.remedies_page import RemediesPage
+
+BAR = 12
+#: Columns from which all pages are shown at once.
+WIDE = 120
+
+
+class ReviewScreen(Working):
+    """Findings of one design at a time.
+
+    Parameters
+    ----------
+    documents : sequence of Document
+    watch : float
+        Seconds between looks at the files on disk.
+    """
+
+    CSS_PATH = "review_screen.tcss"
+    HORIZONTAL_BREAKPOINTS: ClassVar[list[tuple[int, str]] | None] = [(0, "-narrow"), (WIDE, "-wide")]
+    BINDINGS: ClassVar[list[BindingType]] = [*REVIEW_KEYS]
+
+    def __init__(self, documents: Sequence[Document], watch: float) -> None:
+        super().__init__()
+        self._documents = documents
+        self._watch = watch
+        self._at = 0
+        self._order = 0
+        self._busy = ""
+
+    @property
+    def document(self) -> Document:
+        """The document on the screen."""
+        return self._documents[self._at]
+
+    @property
+    def finding(self) -> Finding | None:
+        """The chosen finding."""
+        return self.query_one(FindingList).chosen
+
+    def compose(self) -> ComposeResult:
+        """Head, list and pages, foot."""
+        yield Static(id="head")
+        with Horizontal(id="body"):
+            with Vertical(id="side"):
+                yield Input(placeholder="words, Enter to end", id="search")
+                yield FindingList()
+            with Vertical(id="main"):
+                yield Static(id="tabs")
+                with Container(id="pages"):
+                    yield FindingPage(id="finding")
+                    yield PlotPage()
+                    yield RemediesPage()
+                    yield FilePage(id="file")
+                    yield CircuitPage(id="circuit")
+        yield Static(id="state")
+        yield Footer(show_command_palette=False, compact=True)
+
+    def on_mount(self) -> None:
+        """Start the first review, and watch the file."""
+        self.query_one(FindingList).focus()
+        self.action_page("finding")
+        self.set_interval(self._watch, self._look_at_disk)
+        self.action_review()
+
+    # -- what the work tells
+
+    def on_progressed(self, message: Progressed) -> None:
+        """Show how far the review is."""
+        if message.document is self.document:
+            full = BAR * message.done // max(message.total, 1)
+            bar = "■" * full + "·" * (BAR - full)
+            self._say(f"{bar} {message.done + 1} of {message.total}  {message.what}", busy=True)
+
+    def on_read(self, message: Read) -> None:
+        """Show what the review found."""
+        message.document.reading = message.reading
+        if message.document is not self.document:
+            return
+        self._show_reading(message.reading)
+        if message.final:
+            self._say(_outcome(message.reading))
+        if message.change is not None:
+            self.app.push_screen(Dialog("What it did", change_in_words(message.change)))
+
+    def on_failed(self, message: Failed) -> None:
+        """Say why there is no outcome."""
+        if message.document is self.document:
+            self._say(message.words)
+            self.notify(message.words, severity="error", title=str(message.document.path.name), markup=False)
+
+    # -- what is shown
+
+    def _say(self, words: str, *, busy: bool = False) -> None:
+        self._busy = words if busy else ""
+        self.query_one("#state", Static).update(Content.styled(words, "$quiet" if busy else "$ink"))
+
+    def _show_reading(self, reading: Reading | None) -> None:
+        self._show_head(reading)
+        broken = reading is not None and bool(reading.report.errors)
+        self.set_class(broken, "-broken")
+        self._fill()
+        if broken and reading is not None:
+            self.action_page("finding")
+            self.query_one(FindingPage).write(problems_in_words(reading.report.errors))
+            self.query_one(FilePage).show(reading, None)
+
+    def _show_head(self, reading: Reading | None) -> None:
+        design = self.document.path.name
+        if len(self._documents) > 1:
+            design += f" ({self._at + 1} of {len(self._documents)})"
+        report = reading.report if reading else None
+        words = "" if report is None else "✖ cannot be used" if report.errors else counted(report.findings)
+        title = report.title if report else ""
+        self.query_one("#head", Static).update(
+            Content.assemble((design, "$strong bold"), "  ", (words, "bold"), "  ", (title, "$quiet"))
+        )
+
+    def _fill(self) -> None:
+        reading = self.document.reading
+        words = self.query_one("#search", Input).value
+        findings = matching(reading.report.findings, words) if reading else []
+        order = ORDERS[self._order]
+        side = self.query_one("#side")
+        side.border_title = f"by {order}" + (f": {words}" if words else "")
+        side.border_subtitle = f"{len(findings)} of {len(reading.report.findings)}" if words and reading else ""
+        self.query_one(FindingList).fill(findings, order)
+        self._show_finding()
+
+    def _show_finding(self) -> None:
+        reading, finding = self.document.reading, self.finding
+        if reading is None or reading.report.errors:
+            return
+        self.query_one(FindingPage).show(reading, finding)
+        self.query_one(PlotPage).show(reading, finding)
+        self.query_one(RemediesPage).show(reading, finding)
+        self.query_one(FilePage).show(reading, finding)
+        self.query_one(CircuitPage).show(reading, finding)
+
+    def on_option_list_option_highlighted(self, event: OptionList.OptionHighlighted) -> None:
+        """Another finding was chosen."""
+        self._show_finding()
+
+    def on_input_changed(self, event: Input.Changed) -> None:
+        """Other words are searched for."""
+        self._fill()
+
+    def on_input_submitted(self, event: Input.Submitted) -> None:
+        """From the words to the list."""
+        self.query_one("#search", Input).display = bool(event.value)
+        self.query_one(FindingList).focus()
+
+    # -- what the keys do
+
+    def action_page(self, name: str) -> None:
+        """Show a page; where all are shown, go to it."""
+        for page in PAGES:
+            self.query_one(f"#{page}").set_class(page == name, "-shown")
+        tabs = [
+            Content.styled(f" {number} {page.capitalize()} ", "$ink on $chosen bold" if page == name else "$quiet")
+            .stylize(f"@click=screen.page('{page}')")
+            for number, page in enumerate(PAGES, 1)
+        ]  # fmt: skip
+        self.query_one("#tabs", Static).update(Content("").join(tabs))
+        if self.has_class("-wide"):
+            self.query_one(f"#{name}").focus()
+
+    def action_widen(self) -> None:
+        """Hide or show the list."""
+        self.toggle_class("-full")
+
+    def action_regroup(self) -> None:
+        """Group by the next order."""
+        self._order = (self._order + 1) % len(ORDERS)
+        self._fill()
+
+    def action_search(self) -> None:
+        """Type words to search for."""
+        self.remove_class("-full")
+        search = self.query_one("#search", Input)
+        search.display = True
+        search.focus()
+
+    def action_leave_search(self) -> None:
+        """Show all findings."""
+        search = self.query_one("#search", Input)
+        search.value = ""
+        search.display = False
+        self.query_one(FindingList).focus()
+
+    def action_next_piece(self) -> None:
+        """Plot the next piece of evidence."""
+        self.query_one(PlotPage).next_piece()
+
+    def action_next_abscissa(self) -> None:
+        """Plot over the next quantity."""
+        self.query_one(PlotPage).next_abscissa()
+
+    def action_next_remedy(self) -> None:
+        """Choose the next remedy."""
+        self.query_one(RemediesPage).choose_next()
+
+    def action_apply(self) -> None:
+        """Apply the chosen remedy."""
+        reading, finding, remedy = self.document.reading, self.finding, self.query_one(RemediesPage).chosen
+        document = self.document
+        if reading is None or finding is None or remedy is None:
+            self.notify("This finding has no remedy.", severity="warning")
+        elif not remedy.proven:
+            words = "is not proven" if reading.tried else "is still being tried"
+            self.notify(f"Remedy {remedy.id} {words}; only proven ones are applied.", severity="warning")
+        else:
+            self._say(f"applying {remedy.id}: {remedy.title}", busy=True)
+            self.work_on(document, lambda _, shown: document.apply(reading, finding, remedy, shown))
+
+    def action_undo(self) -> None:
+        """Take the last remedy back."""
+        self._step(again=False)
+
+    def action_redo(self) -> None:
+        """Write the remedy again that was taken back."""
+        self._step(again=True)
+
+    def _step(self, *, again: bool) -> None:
+        document, reading = self.document, self.document.reading
+        if reading is None or not (document.undone if again else document.done):
+            self.notify("There is nothing to take back." if not again else "Nothing was taken back.")
+            return
+        self._say("rewriting the file", busy=True)
+        self.work_on(document, lambda progress, shown: document.step_back(reading, progress, shown, again=again))
+
+    def action_review(self) -> None:
+        """Review the file again."""
+        document = self.document
+        self._say(f"reading {document.path.name}", busy=True)
+        self._show_head(document.reading)
+        self.work_on(document, lambda progress, shown: (document.read(progress, shown), None))
+
+    def action_cancel(self) -> None:
+        """Give up the review that is running."""
+        if self._busy:
+            self.workers.cancel_group(self, "review")
+            self._say("given up; F5 reviews again")
+
+    def _look_at_disk(self) -> None:
+        if not self._busy and self.document.is_stale():
+            self.action_review()
+
+    def action_copy_id(self) -> None:
+        """Copy the id of the finding."""
+        if self.finding:
+            self.app.copy_to_clipboard(self.finding.id)
+            self.notify(f"copied {self.finding.id}", markup=False)
+
+    def action_edit(self) -> None:
+        """Open the file in the editor."""
+        reading = self.document.reading
+        with self.app.suspend():
+            status = editor.open_at(self.document.path, line_of(reading, self.finding) if reading else 1)
+        self.refresh()
+        if status:
+            self.notify(f"the editor ended with status {status}", severity="warning")
+
+    def action_design(self, step: int) -> None:
+        """Go to another design."""
+        if len(self._documents) > 1:
+            self._at = (self._at + step) % len(self._documents)
+            self._show_reading(self.document.reading)
+            self.action_review()
+
+    def action_numbers(self) -> None:
+        """Show the numbers."""
+        reading = self.document.reading
+        if reading is None or reading.numbers is None:
+            self.notify("There are no numbers of a design that cannot be used.", severity="warning")
+        else:
+            self.app.push_screen(NumbersScreen(reading.numbers, self.document.path.name))
+
+    def action_theme(self) -> None:
+        """Turn from dark to light and back."""
+        from rulecheck.tui.app import Browser
+
+        if isinstance(self.app, Browser):
+            self.app.turn_theme()
+
+    def action_help(self) -> None:
+        """List all keys."""
+        sections = [("Review", MOVING + REVIEW_KEYS), ("Numbers", NUMBERS_KEYS), ("Help and notes", DIALOG_KEYS)]
+        self.app.push_screen(Dialog("Keys", key_list(sections)))
+
+
+def _outcome(reading: Reading) -> str:
+    """A line for the outcome of a review."""
+    report = reading.report
+    if report.errors:
+        return "The file cannot be used; it is read again when it is saved."
+    if report.failures:
+        return f"incomplete: {report.failures[0].rule} failed: {report.failures[0].message}"
+    if report.not_run:
+        return f"{len(report.not_run)} rules were not run, the circuit is broken: see {report.not_run[0].because}"
+    proven = sum(any(remedy.proven for remedy in finding.remedies) for finding in report.findings)
+    return f"{report.rules_run} rules have been run; {proven} of {len(report.findings)} findings have a proven remedy."
