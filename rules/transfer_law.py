@@ -150,16 +150,19 @@ def _exponents(review: Review, settings: TransferLaw.Settings, transfer: Transfe
             nets=[requirement.output], subject=f"{requirement.name} exponent {name}", severity=Severity.MINOR,
             conditions=worst.conditions, consequence=f"{requirement.output} bends away from its law with {name}",
             evidence=[Evidence("exponent error", worst.value, "1", settings.exponent, "<=", over=off)],
-            remedies=scalings(review, partial(_tilted, review, transfer, large, name, settings.exponent * abs(power) / 2)),
+            remedies=scalings(review, partial(_tilted, review, transfer, large, name, off=settings.exponent * abs(power))),
             at=join_key(("requirements", requirement.name)),
         )  # fmt: skip
 
 
 def _tilted(
-    review: Review, transfer: Transfer, judged: np.ndarray, name: str, limit: float, points: OperatingPoints
+    review: Review, transfer: Transfer, judged: np.ndarray, name: str, points: OperatingPoints, *, off: float
 ) -> np.ndarray:
-    """Exponent error over the range of an input, as the slope of ln(output/law) in its logarithm, and all errors."""
+    """All errors, and the exponent error over the range of an input: the slope of ln(output/law) in its logarithm.
+
+    The latter in parts of half of what an exponent may be off, since local bends come on top.
+    """
     x = np.log(np.abs(transfer.conditions.values[name][judged]))
     error = np.log(np.abs(points.voltage(transfer.requirement.output)[judged] / transfer.law[judged]))
     x = x - x.mean()
-    return np.append(_shares(review, transfer, points), x @ error / (x @ x) / limit)
+    return np.append(_shares(review, transfer, points), x @ error / (x @ x) / (off / 2))

@@ -54,10 +54,10 @@ def _labelled(name: str, text: str) -> Content:
 
 
 def _table(evidence: Sequence[Evidence]) -> Iterator[Content]:
-    rows = [("Figure", "value", "sound is", "")]
+    rows = [("  Figure", "value", "sound is")]
     for piece in evidence:
         limit = "" if piece.limit is None else f"{RELATIONS[piece.relation]} {quantity(piece.limit, piece.unit)}"
-        rows.append((piece.quantity, quantity(piece.value, piece.unit), limit, _verdict(piece)))
+        rows.append((f"{_verdict(piece) or ' '} {piece.quantity}", quantity(piece.value, piece.unit), limit))
     head, *body = table(rows, indent=0)
     yield Content.styled(head, "$strong bold")
     for line, piece in zip(body, evidence, strict=True):

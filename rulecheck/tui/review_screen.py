@@ -43,11 +43,11 @@ class ReviewScreen(Working):
     """
 
     CSS_PATH = "review_screen.tcss"
-    HORIZONTAL_BREAKPOINTS: ClassVar[list[tuple[int, str]] | None] = [(0, "-narrow"), (WIDE, "-wide")]
     BINDINGS: ClassVar[list[BindingType]] = [*REVIEW_KEYS]
 
     def __init__(self, documents: Sequence[Document], watch: float) -> None:
         super().__init__()
+        self.HORIZONTAL_BREAKPOINTS = [(0, "-narrow"), (WIDE, "-wide")]
         self._documents = documents
         self._watch = watch
         self._at = 0

@@ -1,0 +1,191 @@
+"""The hook, run by the real pre-commit in a repository made for the purpose, from a clone of the working tree."""
+
+import os
+import re
+import shutil
+import subprocess
+import sys
+from pathlib import Path
+
+import pytest
+from filelock import FileLock
+
+ROOT = Path(__file__).parents[2]
+PRE_COMMIT = Path(sys.executable).with_name("pre-commit")
+SOUND = """\
+format = 1
+catalogues = ["parts.toml"]
+
+[design]
+title = "Divider with a lamp"
+
+[nets]
+GND = { role = "ground" }
+VIN = { role = "input", drive = "voltage", range = ["1 V", "10 V"], survives = ["0 V", "10 V"] }
+VOUT = { role = "output" }
+
+[parts]
+R1 = { kind = "resistor", model = "house", value = "1 kohm", tolerance = "1 %", tempco = "100 ppm/K", pins = ["VIN", "VOUT"] }
+R2 = { kind = "resistor", model = "house", value = "1 kohm", tolerance = "1 %", tempco = "100 ppm/K", pins = ["VOUT", "GND"] }
+"""
+CATALOGUE = """\
+[models.house]
+kind = "resistor"
+power = "0.25 W"
+"""
+FAULTY = SOUND.replace('model = "house", value', 'model = "house", power = "10 mW", value')
+
+
+def git(folder, *arguments, **options):
+    """Runs git, which must do as it is told."""
+    done = subprocess.run(["git", *arguments], cwd=folder, capture_output=True, text=True, check=False, **options)
+    assert done.returncode == 0, done.stderr
+    return done.stdout
+
+
+@pytest.fixture(autouse=True)
+def _alone(monkeypatch, hooks):
+    """Nothing of the user's own git, nor of the commit that may be running these tests, has a say."""
+    for name in [name for name in os.environ if name.startswith(("GIT_", "PRE_COMMIT"))]:
+        monkeypatch.delenv(name)
+    for role in ("AUTHOR", "COMMITTER"):
+        monkeypatch.setenv(f"GIT_{role}_NAME", "A. Designer")
+        monkeypatch.setenv(f"GIT_{role}_EMAIL", "designer@example.org")
+    monkeypatch.setenv("GIT_CONFIG_GLOBAL", os.devnull)
+    monkeypatch.setenv("PRE_COMMIT_HOME", str(hooks / "home"))
+
+
+@pytest.fixture(scope="session")
+def hooks(tmp_path_factory, worker_id):
+    """A folder with a repository of the working tree in `rulecheck`, and pre-commit's environments in `home`."""
+    base = tmp_path_factory.getbasetemp()
+    folder = (base if worker_id == "master" else base.parent) / "hooks"
+    with FileLock(f"{folder}.lock"):  # all workers share one
+        if not folder.exists():
+            clone = folder / "rulecheck"
+            names = git(ROOT, "ls-files", "-z", "--cached", "--others", "--exclude-standard").split("\0")
+            for name in filter(None, names):
+                if (ROOT / name).is_file():
+                    (clone / name).parent.mkdir(parents=True, exist_ok=True)
+                    shutil.copy(ROOT / name, clone / name)
+            git(clone, "init", "--quiet")
+            git(clone, "add", "--all")
+            identity = ("-c", "user.name=A", "-c", "user.email=a@example.org", "-c", "commit.gpgsign=false")
+            git(clone, *identity, "commit", "--quiet", "--no-verify", "--message", "The working tree")
+    return folder
+
+
+@pytest.fixture
+def repository(tmp_path, hooks, _alone):
+    """A repository with the hook installed, and in it a sound design, its catalogue and another TOML file."""
+    folder = tmp_path / "boards"
+    folder.mkdir()
+    revision = git(hooks / "rulecheck", "rev-parse", "HEAD").strip()
+    (folder / ".pre-commit-config.yaml").write_text(
+        f"repos:\n- repo: {hooks / 'rulecheck'}\n  rev: {revision}\n  hooks:\n  - id: rulecheck\n    verbose: true\n"
+    )
+    for name, text in (("sound.toml", SOUND), ("parts.toml", CATALOGUE), ("tools.toml", "[tool.lint]\nwide = 1\n")):
+        (folder / name).write_text(text)
+    git(folder, "init", "--quiet")
+    git(folder, "add", "--all")
+    git(folder, "commit", "--quiet", "--message", "Boards")
+    subprocess.run([PRE_COMMIT, "install", "--install-hooks"], cwd=folder, capture_output=True, check=True)
+    return folder
+
+
+def commit(folder):
+    """Commits what is staged; gives whether that went through, and all that was printed."""
+    before = git(folder, "rev-parse", "HEAD")
+    done = subprocess.run(
+        ["git", "commit", "--message", "Change"], cwd=folder, capture_output=True, text=True, check=False
+    )
+    went_through = done.returncode == 0
+    assert went_through == (git(folder, "rev-parse", "HEAD") != before)
+    return went_through, done.stdout + done.stderr
+
+
+def reviewed(printed):
+    """Designs whose review was printed."""
+    return re.findall(r"^(.*\.toml) · ", printed, re.MULTILINE)
+
+
+def test_a_faulty_design_is_stopped_with_its_finding_and_a_sound_one_passes(repository):
+    """What is wrong, the figure, its limit, the place and the mend are to be read; mended, it goes through."""
+    file = repository / "divider.toml"
+    file.write_text(FAULTY)
+    git(repository, "add", ".")
+    went_through, printed = commit(repository)
+    assert not went_through
+    assert "major       dissipation  R1\n            R1: 25.1 mW, 251 % of its rating of 10 mW" in printed
+    assert "mend a    take a resistor of 63 mW for R1 [proven]" in printed
+    assert "divider.toml:12:6" in printed
+    file.write_text(SOUND)
+    git(repository, "add", ".")
+    went_through, printed = commit(repository)
+    assert went_through
+    assert reviewed(printed) == ["divider.toml"]
+
+
+def test_only_what_is_staged_is_reviewed_and_as_it_is_staged(repository):
+    """A fault in the working tree that is not staged stops nothing, in the same file or another."""
+    (repository / "sound.toml").write_text(SOUND.replace("a lamp", "a bulb"))
+    (repository / "tools.toml").write_text("[tool.lint]\nwide = 2\n")
+    git(repository, "add", ".")
+    (repository / "sound.toml").write_text(FAULTY)
+    (repository / "not_staged.toml").write_text(FAULTY)
+    went_through, printed = commit(repository)
+    assert went_through, printed
+    assert reviewed(printed) == ["sound.toml"]
+    assert "sound.toml · Divider with a bulb" in printed
+    assert "tools.toml: passed over, it has neither format nor [design]" in printed
+    assert (repository / "sound.toml").read_text() == FAULTY
+
+
+def test_a_change_of_a_catalogue_has_its_designs_reviewed(repository):
+    """In all folders, each once, and no design of another catalogue."""
+    (repository / "input").mkdir()
+    (repository / "input" / "parts.toml").write_text(CATALOGUE)
+    (repository / "input" / "other.toml").write_text(SOUND)
+    (repository / "second.toml").write_text(SOUND)
+    git(repository, "add", ".")
+    assert commit(repository)[0]
+    (repository / "parts.toml").write_text(CATALOGUE.replace("0.25 W", "10 mW"))
+    (repository / "second.toml").write_text(SOUND.replace("a lamp", "two lamps"))
+    git(repository, "add", ".")
+    went_through, printed = commit(repository)
+    assert not went_through
+    assert sorted(reviewed(printed)) == ["second.toml", "sound.toml"]
+    assert printed.count("of its rating of 10 mW") == 4
+
+
+def test_names_with_blanks_and_beyond_ascii_are_reviewed_from_any_folder(repository):
+    """Committed from the folder of the design; the name is printed as it is."""
+    folder = repository / "Messgeräte für Öl"
+    folder.mkdir()
+    (folder / "parts.toml").write_text(CATALOGUE)
+    (folder / "Düse 1.toml").write_text(FAULTY)
+    git(folder, "add", ".")
+    went_through, printed = commit(folder)
+    assert not went_through
+    assert reviewed(printed) == ["Messgeräte für Öl/Düse 1.toml"]
+    (folder / "Düse 1.toml").write_text(SOUND)
+    git(folder, "add", ".")
+    assert commit(folder)[0]
+    run = subprocess.run([PRE_COMMIT, "run", "--all-files"], cwd=folder, capture_output=True, text=True, check=False)
+    assert run.returncode == 0, run.stdout
+    assert sorted(reviewed(run.stdout)) == ["Messgeräte für Öl/Düse 1.toml", "sound.toml"]
+
+
+def test_a_commit_without_designs_goes_through(repository):
+    """Of other TOML files each is named; where there is no TOML the hook does not run."""
+    (repository / "tools.toml").write_text("[tool.lint]\nwide = 3\n")
+    git(repository, "add", ".")
+    went_through, printed = commit(repository)
+    assert went_through
+    assert "tools.toml: passed over" in printed
+    assert "0 designs" in printed
+    (repository / "notes.txt").write_text("notes\n")
+    git(repository, "add", ".")
+    went_through, printed = commit(repository)
+    assert went_through
+    assert "(no files to check)Skipped" in printed
