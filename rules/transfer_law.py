@@ -144,19 +144,20 @@ def _exponents(review: Review, settings: TransferLaw.Settings, transfer: Transfe
         if not np.isfinite(off).any() or np.nanmax(off) <= settings.exponent:
             continue
         worst = points.worst(off)
+        tilted = partial(_tilted, review, transfer, large, name, most=settings.exponent * abs(power))
         yield Finding(
             f"requirement {requirement.name}: local exponent in {name} is {exponent[worst.index]:.4f}, "
             f"the law asks {power:.4g} (off by {percent(worst.value)}, limit {percent(settings.exponent)})",
             nets=[requirement.output], subject=f"{requirement.name} exponent {name}", severity=Severity.MINOR,
             conditions=worst.conditions, consequence=f"{requirement.output} bends away from its law with {name}",
             evidence=[Evidence("exponent error", worst.value, "1", settings.exponent, "<=", over=off)],
-            remedies=scalings(review, partial(_tilted, review, transfer, large, name, off=settings.exponent * abs(power))),
+            remedies=scalings(review, tilted),
             at=join_key(("requirements", requirement.name)),
         )  # fmt: skip
 
 
 def _tilted(
-    review: Review, transfer: Transfer, judged: np.ndarray, name: str, points: OperatingPoints, *, off: float
+    review: Review, transfer: Transfer, judged: np.ndarray, name: str, points: OperatingPoints, *, most: float
 ) -> np.ndarray:
     """All errors, and the exponent error over the range of an input: the slope of ln(output/law) in its logarithm.
 
@@ -165,4 +166,4 @@ def _tilted(
     x = np.log(np.abs(transfer.conditions.values[name][judged]))
     error = np.log(np.abs(points.voltage(transfer.requirement.output)[judged] / transfer.law[judged]))
     x = x - x.mean()
-    return np.append(_shares(review, transfer, points), x @ error / (x @ x) / (off / 2))
+    return np.append(_shares(review, transfer, points), x @ error / (x @ x) / (most / 2))

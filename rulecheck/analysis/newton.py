@@ -285,7 +285,7 @@ def _step_conductances(equations: Equations, values: Values) -> State:
 
 NODE_CAPACITANCE = 10e-12
 AMPLIFIER_LAG = 1e-7
-FIRST_STEP, LAST_STEP, MOST_STEPS = 1e-9, 1e4, 240
+FIRST_STEP, LAST_STEP, MOST_STEPS = 1e-9, 1e4, 100
 GROWTH, RETREAT = 2.0, 0.1
 
 

@@ -14,6 +14,7 @@ CLAMP_SATURATION = 1e-14
 CLAMP_RESISTANCE = 20.0
 CLAMP_BANDGAP = 1.12
 CLAMP_EXPONENT = 3.0
+MOST_EXPONENT = 300.0  # no iterate needs more, and what a wild one asks for stays finite
 
 
 @dataclass(frozen=True, slots=True)
@@ -86,11 +87,12 @@ def respond_with_resistance(voltage: Array, hot: HotDiode, resistance: float) ->
     # exponent y of the junction: y + z·(e^y − 1) = target; start on the branch that dominates
     y = np.where(target > 1, np.minimum(target, np.log1p(np.maximum(target, 0.0) / z)), target)
     for _ in range(40):
-        e = np.exp(y)
-        step = (y + z * np.expm1(y) - target) / (1 + z * e)
+        e = np.exp(np.minimum(y, MOST_EXPONENT))
+        step = (y + z * (e - 1) - target) / (1 + z * e)
         y = y - step
         if np.all(np.abs(step) <= 1e-15 * (1 + np.abs(y))):
             break
+    y = np.minimum(y, MOST_EXPONENT)
     current = hot.saturation * np.expm1(y)
     g = hot.saturation * np.exp(y) / hot.slope
     return current, g / (1 + g * resistance)

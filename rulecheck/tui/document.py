@@ -92,9 +92,9 @@ class Document:
     path: Path
     registry: Registry
     on: dt.date
-    reading: Reading | None = None
-    done: list[Rewriting] = field(default_factory=list)
-    undone: list[Rewriting] = field(default_factory=list)
+    reading: Reading | None = field(default=None, init=False)
+    done: list[Rewriting] = field(default_factory=list, init=False)
+    undone: list[Rewriting] = field(default_factory=list, init=False)
 
     def read(self, progress: Progress, shown: Callable[[Reading], None]) -> Reading:
         """Read and review the file.

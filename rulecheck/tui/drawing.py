@@ -94,7 +94,7 @@ def _joined(one: str, other: str) -> str:
 def _foot(axis: Axis, unit: str, margin: int, width: int) -> list[str]:
     """The abscissa with its ticks, and their words below."""
     rule, words, free = ["─"] * width, [" "] * (margin + 1 + width), 0
-    for tick in sorted(axis.ticks(max(2, width // 12)), key=lambda tick: float(axis.place(np.array(tick)))):
+    for tick in sorted(axis.ticks(max(2, width // 9)), key=lambda tick: float(axis.place(np.array(tick)))):
         at = round(float(axis.place(np.array(tick))) * (width - 1))
         rule[at] = "┬"
         text = quantity(tick, unit)

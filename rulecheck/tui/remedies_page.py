@@ -23,6 +23,7 @@ class RemediesPage(Page):
         super().__init__(id="remedies")
         self._shown: tuple[Reading, Finding] | None = None
         self._chosen = 0
+        self._picked = False
 
     @property
     def chosen(self) -> Remedy | None:
@@ -31,19 +32,19 @@ class RemediesPage(Page):
         return remedies[self._chosen] if remedies else None
 
     def show(self, reading: Reading, finding: Finding | None) -> None:
-        """Show the remedies of a finding; the first proven one is chosen, if the finding is another."""
-        same = self._shown is not None and finding is not None and self._shown[1].id == finding.id
+        """Show the remedies of a finding; the first proven one is chosen until the user chooses another."""
+        if not (self._shown and finding and self._shown[1].id == finding.id):
+            self._picked = False
         self._shown = (reading, finding) if finding else None
-        if not same:
-            marks = [bool(remedy.proven) for remedy in finding.remedies] if finding else []
+        if finding and not (self._picked and self._chosen < len(finding.remedies)):
+            marks = [bool(remedy.proven) for remedy in finding.remedies]
             self._chosen = marks.index(True) if True in marks else 0
-        elif finding:
-            self._chosen = min(self._chosen, max(len(finding.remedies) - 1, 0))
         super().show(reading, finding)
 
     def choose_next(self) -> None:
         """Choose the next remedy."""
         if self._shown and self._shown[1].remedies:
+            self._picked = True
             self._chosen = (self._chosen + 1) % len(self._shown[1].remedies)
             super().show(*self._shown)
 

@@ -11,18 +11,18 @@ from textual.containers import Container, Horizontal, Vertical
 from textual.content import Content
 from textual.widgets import Footer, Input, OptionList, Static
 
-from rulecheck.findings import Finding
-from rulecheck.tui import editor
+from rulecheck.findings import Finding, Remedy
 from rulecheck.tui.circuit_page import CircuitPage
 from rulecheck.tui.dialogs import Dialog, change_in_words, key_list
 from rulecheck.tui.document import Document, Reading
 from rulecheck.tui.errors_view import problems_in_words
 from rulecheck.tui.evidence_plot import PlotPage
-from rulecheck.tui.file_page import FilePage, line_of
+from rulecheck.tui.file_page import FilePage
+from rulecheck.tui.file_screen import FileScreen
 from rulecheck.tui.finding_list import FindingList
 from rulecheck.tui.finding_page import FindingPage
 from rulecheck.tui.grouping import ORDERS, counted, matching
-from rulecheck.tui.jobs import Failed, Progressed, Read, Working
+from rulecheck.tui.jobs import Failed, Progressed, Read
 from rulecheck.tui.keys import DIALOG_KEYS, MOVING, NUMBERS_KEYS, PAGES, REVIEW_KEYS
 from rulecheck.tui.numbers_screen import NumbersScreen
 from rulecheck.tui.remedies_page import RemediesPage
@@ -32,7 +32,7 @@ BAR = 12
 WIDE = 120
 
 
-class ReviewScreen(Working):
+class ReviewScreen(FileScreen):
     """Findings of one design at a time.
 
     Parameters
@@ -46,23 +46,20 @@ class ReviewScreen(Working):
     BINDINGS: ClassVar[list[BindingType]] = [*REVIEW_KEYS]
 
     def __init__(self, documents: Sequence[Document], watch: float) -> None:
-        super().__init__()
-        self.HORIZONTAL_BREAKPOINTS = [(0, "-narrow"), (WIDE, "-wide")]
-        self._documents = documents
+        super().__init__(documents)
         self._watch = watch
-        self._at = 0
+        self.HORIZONTAL_BREAKPOINTS = [(0, "-narrow"), (WIDE, "-wide")]
         self._order = 0
-        self._busy = ""
-
-    @property
-    def document(self) -> Document:
-        """The document on the screen."""
-        return self._documents[self._at]
 
     @property
     def finding(self) -> Finding | None:
         """The chosen finding."""
         return self.query_one(FindingList).chosen
+
+    @property
+    def remedy(self) -> Remedy | None:
+        """The chosen remedy."""
+        return self.query_one(RemediesPage).chosen
 
     def compose(self) -> ComposeResult:
         """Head, list and pages, foot."""
@@ -86,7 +83,7 @@ class ReviewScreen(Working):
         """Start the first review, and watch the file."""
         self.query_one(FindingList).focus()
         self.action_page("finding")
-        self.set_interval(self._watch, self._look_at_disk)
+        self.set_interval(self._watch, self.look_at_disk)
         self.action_review()
 
     # -- what the work tells
@@ -96,33 +93,30 @@ class ReviewScreen(Working):
         if message.document is self.document:
             full = BAR * message.done // max(message.total, 1)
             bar = "■" * full + "·" * (BAR - full)
-            self._say(f"{bar} {message.done + 1} of {message.total}  {message.what}", busy=True)
+            self.say(f"{bar} {message.done + 1} of {message.total}  {message.what}", busy=True)
 
     def on_read(self, message: Read) -> None:
         """Show what the review found."""
         message.document.reading = message.reading
         if message.document is not self.document:
             return
-        self._show_reading(message.reading)
+        self.show_reading(message.reading)
         if message.final:
-            self._say(_outcome(message.reading))
+            self.say(_outcome(message.reading))
         if message.change is not None:
             self.app.push_screen(Dialog("What it did", change_in_words(message.change)))
 
     def on_failed(self, message: Failed) -> None:
         """Say why there is no outcome."""
         if message.document is self.document:
-            self._say(message.words)
+            self.say(message.words)
             self.notify(message.words, severity="error", title=str(message.document.path.name), markup=False)
 
     # -- what is shown
 
-    def _say(self, words: str, *, busy: bool = False) -> None:
-        self._busy = words if busy else ""
-        self.query_one("#state", Static).update(Content.styled(words, "$quiet" if busy else "$ink"))
-
-    def _show_reading(self, reading: Reading | None) -> None:
-        self._show_head(reading)
+    def show_reading(self, reading: Reading | None) -> None:
+        """Show a reading of the document, or that there is none yet."""
+        self.show_head(reading)
         broken = reading is not None and bool(reading.report.errors)
         self.set_class(broken, "-broken")
         self._fill()
@@ -131,10 +125,11 @@ class ReviewScreen(Working):
             self.query_one(FindingPage).write(problems_in_words(reading.report.errors))
             self.query_one(FilePage).show(reading, None)
 
-    def _show_head(self, reading: Reading | None) -> None:
+    def show_head(self, reading: Reading | None) -> None:
+        """Show which design it is and what was found in it."""
         design = self.document.path.name
-        if len(self._documents) > 1:
-            design += f" ({self._at + 1} of {len(self._documents)})"
+        if len(self.documents) > 1:
+            design += f" ({self.at + 1} of {len(self.documents)})"
         report = reading.report if reading else None
         words = "" if report is None else "✖ cannot be used" if report.errors else counted(report.findings)
         title = report.title if report else ""
@@ -226,73 +221,11 @@ class ReviewScreen(Working):
         """Choose the next remedy."""
         self.query_one(RemediesPage).choose_next()
 
-    def action_apply(self) -> None:
-        """Apply the chosen remedy."""
-        reading, finding, remedy = self.document.reading, self.finding, self.query_one(RemediesPage).chosen
-        document = self.document
-        if reading is None or finding is None or remedy is None:
-            self.notify("This finding has no remedy.", severity="warning")
-        elif not remedy.proven:
-            words = "is not proven" if reading.tried else "is still being tried"
-            self.notify(f"Remedy {remedy.id} {words}; only proven ones are applied.", severity="warning")
-        else:
-            self._say(f"applying {remedy.id}: {remedy.title}", busy=True)
-            self.work_on(document, lambda _, shown: document.apply(reading, finding, remedy, shown))
-
-    def action_undo(self) -> None:
-        """Take the last remedy back."""
-        self._step(again=False)
-
-    def action_redo(self) -> None:
-        """Write the remedy again that was taken back."""
-        self._step(again=True)
-
-    def _step(self, *, again: bool) -> None:
-        document, reading = self.document, self.document.reading
-        if reading is None or not (document.undone if again else document.done):
-            self.notify("There is nothing to take back." if not again else "Nothing was taken back.")
-            return
-        self._say("rewriting the file", busy=True)
-        self.work_on(document, lambda progress, shown: document.step_back(reading, progress, shown, again=again))
-
-    def action_review(self) -> None:
-        """Review the file again."""
-        document = self.document
-        self._say(f"reading {document.path.name}", busy=True)
-        self._show_head(document.reading)
-        self.work_on(document, lambda progress, shown: (document.read(progress, shown), None))
-
-    def action_cancel(self) -> None:
-        """Give up the review that is running."""
-        if self._busy:
-            self.workers.cancel_group(self, "review")
-            self._say("given up; F5 reviews again")
-
-    def _look_at_disk(self) -> None:
-        if not self._busy and self.document.is_stale():
-            self.action_review()
-
     def action_copy_id(self) -> None:
         """Copy the id of the finding."""
         if self.finding:
             self.app.copy_to_clipboard(self.finding.id)
             self.notify(f"copied {self.finding.id}", markup=False)
-
-    def action_edit(self) -> None:
-        """Open the file in the editor."""
-        reading = self.document.reading
-        with self.app.suspend():
-            status = editor.open_at(self.document.path, line_of(reading, self.finding) if reading else 1)
-        self.refresh()
-        if status:
-            self.notify(f"the editor ended with status {status}", severity="warning")
-
-    def action_design(self, step: int) -> None:
-        """Go to another design."""
-        if len(self._documents) > 1:
-            self._at = (self._at + step) % len(self._documents)
-            self._show_reading(self.document.reading)
-            self.action_review()
 
     def action_numbers(self) -> None:
         """Show the numbers."""

@@ -52,7 +52,7 @@ output = "VOUT"
 law = "VIN / ten"
 constants = { ten = 10.0 }
 accuracy = { reading = "1 %", absolute = "5 mV" }
-"""  # noqa: E501
+"""
 
 
 @pytest.fixture

@@ -7,6 +7,7 @@ from textwrap import dedent
 
 import pytest
 
+from rulecheck.cli.main import main
 from rulecheck.findings import finding_id
 
 from .conftest import DIVIDER
@@ -89,15 +90,16 @@ def test_the_fix_of_the_file_makes_the_design_clean(run, folder, mark, end):
     assert (status, valid_run(out)["results"]) == (0, [])
 
 
-@pytest.mark.parametrize("name", ["bare_rails", "floating_divider", "strays_only", "two_packages", "swapped_inputs"])
-def test_the_fixes_of_the_file_mend_an_example(run, folder, name):
-    """Made one after another, with a check after each, until nothing major or minor is left."""
+@pytest.mark.parametrize("name", ["bare_rails", "floating_divider", "strays_only", "two_packages"])
+def test_the_fixes_of_the_file_mend_an_example(tmp_path, monkeypatch, name):
+    """Made one after another, with a check by the standard rules after each, until nothing is left to mend."""
+    monkeypatch.chdir(tmp_path)
     for source in (f"{name}.toml", "house_parts.toml"):
-        (folder / source).write_bytes((EXAMPLES / source).read_bytes())
-    file, made = folder / f"{name}.toml", 0
+        (tmp_path / source).write_bytes((EXAMPLES / source).read_bytes())
+    file, made = tmp_path / f"{name}.toml", 0
     while True:
-        # the team's own rule of the fixture speaks of all of them, and has no remedy
-        log = valid_run(run("check", file.name, "--as", "sarif", "--without", "collector-strays")[1])
+        main(["check", file.name, "--as", "sarif", "--write", "out.sarif"])
+        log = valid_run(Path("out.sarif").read_text(encoding="utf-8"))
         assert log["invocations"][0]["executionSuccessful"] is True
         open_ = [result for result in log["results"] if result["level"] != "note"]
         if not open_:

@@ -24,7 +24,7 @@ VOUT = { role = "output" }
 R1 = { kind = "resistor", value = "10 kohm", power = "0.1 W", pins = ["VIN", "S"] }
 Q1 = { kind = "npn", model = "bare-npn", pins = { C = "S", B = "GND", E = "VOUT" } }
 U1 = { kind = "op-amp", model = "bifet-precision", pins = { "IN+" = "GND", IN- = "S", OUT = "VOUT", "V+" = "V9P", V- = "V9N" } }
-"""  # noqa: E501 - a part is a line
+"""
 STATED = {
     "early_voltage": "100 V", "bulk_emitter_resistance": "1 ohm", "emitter_base_breakdown": "6 V",
     "collector_emitter_breakdown": "40 V", "collector_current": "20 mA", "emitter_capacitance": "10 pF",

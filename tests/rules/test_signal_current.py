@@ -99,9 +99,7 @@ def test_leakage_counts(board, leakage, is_found):
     changes = [("[parts]\n", f"[parts]\nD1 = {diode}\n"), ("50 nA", "13.4 nA")]
     finding = found(board, "floor", "light_ratio", *changes)
     assert (finding is not None) == is_found
-    assert (
-        finding is None or "leakage 113 pA" in finding.message
-    )  # 20 pA doubled every 10 K from 25 to 50 degC
+    assert finding is None or "leakage 113 pA" in finding.message  # 20 pA doubled every 10 K from 25 to 50 degC
 
 
 @pytest.mark.parametrize(

@@ -86,3 +86,12 @@ def test_clamp_with_resistance_satisfies_its_loop_equation(voltage, resistance):
         assert junction + resistance * current[0, 0] == pytest.approx(voltage, rel=1e-9, abs=1e-9)
     else:
         assert -1.01e-14 <= current[0, 0] <= 0
+
+
+def test_clamp_current_stays_finite_at_any_voltage():
+    """A wild iterate of the solver asks for megavolts at any temperature, and gets a finite current without a warning."""
+    for heat in (200.0, 300.0, 1000.0):
+        hot = diode.heat_clamps(np.full((1, 5), heat))
+        current, conductance = diode.respond_with_resistance(np.array([[-1e9, -1.0, 0.0, 1e3, 1e9]]), hot, 20.0)
+        assert np.isfinite(current).all()
+        assert np.isfinite(conductance).all()
