@@ -21,6 +21,7 @@ SLOWEST_SHARE = 1e-14
 DAMPING_SPAN = 100.0
 """Damping is judged below this many times the largest gain-bandwidth."""
 TAKES_PART = 0.2
+RINGING = 0.5  # damping ratio below which a doubtful mode matters
 UNBOUNDED = 1e-100
 
 
@@ -65,7 +66,43 @@ def find_modes(system: SmallSignal) -> Modes:
     mu, right = np.linalg.eig(response[:, columns, :])
     mu, right = mu.astype(complex), right.astype(complex)
     left = _inverse(right)
-    return Modes(mode_frequencies(mu), mu, right, left, columns, response)
+    frequency = _genuine(system, mode_frequencies(mu), mu, response.astype(complex) @ right)
+    return Modes(frequency, mu, right, left, columns, response)
+
+
+DOUBTFUL_SHARE = 1e-8
+"""An eigenvalue of ``G⁻¹C`` this small beside the largest may be rounding of one at zero, a mode at infinity."""
+NEAR = 1e-3
+
+
+def _genuine(system: SmallSignal, frequency: ComplexArray, mu: ComplexArray, vectors: ComplexArray) -> ComplexArray:
+    """Natural frequencies without those that rounding made of modes at infinity.
+
+    A doubtful one that would be unstable or ring is looked at in the pencil itself: with ``M = G + s·C`` the
+    nearest natural frequency to s is ``s − 1/ν`` for the largest eigenvalue ν of ``M⁻¹C``, found by iteration.
+    Where it is not near, s is none.
+    """
+    size = np.abs(mu)
+    small = size < DOUBTFUL_SHARE * size.max(axis=1, keepdims=True, initial=0.0)
+    doubtful = small & np.isfinite(frequency) & (frequency.real > -RINGING * np.abs(frequency))
+    rows, modes = np.nonzero(doubtful)
+    if not rows.size:
+        return frequency
+    s = frequency[rows, modes]
+    matrix = system.conductance[rows] + s[:, None, None] * system.capacitance[rows]
+    x = vectors[rows, :, modes][..., None]
+    capacitance = system.capacitance[rows].astype(complex)
+    nu = np.zeros(len(rows), complex)
+    with np.errstate(all="ignore"):
+        for _ in range(3):
+            x = x / np.linalg.norm(x, axis=1, keepdims=True)
+            there = np.linalg.solve(matrix, capacitance @ x)
+            nu = np.sum(np.conj(x) * there, axis=(1, 2))
+            x = there
+        far = ~(np.abs(1 / nu) < NEAR * np.abs(s))
+    kept = frequency.copy()
+    kept[rows[far], modes[far]] = np.nan
+    return kept
 
 
 def mode_frequencies(mu: ComplexArray) -> ComplexArray:

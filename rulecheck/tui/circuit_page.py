@@ -21,6 +21,8 @@ class CircuitPage(Page):
         """The drawing."""
         if reading.review is None:
             return Content("")
+        if not (finding.parts or finding.nets):
+            return Content.styled("The finding is about the whole design.", "$quiet")
         drawn = diagram(reading.review.design, finding.parts, finding.nets)
         lines = [
             Content.styled(f"  {head} {CULPRIT}" if culprit else f"  {head}", "$major bold" if culprit else "$quiet")

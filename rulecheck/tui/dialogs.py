@@ -68,7 +68,11 @@ def change_in_words(change: Change) -> Content:
     for words, findings in (("gone", change.gone), ("come", change.come)):
         lines.append(Content.styled(f"{words}: {len(findings)}", "$strong bold"))
         lines += [_line(finding) for finding in findings]
-    lines += [Content(f"left: {change.left}"), Content(""), Content.styled("u takes it back.", "$quiet")]
+    lines += [
+        Content(f"left: {change.left}"),
+        Content(""),
+        Content.styled("Once this is closed, u takes it back.", "$quiet"),
+    ]
     return Content("\n").join(lines)
 
 

@@ -116,5 +116,25 @@ class FileScreen(Working):
         """Go to another design."""
         if len(self.documents) > 1:
             self.at = (self.at + step) % len(self.documents)
-            self.show_reading(self.document.reading)
-            self.action_review()
+            reading = self.document.reading
+            self.show_reading(reading)
+            if reading is None or not (reading.tried or reading.report.errors) or self.document.is_stale():
+                self.action_review()
+            else:
+                self.say(outcome_in_words(reading))
+
+
+def outcome_in_words(reading: Reading) -> str:
+    """A line for the outcome of a review."""
+    report = reading.report
+    if report.errors:
+        return "The file cannot be used; it is read again when it is saved."
+    if report.failures:
+        return f"incomplete: {report.failures[0].rule} failed: {report.failures[0].message}"
+    if report.not_run:
+        return f"{len(report.not_run)} rules were not run, the circuit is broken: see {report.not_run[0].because}"
+    words = f"{report.rules_run} rules have been run"
+    if not report.findings:
+        return f"{words}."
+    proven = sum(any(remedy.proven for remedy in finding.remedies) for finding in report.findings)
+    return f"{words}; {proven} of {len(report.findings)} findings have a proven remedy."

@@ -18,7 +18,7 @@ from rulecheck.tui.document import Document, Reading
 from rulecheck.tui.errors_view import problems_in_words
 from rulecheck.tui.evidence_plot import PlotPage
 from rulecheck.tui.file_page import FilePage
-from rulecheck.tui.file_screen import FileScreen
+from rulecheck.tui.file_screen import FileScreen, outcome_in_words
 from rulecheck.tui.finding_list import FindingList
 from rulecheck.tui.finding_page import FindingPage
 from rulecheck.tui.grouping import ORDERS, counted, matching
@@ -102,7 +102,7 @@ class ReviewScreen(FileScreen):
             return
         self.show_reading(message.reading)
         if message.final:
-            self.say(_outcome(message.reading))
+            self.say(outcome_in_words(message.reading))
         if message.change is not None:
             self.app.push_screen(Dialog("What it did", change_in_words(message.change)))
 
@@ -246,16 +246,3 @@ class ReviewScreen(FileScreen):
         """List all keys."""
         sections = [("Review", MOVING + REVIEW_KEYS), ("Numbers", NUMBERS_KEYS), ("Help and notes", DIALOG_KEYS)]
         self.app.push_screen(Dialog("Keys", key_list(sections)))
-
-
-def _outcome(reading: Reading) -> str:
-    """A line for the outcome of a review."""
-    report = reading.report
-    if report.errors:
-        return "The file cannot be used; it is read again when it is saved."
-    if report.failures:
-        return f"incomplete: {report.failures[0].rule} failed: {report.failures[0].message}"
-    if report.not_run:
-        return f"{len(report.not_run)} rules were not run, the circuit is broken: see {report.not_run[0].because}"
-    proven = sum(any(remedy.proven for remedy in finding.remedies) for finding in report.findings)
-    return f"{report.rules_run} rules have been run; {proven} of {len(report.findings)} findings have a proven remedy."

@@ -47,24 +47,30 @@ temperature_exponent = 3
 FAULTY = SOUND.replace("0.25 W", "10 mW")
 
 
-def git(folder, *arguments, **options):
+#: Nothing of the user's own git, nor of a commit that may be running these tests, has a say.
+ENVIRONMENT = {name: value for name, value in os.environ.items() if not name.startswith(("GIT_", "PRE_COMMIT"))} | {
+    "GIT_CONFIG_GLOBAL": os.devnull,
+    "GIT_AUTHOR_NAME": "A. Designer",
+    "GIT_AUTHOR_EMAIL": "designer@example.org",
+    "GIT_COMMITTER_NAME": "A. Designer",
+    "GIT_COMMITTER_EMAIL": "designer@example.org",
+    "PIP_NO_COMPILE": "1",  # only what a check imports is compiled, when it first does
+}
+
+
+def called(folder, *command):
+    """Runs a command in a folder; gives exit status and all that was printed."""
+    done = subprocess.run(
+        command, cwd=folder, env=ENVIRONMENT, stdout=subprocess.PIPE, stderr=subprocess.STDOUT, text=True, check=False
+    )
+    return done.returncode, done.stdout
+
+
+def git(folder, *arguments):
     """Runs git, which must do as it is told."""
-    done = subprocess.run(["git", *arguments], cwd=folder, capture_output=True, text=True, check=False, **options)
-    assert done.returncode == 0, done.stderr
-    return done.stdout
-
-
-@pytest.fixture(autouse=True)
-def _alone(monkeypatch, hooks):
-    """Nothing of the user's own git, nor of the commit that may be running these tests, has a say."""
-    for name in [name for name in os.environ if name.startswith(("GIT_", "PRE_COMMIT"))]:
-        monkeypatch.delenv(name)
-    for role in ("AUTHOR", "COMMITTER"):
-        monkeypatch.setenv(f"GIT_{role}_NAME", "A. Designer")
-        monkeypatch.setenv(f"GIT_{role}_EMAIL", "designer@example.org")
-    monkeypatch.setenv("GIT_CONFIG_GLOBAL", os.devnull)
-    monkeypatch.setenv("PRE_COMMIT_HOME", str(hooks / "home"))
-    monkeypatch.setenv("PIP_NO_COMPILE", "1")  # only what a check imports is compiled, when it first does
+    status, printed = called(folder, "git", *arguments)
+    assert status == 0, printed
+    return printed
 
 
 @pytest.fixture(scope="session")
@@ -82,14 +88,14 @@ def hooks(tmp_path_factory, worker_id):
                     shutil.copy(ROOT / name, clone / name)
             git(clone, "init", "--quiet")
             git(clone, "add", "--all")
-            identity = ("-c", "user.name=A", "-c", "user.email=a@example.org", "-c", "commit.gpgsign=false")
-            git(clone, *identity, "commit", "--quiet", "--no-verify", "--message", "The working tree")
+            git(clone, "commit", "--quiet", "--message", "The working tree")
     return folder
 
 
 @pytest.fixture
-def repository(tmp_path, hooks, _alone):
+def repository(tmp_path, hooks, monkeypatch):
     """A repository with the hook installed, and in it a sound design, its catalogue and another TOML file."""
+    monkeypatch.setitem(ENVIRONMENT, "PRE_COMMIT_HOME", str(hooks / "home"))
     folder = tmp_path / "boards"
     folder.mkdir()
     revision = git(hooks / "rulecheck", "rev-parse", "HEAD").strip()
@@ -101,19 +107,18 @@ def repository(tmp_path, hooks, _alone):
     git(folder, "init", "--quiet")
     git(folder, "add", "--all")
     git(folder, "commit", "--quiet", "--message", "Boards")
-    subprocess.run([PRE_COMMIT, "install", "--install-hooks"], cwd=folder, capture_output=True, check=True)
+    status, printed = called(folder, PRE_COMMIT, "install", "--install-hooks")
+    assert status == 0, printed
     return folder
 
 
 def commit(folder):
     """Commits what is staged; gives whether that went through, and all that was printed."""
     before = git(folder, "rev-parse", "HEAD")
-    done = subprocess.run(
-        ["git", "commit", "--message", "Change"], cwd=folder, capture_output=True, text=True, check=False
-    )
-    went_through = done.returncode == 0
+    status, printed = called(folder, "git", "commit", "--message", "Change")
+    went_through = status == 0
     assert went_through == (git(folder, "rev-parse", "HEAD") != before)
-    return went_through, done.stdout + done.stderr
+    return went_through, printed
 
 
 def reviewed(printed):
@@ -183,9 +188,9 @@ def test_names_with_blanks_and_beyond_ascii_are_reviewed_from_any_folder(reposit
     (folder / "Düse 1.toml").write_text(SOUND)
     git(folder, "add", ".")
     assert commit(folder)[0]
-    run = subprocess.run([PRE_COMMIT, "run", "--all-files"], cwd=folder, capture_output=True, text=True, check=False)
-    assert run.returncode == 0, run.stdout
-    assert sorted(reviewed(run.stdout)) == ["Messgeräte für Öl/Düse 1.toml", "sound.toml"]
+    status, printed = called(folder, PRE_COMMIT, "run", "--all-files")
+    assert status == 0, printed
+    assert sorted(reviewed(printed)) == ["Messgeräte für Öl/Düse 1.toml", "sound.toml"]
 
 
 def test_a_commit_without_designs_goes_through(repository):

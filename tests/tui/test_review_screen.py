@@ -1,6 +1,7 @@
 """The review screen: what each of its keys does."""
 
 import contextlib
+import time
 
 import pytest
 from textual.widgets import Input
@@ -345,3 +346,56 @@ def test_numbers_are_reached_and_left(browse):
         assert not isinstance(pilot.app.screen, NumbersScreen)
 
     browse(steps)
+
+
+def test_f5_reviews_again(browse, path):
+    """Also where the disk is not looked at."""
+
+    async def steps(pilot):
+        path.write_text(FIXED)
+        await pilot.press("f5")
+        await settle(pilot)
+        assert "major" not in text(pilot, "#head")
+
+    browse(steps, watch=1000)
+
+
+def test_a_running_review_answers_keys_and_can_be_given_up(browse, monkeypatch):
+    """Its progress is shown; once given up it changes nothing any more."""
+    from rulecheck.tui.document import Document
+
+    def endless(self, progress, shown):
+        done = 0
+        while True:
+            progress(done, 100, "endless-rule")
+            done = (done + 1) % 100
+            time.sleep(0.01)
+
+    async def steps(pilot):
+        monkeypatch.setattr(Document, "read", endless)
+        await pilot.press("f5")
+        await until(pilot, lambda: "of 100  endless-rule" in text(pilot, "#state"))
+        await pilot.press("3")
+        assert pilot.app.screen.query_one("#remedies").display
+        await pilot.press("c")
+        await settle(pilot)
+        assert "given up" in text(pilot, "#state")
+        assert "1 major" in text(pilot, "#head")
+
+    browse(steps, watch=1000)
+
+
+def test_a_fault_of_the_program_does_not_close_the_screen(browse, monkeypatch):
+    """It is told in words."""
+    from rulecheck.tui.document import Document
+
+    def broken(self, progress, shown):
+        raise ZeroDivisionError("nothing to divide")
+
+    async def steps(pilot):
+        monkeypatch.setattr(Document, "read", broken)
+        await pilot.press("f5")
+        await settle(pilot)
+        assert "fault of the program" in text(pilot, "#state")
+
+    browse(steps, watch=1000)
