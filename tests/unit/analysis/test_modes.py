@@ -16,9 +16,9 @@ VOUT = {{ role = "output", load = "10 kohm" }}
 R1 = {{ kind = "resistor", value = "10 kohm", pins = ["VIN", "S"] }}
 R2 = {{ kind = "resistor", value = "1 kohm", pins = ["O", "VOUT"] }}
 C1 = {{ kind = "capacitor", value = "470 pF", pins = ["S", "O"] }}
-Q1 = {{ kind = "npn", model = "monolithic-pair-npn", pins = {{ C = "S", B = "GND", E = "VOUT" }} }}
-Q2 = {{ kind = "pnp", model = "monolithic-pair-pnp", pins = {{ C = "S", B = "GND", E = "VOUT" }} }}
-U1 = {{ kind = "op-amp", model = "bipolar-precision", pins = {{ "IN+" = "GND", IN- = "S", OUT = "O", {PINS} }} }}
+Q1 = {{ kind = "npn", model = "monolithic-pair-npn-tight", pins = {{ C = "S", B = "GND", E = "VOUT" }} }}
+U1 = {{ kind = "op-amp", pins = {{ "IN+" = "GND", IN- = "S", OUT = "O", {PINS} }}, open_loop_gain = 4e5, gain_bandwidth = "3 MHz", second_pole = "12 MHz", bias_current = "10 pA", bias_current_doubling = "10 K", input_headroom = {{ low = "-0.1 V", high = "-0.1 V" }}, output_headroom = {{ low = "20 mV", high = "20 mV" }}, supply_current = "1 mA" }}
+Q2 = {{ kind = "pnp", pins = {{ C = "S", B = "GND", E = "VOUT" }}, saturation_current = "15 fA", forward_beta = 400, early_voltage = "150 V", emitter_capacitance = "20 pF", collector_capacitance = "8 pF" }}
 """
 
 
