@@ -1,17 +1,21 @@
 """The review screen: what each of its keys does."""
 
+import asyncio
 import contextlib
+import datetime as dt
 import time
 
 import pytest
 from textual.widgets import Input
 
+from rulecheck.review.registry import registry_of
+from rulecheck.tui.app import Browser
 from rulecheck.tui.dialogs import Dialog
 from rulecheck.tui.finding_list import FindingList
 from rulecheck.tui.keys import PAGES, REVIEW_KEYS
 from rulecheck.tui.numbers_screen import NumbersScreen
 
-from .conftest import DIVIDER, settle, text, until
+from .conftest import DIVIDER, Ratio, settle, text, until
 
 FIXED = DIVIDER.replace('"3 kohm"', '"1 kohm"')
 
@@ -399,3 +403,58 @@ def test_a_fault_of_the_program_does_not_close_the_screen(browse, monkeypatch):
         assert "fault of the program" in text(pilot, "#state")
 
     browse(steps, watch=1000)
+
+
+def test_a_click_on_its_name_shows_a_page(browse):
+    """The mouse does what the number does."""
+
+    async def steps(pilot):
+        await pilot.click("#tabs", offset=(13, 0))
+        await pilot.pause()
+        assert pilot.app.screen.query_one("#plot").display
+        assert not pilot.app.screen.query_one("#finding").display
+
+    browse(steps)
+
+
+def test_the_screen_follows_the_size_of_the_terminal(browse):
+    """From one page to all and back."""
+
+    async def steps(pilot):
+        pages = pilot.app.screen.query_one("#pages").children
+        await pilot.resize_terminal(160, 50)
+        await pilot.pause()
+        assert sum(page.display for page in pages) == 5
+        await pilot.resize_terminal(80, 24)
+        await pilot.pause()
+        assert sum(page.display for page in pages) == 1
+
+    browse(steps, size=(80, 24))
+
+
+@pytest.mark.parametrize("size", [(80, 24), (160, 50)])
+def test_no_key_fails_while_there_is_nothing_to_show_yet(path, monkeypatch, size):
+    """Before the first review is done, and where the file cannot be used."""
+    from rulecheck.tui import editor
+    from rulecheck.tui.document import Document
+
+    def waiting(self, progress, shown):
+        while True:
+            progress(0, 1, "first-rule")
+            time.sleep(0.01)
+
+    monkeypatch.setattr(editor, "open_at", lambda path, line: 0)
+    keys = ["a", "u", "U", "r", "v", "x", "y", "g", "f", "f", "1", "2", "3", "4", "5", "n", "t", "d", "down", "e"]
+
+    async def go(read):
+        monkeypatch.setattr(Document, "read", read)
+        app = Browser([path], registry_of([Ratio]), dt.date(2026, 1, 2), 1000)
+        monkeypatch.setattr(app, "suspend", contextlib.nullcontext)
+        async with app.run_test(size=size) as pilot:
+            await pilot.press(*keys)
+            await pilot.press("c", "q")
+
+    usable = Document.read
+    asyncio.run(go(waiting))
+    path.write_text("format = 1\n[design")
+    asyncio.run(go(usable))
