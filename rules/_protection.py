@@ -34,6 +34,8 @@ def against_reversal(review: Review, parts: list[str], causes: list[str], index:
     index : int
         The worst fault scenario.
     """
+    if not review.seeks_remedies:
+        return []
     diode = quietest_diode(review)
     if diode is None:
         return [Remedy("clamp the junction with a diode of low leakage; the catalogues have none")]
@@ -113,6 +115,8 @@ def series_resistor(
     current : callable
         Greatest fault current of a review [A].
     """
+    if not review.seeks_remedies:
+        return None
     largest = _greatest_span(review) / limit
     values = decade_values("E24", largest / SEARCHED, largest * 1.2)
 
@@ -148,6 +152,8 @@ def against_current(review: Review, ref: str, rating: str, limit: float) -> list
     limit : float
         Current allowed [A].
     """
+    if not review.seeks_remedies:
+        return []
     design = review.design
     pin = {"output_current": "OUT", "collector_current": "C", "forward_current": "A"}[rating]
 
@@ -171,6 +177,8 @@ def sturdier(review: Review, ref: str, rating: str, needed: float) -> list[Remed
     needed : float
         What the part must stand.
     """
+    if not review.seeks_remedies:
+        return []
     part = review.design.parts[ref]
     if part.kind == "op-amp":
         fits = partial(_has, rating, needed)

@@ -93,6 +93,8 @@ def swing_remedies(review: Review, demand: Demand, amplifier: str, margin: Float
     judged : ndarray of bool
         Conditions that count.
     """
+    if not review.seeks_remedies:
+        return []
     headroom = review.design.parts[amplifier].output_headroom
     below, above = _distances(review, demand, amplifier, margin, judged)
     short = {"V-": headroom.low.max - below, "V+": headroom.high.max - above}
@@ -195,6 +197,8 @@ def current_remedies(review: Review, amplifier: str) -> list[Remedy]:
     review : Review
     amplifier : str
     """
+    if not review.seeks_remedies:
+        return []
     parts, limit = review.design.parts, review.design.parts[amplifier].output_current.max
     usual, in_faults = (_Flows(points, review, amplifier) for points in (review.operating_points, review.faults))
     remedies = []

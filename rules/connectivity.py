@@ -168,6 +168,7 @@ class _Nets:
             title = f"connect to it what is on {meant}" if edits else "connect a part to it, or take it out of [nets]"
             yield Finding(
                 f"no part touches net {name}", nets=[name], subject="untouched", at=join_key(("nets", name)),
+                severity=Severity.MAJOR if self.design.nets[name].role in ("input", "output") else Severity.MINOR,
                 consequence="what is said of it has no effect", remedies=[Remedy(title, edits)],
             )  # fmt: skip
 

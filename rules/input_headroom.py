@@ -152,6 +152,8 @@ def _distance(volts: float, rail: str) -> str:
 def _remedies(
     review: Review, settings: InputHeadroom.Settings, amplifiers: list[str], rooms: dict[str, list[_Room]], worst: _Room
 ) -> list[Remedy]:
+    if not review.seeks_remedies:
+        return []
     rail = "V-" if worst.side == "low" else "V+"
     together = [room for a in in_packages_of(review, amplifiers) for room in rooms.get(a, ())]
 

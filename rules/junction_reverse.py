@@ -192,6 +192,8 @@ _CONSEQUENCES = {
 
 
 def _remedies(review: Review, stress: _Stress) -> list[Remedy]:
+    if not review.seeks_remedies:
+        return []
     if stress.unit == "A":
         return against_current(review, stress.part, stress.rating, stress.limit)
     return sturdier(review, stress.part, stress.rating, stress.worst)

@@ -253,20 +253,31 @@ def fault_scenarios(design: Design, typical: Row | None = None) -> Conditions:
     return Conditions(MappingProxyType(values), tuple(words for words, _, _ in cases), MappingProxyType(absent))
 
 
+SLIGHT = 0.02
+"""Share of a reversed end: a slight reversal can be worse than a full one, which a junction may clamp."""
+
+
 def _survival_rows(design: Design) -> list[tuple[str, Row]]:
-    return _end_rows({n: (s, s.survives or (s.low, s.high)) for n, s in design.inputs.items()})
+    return _end_rows({n: (s, _survived(s)) for n, s in design.inputs.items()})
+
+
+def _survived(source: Input) -> tuple[float, ...]:
+    """Values an input must survive: the ends, and where one is of the other sign than the signal, a little of it."""
+    ends = source.survives or (source.low, source.high)
+    reversed_ends = [e for e in ends if e * source.low < 0 and e * source.high < 0]
+    return (*ends, *(SLIGHT * e for e in reversed_ends))
 
 
 def _range_rows(design: Design) -> list[tuple[str, Row]]:
     return _end_rows({n: (s, (s.low, s.high)) for n, s in design.inputs.items()})
 
 
-def _end_rows(ends: Mapping[str, tuple[Input, tuple[float, float]]]) -> list[tuple[str, Row]]:
+def _end_rows(ends: Mapping[str, tuple[Input, tuple[float, ...]]]) -> list[tuple[str, Row]]:
     """Each input alone at either end, with words for it."""
     return [
         (f"{name} at {format_quantity(value, source.unit)}", {name: value})
-        for name, (source, pair) in ends.items()
-        for value in _distinct(pair)
+        for name, (source, values) in ends.items()
+        for value in _distinct(values)
     ] or [("no inputs", {})]
 
 

@@ -158,4 +158,6 @@ class Loops:
 
 def digest(system: SmallSignal) -> str:
     """What a linearised network is recognised by."""
-    return hashlib.sha256(system.conductance.tobytes() + system.capacitance.tobytes()).hexdigest()
+    shape = repr((system.conductance.shape, system.amplifiers, system.widest)).encode()
+    arrays = (system.conductance, system.capacitance, system.linear, system.converged)
+    return hashlib.sha256(b"".join([shape, *(a.tobytes() for a in arrays)])).hexdigest()

@@ -11,6 +11,7 @@ import click
 from rulecheck.cli.options import FILE, form_option, on_option, samples_options
 from rulecheck.cli.status import Status, status_of
 from rulecheck.cli.streams import ProgressBar, emit, width_and_color
+from rulecheck.errors import CommandError
 from rulecheck.findings import Report, Severity
 
 if TYPE_CHECKING:
@@ -52,7 +53,10 @@ def command(
     registry = installed_registry()
     registry.check_names((*only, *without))
     designs = []
-    for path in changed_designs(paths) if changed else design_files(paths):
+    files = list(changed_designs(paths) if changed else design_files(paths))
+    if file is not None and file.resolve() in {path.resolve() for path in files}:
+        raise CommandError(f"{file} is one of the designs to review", "--write takes another file, which it replaces")
+    for path in files:
         with ProgressBar(str(path)) as progress:
             sampling = None if samples is None else Sampling(samples, seed, progress)
             options = Options(on=on, only=only, without=without, progress=progress, sampling=sampling)

@@ -97,6 +97,9 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except RulecheckError as error:
         narrate(f"rulecheck: {error}")
         return Status.UNUSABLE
+    except OSError as error:
+        narrate(f"rulecheck: {error.filename or 'output'}: {error.strerror or error}")
+        return Status.UNUSABLE
     except Exception:  # noqa: BLE001 - a fault of the program must not look like findings
         narrate(f"rulecheck: a fault of the program itself\n{traceback.format_exc()}")
         return Status.FAILED

@@ -91,6 +91,14 @@ def _pass_over(file: Path, kind: str) -> None:
     narrate(f"{file}: passed over, it {kind}")
 
 
+def _is_special(file: Path) -> bool:
+    """Whether a name stands for a pipe or a device, which would be waited for."""
+    try:
+        return file.exists() and not file.is_file()
+    except OSError:  # a link that leads to itself: the loader says so
+        return False
+
+
 def _refuse(error: OSError) -> None:
     raise CommandError(f"{error.filename} cannot be read: {error.strerror}") from error
 

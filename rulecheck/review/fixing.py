@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 
+from rulecheck.design.keypath import split_key
 from rulecheck.errors import CommandError
 from rulecheck.findings import Finding, Remedy
 from rulecheck.review.remedies import edited
@@ -113,5 +114,22 @@ def _proven(review: DesignReview, seen: set[str]) -> Iterator[Step]:
     """Proven remedies that lead to a text not met before, so that two rules cannot undo each other for ever."""
     for finding in review.findings:
         for remedy in finding.remedies if finding.concession is None else ():
+            if changes_what_is_asked(remedy):
+                continue  # narrowing the task until the design passes is for people to decide
             if review.trials.proven(finding, remedy) and edited(review.design.text, remedy) not in seen:
                 yield Step(finding, remedy)
+
+
+ASKED = ("range", "survives", "cutoff", "role", "drive")
+
+
+def changes_what_is_asked(remedy: Remedy) -> bool:
+    """Whether a remedy changes the task instead of the circuit: inputs' ranges, requirements, ambient, concessions."""
+    for edit in remedy.edits:
+        table, *rest = split_key(edit.key)
+        key = rest[1] if len(rest) > 1 else ""
+        if table in ("requirements", "environment", "concessions", "rules") or (table == "nets" and key in ASKED):
+            return True
+        if table == "parts" and key in ("photocurrent", "survives"):
+            return True
+    return False

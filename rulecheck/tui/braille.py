@@ -119,6 +119,20 @@ class Canvas:
         self._set(across.ravel(), down.ravel())
         self._set(columns[whole], rows[whole])
 
+    def points(self, x: Array, y: Array) -> None:
+        """Points by themselves, two dots wide and high.
+
+        Parameters
+        ----------
+        x, y : ndarray, shape (points,)
+            0 to 1 from left to right and from bottom to top.
+        """
+        columns, rows = self._places(np.asarray(x, float), np.asarray(y, float))
+        whole = np.isfinite(columns) & np.isfinite(rows)
+        left, top = (np.floor(v[whole] / 2) * 2 for v in (columns, rows))
+        for right, down in ((0, 0), (1, 0), (0, 1), (1, 1)):
+            self._set(left + right, top + down)
+
     def dashed(self, y: float) -> None:
         """A dashed line across at a height from 0 to 1."""
         columns = np.arange(self._dots.shape[1])

@@ -30,6 +30,8 @@ class Diagram:
         Drawn dashed.
     mark : (x, y), optional
         The worst point.
+    joined : bool
+        Whether the points of a line belong together, and are joined.
     """
 
     lines: Sequence[tuple[Array, Array]]
@@ -37,7 +39,7 @@ class Diagram:
     y_unit: str
     limits: Sequence[float] = ()
     mark: tuple[float, float] | None = None
-    x_log: bool | None = None
+    joined: bool = True
 
 
 def draw(diagram: Diagram, width: int, height: int) -> list[Content]:
@@ -49,7 +51,7 @@ def draw(diagram: Diagram, width: int, height: int) -> list[Content]:
     width, height : int
     """
     everything = np.concatenate([np.ravel(y) for _, y in diagram.lines] + [np.asarray(diagram.limits, float)])
-    across = Axis.of(np.concatenate([np.ravel(x) for x, _ in diagram.lines]), log=diagram.x_log)
+    across = Axis.of(np.concatenate([np.ravel(x) for x, _ in diagram.lines]))
     up = Axis.of(everything, room=0.06)
     rows = max(height - 2, LEAST_HEIGHT)
     ticks = {tick: quantity(tick, diagram.y_unit) for tick in up.ticks(max(2, rows // 3))}
@@ -57,7 +59,7 @@ def draw(diagram: Diagram, width: int, height: int) -> list[Content]:
     canvas = Canvas(max(width - margin - 1, LEAST_WIDTH), rows)
     places = [(across.place(x), up.place(y)) for x, y in diagram.lines]
     for x, y in places:
-        canvas.line(x, y)
+        (canvas.line if diagram.joined else canvas.points)(x, y)
     overlay = Canvas(canvas.width, rows)
     for limit in diagram.limits:
         overlay.dashed(float(up.place(np.array(limit))))

@@ -95,7 +95,7 @@ class PlotPage(Vertical):
         limits = [] if piece.limit is None else [piece.limit]
         mark = (float(curve.x[curve.worst]), float(curve.y[curve.worst]))
         unit = reading.report.units.get(curve.over, "1")
-        diagram = Diagram([(curve.x, curve.y)], unit, piece.unit, limits, mark)
+        diagram = Diagram([(curve.x, curve.y)], unit, piece.unit, limits, mark, joined=bool(curve.held))
         return Content("\n").join(draw(diagram, *self._room()))
 
 
@@ -112,7 +112,7 @@ def _foot(reading: Reading, piece: Evidence, curve: Curve, count: int) -> Conten
     if curve.held:
         held = f"at {conditions_in_words(curve.held, units)}"
     else:
-        held = f"the worst of all conditions at each {curve.over}"
+        held = f"points: the worst of all conditions at each {curve.over}"
     return Content.assemble(
         (f"over {curve.over}{more}", "$strong"), "  ",
         (f"{WORST} {quantity(y, piece.unit)} at {quantity(x, units.get(curve.over, '1'))}", "$major"),

@@ -81,8 +81,8 @@ class NumbersScreen(Screen[None]):
     def on_computed(self, message: Computed) -> None:
         """Show the numbers."""
         self._numbers, self._words = message.numbers, message.words
-        if self._numbers is not None and self._numbers.inputs:
-            self._ambient = len(self._numbers.ambients) // 2
+        if self._numbers is not None and self._numbers.typical["ambient"] in self._numbers.ambients:
+            self._ambient = self._numbers.ambients.index(self._numbers.typical["ambient"])
         self._draw()
 
     def on_resize(self, event: Resize) -> None:

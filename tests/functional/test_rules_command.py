@@ -77,14 +77,22 @@ def test_help_is_given(run, arguments):
 def test_help_lists_the_commands(run):
     """In the order of use."""
     _, out, _ = run("--help")
-    assert re.findall(r"^  (\w+)  +[A-Z]", out, re.MULTILINE) == ["check", "fix", "figures", "rules", "schema"]
+    assert re.findall(r"^  (\w+)  +[A-Z]", out, re.MULTILINE) == [
+        "check",
+        "browse",
+        "fix",
+        "figures",
+        "compare",
+        "rules",
+        "schema",
+    ]
 
 
 @pytest.mark.parametrize(
     ("arguments", "words"),
     [
         (("chek", "x"), "did you mean 'check'"),
-        (("zzz",), "there are check, fix, figures, rules, schema"),
+        (("zzz",), "there are check, browse, fix, figures, compare, rules, schema"),
         (("check",), "Missing argument"),
         (("check", "divider.toml", "--onyl", "x"), "--only"),
         (("check", "divider.toml", "--as", "jason"), "json"),

@@ -95,3 +95,13 @@ def test_bars_are_as_long_as_their_share():
     assert bar(0.5, 4) == "██  "
     assert bar(1 / 32, 4) == "▏   "
     assert bar(float("nan"), 4) == "    "
+
+
+def test_points_that_do_not_belong_together_are_not_joined():
+    """Two points at the ends leave the middle empty."""
+    canvas = Canvas(9, 3)
+    canvas.points(np.array([0.0, 1.0]), np.array([0.5, 0.5]))
+    middle = canvas.rows()[1]
+    assert middle[0] != " "
+    assert middle[-1] != " "
+    assert middle[1:-1].strip() == ""

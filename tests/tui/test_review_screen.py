@@ -7,6 +7,7 @@ import time
 
 import pytest
 from textual.widgets import Input
+from textual.worker import get_current_worker
 
 from rulecheck.review.registry import registry_of
 from rulecheck.tui.app import Browser
@@ -373,7 +374,7 @@ def test_a_running_review_answers_keys_and_can_be_given_up(browse, monkeypatch):
         while True:
             progress(done, 100, "endless-rule")
             done = (done + 1) % 100
-            time.sleep(0.01)
+            time.sleep(0.1)
 
     async def steps(pilot):
         monkeypatch.setattr(Document, "read", endless)
@@ -432,29 +433,31 @@ def test_the_screen_follows_the_size_of_the_terminal(browse):
     browse(steps, size=(80, 24))
 
 
+@pytest.mark.parametrize("usable", [True, False])
 @pytest.mark.parametrize("size", [(80, 24), (160, 50)])
-def test_no_key_fails_while_there_is_nothing_to_show_yet(path, monkeypatch, size):
+def test_no_key_fails_while_there_is_nothing_to_show(path, monkeypatch, size, usable):
     """Before the first review is done, and where the file cannot be used."""
     from rulecheck.tui import editor
     from rulecheck.tui.document import Document
 
     def waiting(self, progress, shown):
-        while True:
-            progress(0, 1, "first-rule")
+        progress(0, 1, "first-rule")
+        while not get_current_worker().is_cancelled:
             time.sleep(0.01)
+        progress(0, 1, "first-rule")
 
     monkeypatch.setattr(editor, "open_at", lambda path, line: 0)
     keys = ["a", "u", "U", "r", "v", "x", "y", "g", "f", "f", "1", "2", "3", "4", "5", "n", "t", "d", "down", "e"]
 
-    async def go(read):
-        monkeypatch.setattr(Document, "read", read)
+    async def go():
         app = Browser([path], registry_of([Ratio]), dt.date(2026, 1, 2), 1000)
         monkeypatch.setattr(app, "suspend", contextlib.nullcontext)
         async with app.run_test(size=size) as pilot:
             await pilot.press(*keys)
             await pilot.press("c", "q")
 
-    usable = Document.read
-    asyncio.run(go(waiting))
-    path.write_text("format = 1\n[design")
-    asyncio.run(go(usable))
+    if usable:
+        monkeypatch.setattr(Document, "read", waiting)
+    else:
+        path.write_text("format = 1\n[design")
+    asyncio.run(go())

@@ -9,7 +9,9 @@ from rulecheck.analysis.conditions import from_points
 from rulecheck.analysis.review import Review
 from rulecheck.testing import design_from
 
-TWO_SIDED = HEAD + f"""
+TWO_SIDED = (
+    HEAD
+    + f"""
 VIN = {{ role = "input", drive = "voltage", range = ["-10 V", "10 V"], cutoff = "10 mV" }}
 VOUT = {{ role = "output", load = "10 kohm" }}
 [parts]
@@ -20,6 +22,7 @@ Q1 = {{ kind = "npn", model = "monolithic-pair-npn-tight", pins = {{ C = "S", B 
 U1 = {{ kind = "op-amp", pins = {{ "IN+" = "GND", IN- = "S", OUT = "O", {PINS} }}, open_loop_gain = 4e5, gain_bandwidth = "3 MHz", second_pole = "12 MHz", bias_current = "10 pA", bias_current_doubling = "10 K", input_headroom = {{ low = "-0.1 V", high = "-0.1 V" }}, output_headroom = {{ low = "20 mV", high = "20 mV" }}, supply_current = "1 mA" }}
 Q2 = {{ kind = "pnp", pins = {{ C = "S", B = "GND", E = "VOUT" }}, saturation_current = "15 fA", forward_beta = 400, early_voltage = "150 V", emitter_capacitance = "20 pF", collector_capacitance = "8 pF" }}
 """
+)
 
 
 @pytest.mark.parametrize("vin", [0.0, 1e-6, -1e-3, 1.0])
