@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime as dt
+import os
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -54,7 +55,7 @@ def command(
     registry.check_names((*only, *without))
     designs = []
     files = list(changed_designs(paths) if changed else design_files(paths))
-    if file is not None and file.resolve() in {path.resolve() for path in files}:
+    if file is not None and os.path.realpath(file) in {os.path.realpath(path) for path in files}:
         raise CommandError(f"{file} is one of the designs to review", "--write takes another file, which it replaces")
     for path in files:
         with ProgressBar(str(path)) as progress:

@@ -33,7 +33,7 @@ def design_files(paths: Iterable[Path]) -> list[Path]:
         if not found:
             raise CommandError(f"there is no design file in {path}", "a design is a .toml with format and [design]")
         for file in found:
-            files.setdefault(file.resolve(), file)
+            files.setdefault(_real(file), file)
     return list(files.values())
 
 
@@ -50,15 +50,15 @@ def changed_designs(paths: Iterable[Path]) -> list[Path]:
     for path in paths:
         kind = _kind(path)
         if kind == DESIGN:
-            designs.setdefault(path.resolve(), path)
+            designs.setdefault(_real(path), path)
         elif kind == CATALOGUE:
-            catalogues.add(path.resolve())
+            catalogues.add(_real(path))
         else:
             _pass_over(path, kind)
     if catalogues:
         for file in _toml_files(Path()):
             if catalogues & _catalogues_of(file):
-                designs.setdefault(file.resolve(), file)
+                designs.setdefault(_real(file), file)
     return list(designs.values())
 
 
@@ -67,7 +67,7 @@ def _catalogues_of(file: Path) -> set[Path]:
     data = _data(file) or {}
     names = data.get("catalogues") if "design" in data else None
     try:
-        return {(file.parent / name).resolve() for name in names or () if isinstance(name, str)}
+        return {_real(file.parent / name) for name in names or () if isinstance(name, str)}
     except (OSError, RuntimeError, ValueError, TypeError):  # a name that no file can have, or no list of them
         return set()
 
@@ -84,11 +84,17 @@ def _in_folder(folder: Path) -> Iterator[Path]:
 def _toml_files(folder: Path) -> Iterator[Path]:
     for here, folders, names in os.walk(folder, onerror=_refuse):
         folders[:] = sorted(name for name in folders if not name.startswith("."))
-        yield from (Path(here) / name for name in sorted(names) if name.endswith(".toml"))
+        files = (Path(here) / name for name in sorted(names) if name.endswith(".toml"))
+        yield from (file for file in files if not _is_special(file))
 
 
 def _pass_over(file: Path, kind: str) -> None:
     narrate(f"{file}: passed over, it {kind}")
+
+
+def _real(path: Path) -> Path:
+    """A path without links; of one that leads to itself the path as it is, which the loader then refuses."""
+    return Path(os.path.realpath(path))
 
 
 def _is_special(file: Path) -> bool:

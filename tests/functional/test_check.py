@@ -433,3 +433,29 @@ def test_an_interrupt_gives_status_130(folder):
     _, err = process.communicate(timeout=20)
     assert process.returncode == 130
     assert err.strip() == "interrupted"
+
+
+def test_a_report_never_replaces_a_design(run, tree):
+    """--write onto one of the designs is refused, and the design stays."""
+    before = (tree / "b.toml").read_text()
+    status, _, err = run("check", "boards/b.toml", *ONLY, "--write", "boards/b.toml")
+    assert status == 2
+    assert "one of the designs" in err
+    assert (tree / "b.toml").read_text() == before
+
+
+def test_a_pipe_in_a_folder_is_not_waited_for(run, tree):
+    """What is no file is passed by."""
+    os.mkfifo(tree / "pipe.toml")
+    status, out, _ = run("check", "boards", *ONLY, "--as", "json")
+    assert status == 0
+    assert files_of(out) == ["boards/b.toml", "boards/deep/a.toml"]
+
+
+def test_a_link_that_leads_to_itself_is_an_error(run, tree):
+    """It says which file, without a traceback."""
+    (tree / "loop.toml").symlink_to("loop.toml")
+    status, out, err = run("check", "boards/loop.toml", *ONLY)
+    assert status == 2
+    assert "boards/loop.toml" in out
+    assert "Traceback" not in out + err
