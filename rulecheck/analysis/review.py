@@ -224,10 +224,6 @@ class Review:
         changed = dict(values or {}) | {(ref, "mismatch"): v for ref, v in (vbe_offsets or {}).items()}
         return self.solve(self.conditions, overrides=changed, temperatures=temperatures)
 
-    def requirements_of(self, net: str) -> list[Requirement]:
-        """Requirements with an accuracy whose output is `net`."""
-        return [r for r in self.design.requirements.values() if r.output == net and r.has_accuracy]
-
     def allowed_error(self, net: str) -> Array:
         """Error allowed at an output net at each condition, in its units.
 

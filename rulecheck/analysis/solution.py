@@ -47,7 +47,6 @@ class Solution:
         self.converged: BoolArray = state.converged
         self._temperatures = temperatures
         self._voltages = _blank(equations.node_voltages(state.x, values), self.converged)
-        self._tangents = equations.junction_voltages(state.x, values)
         self._currents = _currents(equations, values, state)
 
     def voltage(self, net: str) -> Array:
